@@ -1,0 +1,1 @@
+"""Compiled inner loops over plain arrays. They trust their input; the modules above check it."""
