@@ -154,6 +154,32 @@ def read_lines(path: Path, origin: tuple[float, float]) -> Reach:
     return Reach(origin, centre, tuple(structures), layers)
 
 
+def automatic_sections(centre_line: CentreLine, xy: np.ndarray, spacing_m: float) -> list[tuple[float, np.ndarray]]:
+    """Sections square to the centre line, every ``spacing_m`` m, over the whole width of the mesh.
+
+    Parameters
+    ----------
+    xy : (n, 2) array
+        Local nodes of the mesh; those within half a spacing of a section set its ends.
+    spacing_m : float
+        Distance along the centre line, m.
+
+    Returns
+    -------
+    list of (chainage, (2, 2) local points from left bank to right bank)
+        None within half a spacing of the mesh's ends, where a section would leave the model.
+    """
+    s, n = centre_line.locate(xy)
+    low, high = max(0.0, float(s.min())), min(centre_line.length, float(s.max()))
+    out = []
+    for chainage in np.arange(low + spacing_m / 2, high - spacing_m / 2, spacing_m):
+        near = np.abs(s - chainage) <= spacing_m / 2
+        if near.any():
+            left, right = float(n[near].max()) + 1.0, float(n[near].min()) - 1.0
+            out.append((float(chainage), centre_line.at(np.array([chainage] * 2), np.array([left, right]))))
+    return out
+
+
 def proposed_centre_line(xy: np.ndarray, axis: np.ndarray) -> CentreLine:
     """A straight centre line through points (k, 2) along ``axis`` (2,), to be confirmed by the user."""
     d = axis / np.hypot(*axis)

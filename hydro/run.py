@@ -66,6 +66,8 @@ class Run:
         What was mended, derived or assumed on reading.
     depth_is : "point", "mean" or "maximum"
         What the stored depth is within a face or at a node.
+    statements : dict
+        What the file says of itself (global attributes), as text.
     """
 
     name: str
@@ -82,6 +84,7 @@ class Run:
     boundary_sets: dict[str, np.ndarray] = field(default_factory=dict)
     notes: tuple[Note, ...] = ()
     depth_is: str = "mean"
+    statements: dict[str, str] = field(default_factory=dict)
 
     @property
     def n_frames(self) -> int:
