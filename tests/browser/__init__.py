@@ -1,0 +1,1 @@
+"""Tests that drive the dashboard in a real Chromium."""
