@@ -106,7 +106,7 @@ class Mesh:
     @cached_property
     def boundary_edges(self) -> np.ndarray:
         """Edges with a face on one side only."""
-        return _frozen(np.flatnonzero(self.edge_faces[:, 1] < 0).astype(np.int32))
+        return _frozen(np.flatnonzero(self.edge_faces.min(axis=1) < 0).astype(np.int32))
 
     @cached_property
     def node_faces(self) -> tuple[np.ndarray, np.ndarray]:
