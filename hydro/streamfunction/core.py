@@ -1,0 +1,250 @@
+"""Unit discharge in, stream function out."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping, Sequence
+from dataclasses import dataclass, replace
+
+import numpy as np
+
+from .._kernels import p1
+from ..frame import Frame
+from ..reach import CentreLine, Structure
+from ..settings import Settings
+from . import misfit as parts
+from .boundaries import OpenBoundary, open_boundaries, with_discharge
+from .domain import Domain, domain_of
+from .misfit import Misfit
+from .solve import System
+from .walls import Topology, Wall, topology_of
+
+
+@dataclass(frozen=True, eq=False)
+class StreamFunction:
+    """The stream function of one frame.
+
+    Attributes
+    ----------
+    frame : Frame
+    psi : (n,) float64
+        m3/s; NaN outside the domain. Facing downstream it rises towards the left bank.
+    domain : (m,) bool
+        Triangles that psi stands on.
+    walls : tuple of Wall
+    open_boundaries : tuple of OpenBoundary
+        With this frame's discharge, positive in.
+    inflow_m3_s, outflow_m3_s : float
+        Sums over open boundaries, both positive.
+    storage_m3_s : float or None
+        Rate at which the stored volume grows; None where neighbouring frames are not given.
+    through_discharge_m3_s : float
+        Half the sum of |discharge| over open boundaries; 0 for a closed basin.
+    misfit : Misfit
+    triangle_misfit : (m,) float64
+        Size of the unexplained unit discharge in each triangle, m2/s; 0 outside the domain.
+    n_specks, thin_faces : int
+        Small dry patches taken as water without flow; thin sheets kept because they carry flow.
+    drawn : bool
+        False where storage explains more than half of the flow, so that psi says little.
+    shape : Topology
+        The domain's edge, sorted.
+    """
+
+    frame: Frame
+    psi: np.ndarray
+    domain: np.ndarray
+    walls: tuple[Wall, ...]
+    open_boundaries: tuple[OpenBoundary, ...]
+    inflow_m3_s: float
+    outflow_m3_s: float
+    storage_m3_s: float | None
+    through_discharge_m3_s: float
+    misfit: Misfit
+    triangle_misfit: np.ndarray
+    n_specks: int
+    thin_faces: int
+    drawn: bool
+    shape: Topology
+
+    def wall(self, id_: str) -> Wall:
+        """The wall with this id; an unknown one lists the known ones."""
+        for w in self.walls:
+            if w.id == id_:
+                return w
+        raise ValueError(f"there is no wall {id_!r}; this frame has {', '.join(w.id for w in self.walls)}.")
+
+
+class Plan:
+    """What stays from frame to frame: the open boundaries, and the factors as long as the domain stays."""
+
+    def __init__(
+        self, frame: Frame, *, structures: Sequence[Structure] = (), settings: Settings | None = None,
+        centre_line: CentreLine | None = None, boundary_sets: Mapping[str, np.ndarray] | None = None,
+    ) -> None:
+        self.settings = settings or Settings()
+        self.structures, self.centre_line = tuple(structures), centre_line
+        self.boundaries = open_boundaries(frame, self.settings, boundary_sets)
+        self._key: bytes | None = None
+        self.shape: Topology
+        self._psi: System
+        self._phi: System | None = None
+
+    def fit(self, frame: Frame, domain: Domain, boundaries: Sequence[OpenBoundary]) -> None:
+        """Sort the domain's edge anew, unless the domain is the one of the frame before."""
+        key = np.packbits(domain.triangles).tobytes()
+        if key == self._key:
+            return
+        self.shape = topology_of(frame.mesh, domain, boundaries, self.structures, self.centre_line)
+        self._psi, self._phi, self._key = _psi_system(frame, self.shape), None, key
+
+    @property
+    def psi_system(self) -> System:
+        return self._psi
+
+    @property
+    def phi_system(self) -> System:
+        if self._phi is None:
+            self._phi = parts.potential_system(self._psi.mesh, self.shape)
+        return self._phi
+
+
+def stream_function(
+    frame: Frame,
+    *,
+    structures: Sequence[Structure] = (),
+    settings: Settings | None = None,
+    plan: Plan | None = None,
+    centre_line: CentreLine | None = None,
+    boundary_sets: Mapping[str, np.ndarray] | None = None,
+    depth_rate: np.ndarray | None = None,
+) -> StreamFunction:
+    """The stream function that fits a frame's unit discharge best.
+
+    psi is linear in each triangle, constant on each wall, free on open boundaries, and minimises
+    the sum over triangles of area * |grad psi - (-q_y, q_x)|^2; it is zero on the right bank.
+
+    Parameters
+    ----------
+    frame : Frame
+        An instant or a mean.
+    structures : sequence of Structure
+        Outlines that make a dry patch a wall however small, and that name walls.
+    settings : Settings
+    plan : Plan, optional
+        Kept between frames of one run: fixes the open boundaries, reuses factors. The four arguments
+        around it are then taken from it.
+    centre_line : CentreLine, optional
+        Decides which bank is the right one; else the greatest inflow does.
+    boundary_sets : mapping of name to mesh edges, optional
+        Open boundaries by name; else they are found from the flow.
+    depth_rate : (f,) array, optional
+        Rise of depth in each face, m/s, from neighbouring frames; without it the storage part of the
+        misfit is not available.
+
+    Raises
+    ------
+    ValueError
+        For maxima, and for a frame without water.
+
+    References
+    ----------
+    .. [1] M. B. van Gijzen, C. B. Vreugdenhil, H. Oksuzoglu, The finite element discretization for
+       stream-function problems on multiply connected domains, J. Comput. Phys. 140 (1998) 30-46.
+    """
+    if frame.kind == "maximum":
+        raise ValueError(
+            f"the frame at {frame.seconds:g} s holds maxima, which belong to different moments; they have no stream "
+            "function. Choose an instant or a mean."
+        )
+    if plan is None:
+        plan = Plan(
+            frame, structures=structures, settings=settings, centre_line=centre_line, boundary_sets=boundary_sets
+        )
+    first = with_discharge(frame, plan.boundaries, np.ones(frame.mesh.n_triangles, bool))
+    domain = domain_of(frame, _through(first), plan.settings, plan.structures)
+    boundaries = with_discharge(frame, plan.boundaries, domain.triangles)
+    plan.fit(frame, domain, boundaries)
+    flow = _flow(frame, domain)
+    psi = _solved(frame, plan, flow)
+    split, rest = _split(frame, plan, flow, psi, depth_rate)
+    stored = None
+    if depth_rate is not None:
+        held = domain.triangles[frame.mesh.face_first_triangle[:-1]]
+        stored = float(np.sum((depth_rate * frame.mesh.face_area)[held]))
+    discharges = np.array([b.discharge_m3_s for b in boundaries])
+    walls = tuple(replace(w, psi_m3_s=float(psi[w.nodes[0]])) for w in plan.shape.walls)
+    for array in (psi, rest):
+        array.setflags(write=False)
+    return StreamFunction(
+        frame, psi, domain.triangles, walls, boundaries,
+        float(discharges[discharges > 0].sum()), float(-discharges[discharges < 0].sum()), stored,
+        _through(boundaries), split, rest, domain.n_specks, domain.thin_faces,
+        split.storage is None or split.storage <= 0.5, plan.shape,
+    )
+
+
+def _through(boundaries: Sequence[OpenBoundary]) -> float:
+    return 0.5 * float(sum(abs(b.discharge_m3_s) for b in boundaries))
+
+
+def _flow(frame: Frame, domain: Domain) -> np.ndarray:
+    """Unit discharge (m, 2) that psi is fitted to; zero in dry specks."""
+    mesh = frame.mesh
+    if frame.edge_discharge is not None:
+        q = p1.triangle_flow_from_edges(
+            mesh.node_xy, mesh.triangles, mesh.triangle_edges, mesh.triangle_face, mesh.face_first_triangle,
+            mesh.edge_nodes, np.ascontiguousarray(frame.edge_discharge, dtype=np.float64),
+        )
+    else:
+        q = frame.triangle_unit_discharge
+    return np.where((domain.triangles & ~domain.specks)[:, None], q, 0.0)
+
+
+def _psi_system(frame: Frame, shape: Topology) -> System:
+    """Unknowns: free nodes in mesh order, then walls; the fixed walls and nodes are zero."""
+    mesh = frame.mesh
+    free = (shape.part >= 0) & (shape.wall_of_node < 0)
+    free[shape.fixed_nodes] = False
+    n_nodes = int(np.count_nonzero(free))
+    unknown = np.full(mesh.n_nodes, -1, np.int32)
+    unknown[free] = np.arange(n_nodes, dtype=np.int32)
+    moving = np.ones(len(shape.walls), bool)
+    moving[shape.fixed_walls] = False
+    number = np.where(moving, n_nodes + np.cumsum(moving) - 1, -1).astype(np.int32)
+    on_wall = shape.wall_of_node >= 0
+    unknown[on_wall] = number[shape.wall_of_node[on_wall]]
+    return System(mesh, shape.triangles, unknown, n_nodes, n_nodes + int(np.count_nonzero(moving)))
+
+
+def _solved(frame: Frame, plan: Plan, flow: np.ndarray) -> np.ndarray:
+    system = plan.psi_system
+    rotated = np.column_stack([-flow[:, 1], flow[:, 0]])
+    psi = system.on_nodes(system.solve(system.load(rotated)))
+    return np.where(plan.shape.part >= 0, psi, np.nan)
+
+
+def _split(frame: Frame, plan: Plan, flow: np.ndarray, psi: np.ndarray, depth_rate: np.ndarray | None):
+    """The misfit and the unexplained unit discharge (m,) of each triangle."""
+    mesh, shape, phi = frame.mesh, plan.shape, plan.phi_system
+    gradient = p1.gradients(mesh.node_xy, mesh.triangles, shape.triangles, psi)
+    rest = flow - np.column_stack([gradient[:, 1], -gradient[:, 0]])
+    rest[~shape.triangles] = 0.0
+    whole = parts.norm(mesh, shape.triangles, flow)
+    if whole == 0.0:
+        return Misfit(0.0, None if depth_rate is None else 0.0, 0.0, 0.0), np.zeros(mesh.n_triangles)
+
+    def part(load: np.ndarray) -> np.ndarray:
+        return p1.gradients(mesh.node_xy, mesh.triangles, shape.triangles, phi.on_nodes(phi.solve(load)))
+
+    total = parts.norm(mesh, shape.triangles, rest) / whole
+    stored = None
+    if depth_rate is not None:
+        field = part(parts.storage_load(mesh, shape, depth_rate[mesh.triangle_face], phi))
+        stored = parts.norm(mesh, shape.triangles, field) / whole
+        rest = rest - field
+    field = part(parts.wall_load(frame, shape, phi))
+    rest = rest - field
+    split = Misfit(
+        total, stored, parts.norm(mesh, shape.triangles, field) / whole, parts.norm(mesh, shape.triangles, rest) / whole
+    )
+    return split, np.hypot(*rest.T)
