@@ -137,7 +137,7 @@ def _grouped_nodes(wall_of_node: np.ndarray, count: int) -> list[np.ndarray]:
     nodes = np.flatnonzero(wall_of_node >= 0).astype(np.int32)
     order = np.argsort(wall_of_node[nodes], kind="stable")
     cuts = np.cumsum(np.bincount(wall_of_node[nodes], minlength=count))[:-1]
-    return np.split(nodes[order], cuts)
+    return np.split(nodes[order], cuts) if count else []
 
 
 def _right_end(mesh, a, b, opening, boundaries, centre_line) -> int:

@@ -1,0 +1,199 @@
+"""Recirculation zones of a stream function."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+import shapely
+
+from .._kernels import contour
+from ..reach import Reach
+from ..settings import Settings
+from ..streamfunction import StreamFunction
+from .contact import Contact, contact_of
+from .naming import named, setting_of
+from .outer import Extent, extent_of, narrow_of
+from .regions import Region, closed_regions, open_regions
+from .shape import Shape, peak_of, shape_of
+from .zone import SmallRegion, Zone, ZoneSet
+
+CAUTIONS = ("wake-detail", "no-secondary-currents", "sensitivity", "rotation-time", "no-roller")
+_STREAMLINES = 4  # drawn inside each zone
+_FINE_ACROSS = 8  # fewer triangles across than this: flagged
+
+
+@dataclass(frozen=True, eq=False)
+class _Candidate:
+    """A region that passed the floors, with its shape."""
+
+    region: Region
+    shape: Shape
+    centre: np.ndarray
+    psi_centre: float
+    noise: float
+    across: float
+
+
+def find_zones(sf: StreamFunction, *, reach: Reach | None = None, settings: Settings | None = None) -> ZoneSet:
+    """Every recirculation zone of a frame.
+
+    A zone is a maximal connected region round an extremum of psi, bounded by a psi contour that is
+    closed or closed by a wall, that reaches no open boundary. It is kept when its recirculating
+    discharge exceeds the noise of psi there and ``zone_share`` of the through-discharge, and it is
+    at least ``zone_triangles_across`` wide.
+
+    Parameters
+    ----------
+    sf : StreamFunction
+    reach : Reach, optional
+        Gives chainage, sides and the names of structures.
+    settings : Settings
+
+    Returns
+    -------
+    ZoneSet
+        Empty, with a note, where storage explains more than half of the flow.
+    """
+    settings = settings or Settings()
+    reach = reach or Reach(sf.frame.mesh.origin)
+    if not sf.drawn:
+        return ZoneSet((), notes=("storage explains more than half of the flow; psi is not drawn and holds no zones",))
+    kept, small = [], []
+    for region in closed_regions(sf):
+        found = _candidate(sf, region, settings)
+        (kept if isinstance(found, _Candidate) else small).append(found)
+    in_zones = np.zeros(sf.frame.mesh.n_triangles, bool)
+    for c in kept:
+        in_zones[c.shape.triangles] = True
+    zones = [_zone(sf, reach, c, in_zones) for c in kept]
+    return ZoneSet(named(sf, reach, zones), tuple(small), tuple(_cut_by_edge(sf, settings)))
+
+
+def noise_of(sf: StreamFunction, triangles: np.ndarray) -> tuple[float, float]:
+    """Noise of psi over triangles, m3/s (unexplained unit discharge times triangle size), and that size, m."""
+    area = sf.frame.mesh.triangle_area[triangles]
+    rms = float(np.sqrt(np.sum(area * sf.triangle_misfit[triangles] ** 2) / area.sum()))
+    size = edge_size(float(area.mean()))
+    return rms * size, size
+
+
+def edge_size(area: float) -> float:
+    """Side of an equilateral triangle of this area, m."""
+    return float(np.sqrt(area * 4 / np.sqrt(3)))
+
+
+def _candidate(sf: StreamFunction, region: Region, settings: Settings) -> _Candidate | SmallRegion:
+    flow = abs(float(sf.psi[region.peak]) - region.level)
+    if flow <= settings["zone_share"] * sf.through_discharge_m3_s:
+        return _small(sf, region, flow, 0.0, "under the least share")
+    shape = shape_of(sf, region)
+    noise, size = noise_of(sf, shape.triangles)
+    if flow <= noise:
+        return _small(sf, region, flow, shape.area_m2, "weaker than the noise of psi")
+    across = narrow_of(shape.polygon)[0] / size
+    if across < settings["zone_triangles_across"]:
+        return _small(sf, region, flow, shape.area_m2, "too few triangles across")
+    centre, psi_centre = peak_of(sf, region)
+    return _Candidate(region, shape, centre, psi_centre, noise, across)
+
+
+def _small(sf: StreamFunction, region: Region, flow: float, area: float, why: str) -> SmallRegion:
+    return SmallRegion(sf.frame.mesh.node_xy[region.peak], _rotation(region), flow, area, why)
+
+
+def _rotation(region: Region) -> str:
+    # psi rises to the left, so the flow round a maximum keeps it on its left: anticlockwise.
+    return "anticlockwise" if region.sign > 0 else "clockwise"
+
+
+def _cut_by_edge(sf: StreamFunction, settings: Settings) -> list[SmallRegion]:
+    found = []
+    for region in open_regions(sf):
+        flow = abs(float(sf.psi[region.peak]) - region.level)
+        if flow <= settings["zone_share"] * sf.through_discharge_m3_s:
+            continue
+        shape = shape_of(sf, region)
+        if shape.triangles.size and flow > noise_of(sf, shape.triangles)[0]:
+            found.append(_small(sf, region, flow, shape.area_m2, "open to the boundary"))
+    return found
+
+
+def _zone(sf: StreamFunction, reach: Reach, c: _Candidate, in_zones: np.ndarray) -> Zone:
+    region, shape = c.region, c.shape
+    contact = contact_of(sf, region, shape)
+    extent = extent_of(sf, shape, in_zones)
+    along = np.array(extent.along)
+    kind, wall, structure = setting_of(sf, reach, shape, contact, along)
+    flow = abs(c.psi_centre - region.level)
+    separation, reattachment = _ends(sf, region, shape, contact, kind, along)
+    solid = structure is None or wall is not None
+    chainage = offset = None
+    if reach.centre_line is not None:
+        s, n = reach.centre_line.locate(c.centre)
+        chainage, offset = float(s[0]), float(n[0])
+    through = sf.through_discharge_m3_s
+    return Zone(
+        id="", name="", kind=kind, wall=sf.walls[wall].id if wall is not None else structure and structure.name,
+        rotation=_rotation(region), centre=c.centre, chainage_m=chainage, offset_m=offset,
+        area_m2=shape.area_m2, volume_m3=shape.volume_m3, length_m=extent.length_m, width_m=extent.width_m,
+        mean_depth_m=shape.volume_m3 / shape.area_m2, max_depth_m=shape.max_depth_m,
+        psi_centre_m3_s=c.psi_centre, psi_edge_m3_s=region.level,
+        psi_wall_m3_s=None if wall is None else sf.walls[wall].psi_m3_s,
+        recirculating_discharge_m3_s=flow, share_of_through_discharge=flow / through if through > 0 else None,
+        rotation_time_s=shape.volume_m3 / flow,
+        separation=separation if solid else None, reattachment=reattachment if solid else None,
+        triangles_across=c.across, max_reverse_speed_m_s=_reverse(sf, region, along),
+        flags=_flags(c, contact, extent, solid), sensitivity={}, cautions=CAUTIONS, contour=shape.polygon,
+        streamlines=_streamlines(sf, c), along=along, noise_m3_s=c.noise, region=region,
+    )
+
+
+def _flags(c: _Candidate, contact: Contact | None, extent: Extent, solid: bool) -> tuple[str, ...]:
+    flags = []
+    if c.across < _FINE_ACROSS:
+        flags.append("under-resolved")
+    if not solid:
+        flags.append("structure not solid")
+    if contact is not None and contact.waterline:
+        flags.append("at the waterline")
+    if not extent.aligned:
+        flags.append("no outer flow")
+    if len(c.region.cores) > 1:
+        flags.append(f"{len(c.region.cores)} cores")
+    return tuple(flags)
+
+
+def _ends(sf, region: Region, shape: Shape, contact: Contact | None, kind: str, along: np.ndarray):
+    """Separation and reattachment, local m; None where there is none."""
+    if contact is None:
+        separation = other = None
+    elif region.sign > 0:
+        separation, other = contact.end, contact.start
+    else:
+        separation, other = contact.start, contact.end
+    if kind != "behind structure":
+        return separation, other
+    points = shapely.get_coordinates(shape.polygon)
+    return separation, points[int((points @ along).argmax())]
+
+
+def _reverse(sf: StreamFunction, region: Region, along: np.ndarray) -> float:
+    """Greatest speed against the outer flow at the zone's nodes, m/s."""
+    return float(np.max(-(sf.frame.velocity[region.nodes] @ along), initial=0.0))
+
+
+def _streamlines(sf: StreamFunction, c: _Candidate) -> list[np.ndarray]:
+    mesh = sf.frame.mesh
+    inside = np.zeros(mesh.n_triangles, bool)
+    inside[c.shape.triangles] = True
+    step = (float(sf.psi[c.region.peak]) - c.region.level) / (_STREAMLINES + 1)
+    lines = []
+    for k in range(1, _STREAMLINES + 1):
+        points, first = contour.lines(
+            mesh.node_xy, mesh.triangles, mesh.neighbours, inside, np.nan_to_num(sf.psi), c.region.level + k * step
+        )
+        lines += [points[first[i] : first[i + 1]] for i in range(len(first) - 1)]
+    return lines
+
+

@@ -1,0 +1,94 @@
+"""Closed regions of a stream function: each extremum of psi with its dividing level and its nodes."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+
+from .._kernels import regions as kernel
+from ..streamfunction import StreamFunction
+from ..streamfunction.solve import node_triangles
+
+
+@dataclass(frozen=True, eq=False)
+class Region:
+    """A maximal region round an extremum of psi that reaches no open boundary.
+
+    Attributes
+    ----------
+    sign : +1 or -1
+        +1 round a maximum (the water turns anticlockwise), -1 round a minimum.
+    peak : int
+        Node of the greatest extremum.
+    level : float
+        Dividing level of psi, m3/s.
+    meets : int
+        Node where that level was reached: a saddle, or a node of the wall that closes the region.
+    nodes : (k,) int32
+        Nodes beyond the level, nodes of walls inside it included.
+    cores : (c,) int32
+        Nodes of all its extrema, the greatest first.
+    """
+
+    sign: int
+    peak: int
+    level: float
+    meets: int
+    nodes: np.ndarray
+    cores: np.ndarray
+
+
+def closed_regions(sf: StreamFunction) -> list[Region]:
+    """Every region of closed streamlines, however small, maxima first."""
+    ends = sf.shape.open_node.copy()
+    for wall in sf.walls:
+        ends[wall.nodes] |= wall.reaches_open
+    return [r for sign in (1, -1) for r in _grown(sf, sign, ends, past_ends=False)]
+
+
+def open_regions(sf: StreamFunction) -> list[Region]:
+    """Regions round extrema of psi on an open boundary: eddies that the model's edge cuts."""
+    return [r for sign in (1, -1) for r in _grown(sf, sign, sf.shape.open_node, past_ends=True)]
+
+
+def _grown(sf: StreamFunction, sign: int, ends: np.ndarray, *, past_ends: bool) -> list[Region]:
+    mesh = sf.frame.mesh
+    values = sign * np.nan_to_num(sf.psi)
+    stands_for, first, nodes = _walls(sf)
+    top = kernel.maxima(mesh.triangles, sf.domain, values, stands_for)
+    if past_ends:
+        seeds = np.flatnonzero(top & ends & (sf.shape.wall_of_node < 0))
+    else:
+        seeds = np.flatnonzero(top & ~ends)
+    # The highest first, so that the peak of a region with several cores is its greatest.
+    seeds = seeds[np.argsort(-values[seeds], kind="stable")].astype(np.int32)
+    start, around = node_triangles(mesh)
+    found, members, level, meets, peak = kernel.grow(
+        mesh.triangles, sf.domain, start, around, values, stands_for, first, nodes, sf.shape.wall_of_node, ends, seeds,
+        past_ends,
+    )
+    made = []
+    for r in range(len(level)):
+        own = members[found[r] : found[r + 1]]
+        cores = own[top[own]]
+        cores = cores[np.argsort(-values[cores], kind="stable")]
+        made.append(Region(sign, int(peak[r]), sign * float(level[r]), int(meets[r]), _with_walls(sf, own), cores))
+    return made
+
+
+def _walls(sf: StreamFunction) -> tuple[np.ndarray, np.ndarray, np.ndarray]:
+    """The node that stands for each node, and compressed lists of the nodes of walls."""
+    stands_for = np.arange(sf.frame.mesh.n_nodes, dtype=np.int32)
+    first = np.zeros(len(sf.walls) + 1, np.int64)
+    for k, wall in enumerate(sf.walls):
+        stands_for[wall.nodes] = wall.nodes[0]
+        first[k + 1] = first[k] + len(wall.nodes)
+    nodes = np.concatenate([w.nodes for w in sf.walls]) if sf.walls else np.zeros(0, np.int32)
+    return stands_for, first, nodes
+
+
+def _with_walls(sf: StreamFunction, standing: np.ndarray) -> np.ndarray:
+    walls = np.unique(sf.shape.wall_of_node[standing])
+    more = [sf.walls[w].nodes for w in walls if w >= 0]
+    return np.unique(np.concatenate([standing, *more])).astype(np.int32)
