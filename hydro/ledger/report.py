@@ -1,0 +1,123 @@
+"""The ledger as plain values: the JSON of schema leewater/eddies/1, and the rows of its tables."""
+
+from __future__ import annotations
+
+import datetime
+import math
+from collections.abc import Iterable
+from typing import Any
+
+import numpy as np
+
+from ..eddies import Zone
+from ..mesh import Mesh
+from ..provenance import command_line, file_hash, versions
+from ..run import Run
+from ..settings import Settings
+from .frames import FrameLedger
+
+SCHEMA = "leewater/eddies/1"
+
+
+def ledger_json(run: Run, frames: Iterable[FrameLedger], settings: Settings | None = None) -> dict[str, Any]:
+    """The ledger of a run as a dict of schema leewater/eddies/1.
+
+    Places are world coordinates, m; keys carry their unit; what is not available is None.
+    """
+    return {
+        "schema": SCHEMA,
+        "source": source_of(run),
+        "settings": dict(settings or run.settings),
+        "frames": [frame_json(run, f) for f in frames],
+    }
+
+
+def source_of(run: Run) -> dict[str, Any]:
+    """Where the figures come from: files with their hashes, versions, and the command that repeats them."""
+    return {
+        "run": run.name,
+        "files": [{"name": p.name, "sha256": file_hash(p)} for p in run.files],
+        "hash": run.hash if run.files else None,
+        "crs": run.crs,
+        "vertical_datum": run.datum,
+        "versions": versions(),
+        "made": datetime.datetime.now(datetime.UTC).isoformat(timespec="seconds"),
+        "command": command_line(),
+    }
+
+
+def frame_json(run: Run, entry: FrameLedger) -> dict[str, Any]:
+    """One entry of ``frames``."""
+    sf, frame = entry.sf, entry.frame
+    split = sf.misfit
+    return {
+        "index": frame.index,
+        "time": time_text(frame.time),
+        "seconds": frame.seconds,
+        "kind": frame.kind,
+        "interval_s": frame.interval_s,
+        "window_s": list(entry.window_s) if entry.window_s else None,
+        "field": frame.field_name,
+        "inflow_m3_s": sf.inflow_m3_s,
+        "outflow_m3_s": sf.outflow_m3_s,
+        "storage_m3_s": sf.storage_m3_s,
+        "through_discharge_m3_s": sf.through_discharge_m3_s,
+        "misfit": {
+            "total": split.total, "storage": split.storage, "walls": split.walls, "unexplained": split.unexplained,
+        },
+        "open_boundaries": [{"name": b.name, "discharge_m3_s": b.discharge_m3_s} for b in sf.open_boundaries],
+        "walls": [{"id": w.id, "psi_m3_s": w.psi_m3_s} for w in sf.walls],
+        "dry_specks": sf.n_specks,
+        "thin_faces": sf.thin_faces,
+        "zones": [zone_json(frame.mesh, z) for z in entry.zones.zones],
+        "small_zones": len(entry.zones.small),
+        "open_to_the_boundary": len(entry.zones.open_to_boundary),
+        "notes": list(entry.zones.notes),
+    }
+
+
+def zone_json(mesh: Mesh, zone: Zone) -> dict[str, Any]:
+    """One entry of ``zones``."""
+    plain = {
+        name: _number(getattr(zone, name))
+        for name in (
+            "area_m2", "volume_m3", "length_m", "width_m", "mean_depth_m", "max_depth_m", "psi_centre_m3_s",
+            "psi_edge_m3_s", "psi_wall_m3_s", "recirculating_discharge_m3_s", "share_of_through_discharge",
+            "rotation_time_s",
+        )
+    }
+    return {
+        "id": zone.id,
+        "name": zone.name,
+        "kind": zone.kind,
+        "wall": zone.wall,
+        "rotation": zone.rotation,
+        "centre": point(mesh, zone.centre),
+        "chainage_m": _number(zone.chainage_m),
+        "offset_m": _number(zone.offset_m),
+        **plain,
+        "separation": point(mesh, zone.separation),
+        "reattachment": point(mesh, zone.reattachment),
+        "triangles_across": zone.triangles_across,
+        "max_reverse_speed_m_s": zone.max_reverse_speed_m_s,
+        "flags": list(zone.flags),
+        "sensitivity": {name: [_number(low), _number(high)] for name, (low, high) in zone.sensitivity.items()},
+        "cautions": list(zone.cautions),
+    }
+
+
+def point(mesh: Mesh, local: np.ndarray | None) -> list[float] | None:
+    """World coordinates of a local point."""
+    return None if local is None else [float(v) for v in mesh.to_world(local)]
+
+
+def time_text(time: np.datetime64 | None) -> str | None:
+    """ISO 8601 UTC to the second (to the millisecond where it has a fraction)."""
+    if time is None or np.isnat(time):
+        return None
+    text = np.datetime_as_string(time.astype("datetime64[ms]"))
+    return text.removesuffix(".000") + "Z"
+
+
+def _number(value: float | None) -> float | None:
+    return None if value is None or not math.isfinite(value) else float(value)
