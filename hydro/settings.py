@@ -46,6 +46,20 @@ REGISTRY: dict[str, Setting] = {
         Setting("zone_triangles_across", 4, "triangles", _COMMON, "least width of a listed zone", 1),
         Setting("gravity_m_s2", 9.81, "m/s2", "conventional value", "heads, Froude numbers, weirs", 9.7, 9.9),
         Setting("density_kg_m3", 1000.0, "kg/m3", "fresh water, rounded", "shear, power, drift", 900.0, 1100.0),
+        Setting(
+            "passage_time_weight", 1e-7, "1/s", "Leewater's own: an hour counts as 0.0004 of a leg's endurance",
+            "which of two fish routes of nearly equal fatigue is taken", 1e-12, 1e-3,
+        ),
+        Setting(
+            "passage_points_per_side", 2, "points", "Leewater's own", "headings that a fish route can take, at first", 0, 20
+        ),
+        Setting(
+            "passage_direction_error", 0.01, "-", "Leewater's own",
+            "headings are refined until the worst leg's fatigue moves by less than this share", 1e-4, 0.5,
+        ),
+        Setting(
+            "passage_corridor_faces", 3, "faces", _COMMON, "a fish route through fewer faces side by side is not resolved", 1
+        ),
         Setting("tubes", 22, "tubes", "Leewater's own", "stream tubes in a drawing", 2, 200),
     )
 }
