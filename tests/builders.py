@@ -122,6 +122,18 @@ def run_of(
     )
 
 
+def sides(mesh: Mesh) -> dict[str, np.ndarray]:
+    """Boundary edges on the west, east, south and north sides of a rectangle, by name."""
+    middle = mesh.node_xy[mesh.edge_nodes[mesh.boundary_edges]].mean(axis=1)
+    west, south, east, north = mesh.bounds
+    near = 1e-6 * max(east - west, north - south)
+    found = {
+        "west": middle[:, 0] < west + near, "east": middle[:, 0] > east - near,
+        "south": middle[:, 1] < south + near, "north": middle[:, 1] > north - near,
+    }
+    return {name: mesh.boundary_edges[chosen] for name, chosen in found.items()}
+
+
 def on_points(value: Field, xy: np.ndarray) -> np.ndarray:
     """A number, array or function of (x, y) as an array over points (k, 2)."""
     if callable(value):

@@ -5,11 +5,14 @@ from __future__ import annotations
 from dataclasses import dataclass
 
 import numpy as np
+import shapely
 
 from .._kernels import regions as kernel
 from ..streamfunction import StreamFunction
 from .regions import Region
 from .shape import Shape
+
+_LEAD_BACK = 3.5  # triangles off the wall within which a dividing streamline counts as straight
 
 
 @dataclass(frozen=True, eq=False)
@@ -27,29 +30,35 @@ class Contact:
     waterline: bool
 
 
-def contact_of(sf: StreamFunction, region: Region, shape: Shape) -> Contact | None:
-    """The contact of an attached zone; None for one that touches no wall at its dividing level."""
+def contact_of(sf: StreamFunction, region: Region, shape: Shape, noise: float) -> Contact | None:
+    """The contact of an attached zone; None for one that touches no wall.
+
+    A zone whose dividing level differs from the wall's value by less than ``noise`` (m3/s) counts as
+    attached: no flow that could be told from none passes between.
+    """
     s = sf.shape
-    touching = _wall_sides(sf, region, shape)
+    touching = _wall_sides(sf, region, shape, noise)
     if not touching.size:
         return None
     length = _lengths(sf, touching)
     per_wall = np.bincount(s.wall_of_node[s.a[touching]], length, minlength=len(sf.walls))
     wall = int(per_wall.argmax())
     sides = np.flatnonzero((s.opening < 0) & (s.wall_of_node[s.a] == wall))
-    start, end = _ends(sf, region, sides, np.isin(sides, touching))
+    start, end = _ends(sf, region, shape, sides, np.isin(sides, touching))
     own = touching[s.wall_of_node[s.a[touching]] == wall]
     shore = sf.frame.mesh.neighbours[s.tri[own], s.side[own]] >= 0
     return Contact(wall, float(per_wall[wall]), start, end, bool(shore.any()))
 
 
-def _wall_sides(sf: StreamFunction, region: Region, shape: Shape) -> np.ndarray:
-    """Boundary sides whose triangle lies in the zone and whose wall has the zone's dividing level."""
-    s = sf.shape
+def _wall_sides(sf: StreamFunction, region: Region, shape: Shape, noise: float) -> np.ndarray:
+    """Boundary sides at the zone's dividing level whose triangle reaches into the zone."""
+    s, mesh = sf.shape, sf.frame.mesh
     place = np.searchsorted(shape.triangles, s.tri)
     place[place == len(shape.triangles)] = 0
-    held = (shape.triangles[place] == s.tri) & (s.opening < 0)
-    return np.flatnonzero(held & (sf.psi[s.a] == region.level) & (sf.psi[s.b] == region.level))
+    beside = np.flatnonzero((shape.triangles[place] == s.tri) & (s.opening < 0))
+    far = mesh.triangles[s.tri[beside], (s.side[beside] + 2) % 3]
+    at_level = np.abs(sf.psi[s.a[beside]] - region.level) <= noise
+    return beside[at_level & np.isin(far, region.nodes)]
 
 
 def _lengths(sf: StreamFunction, sides: np.ndarray) -> np.ndarray:
@@ -57,8 +66,12 @@ def _lengths(sf: StreamFunction, sides: np.ndarray) -> np.ndarray:
     return np.hypot(*(xy[s.b[sides]] - xy[s.a[sides]]).T)
 
 
-def _ends(sf: StreamFunction, region: Region, sides: np.ndarray, touching: np.ndarray):
-    """Both ends of the contact on one wall, between the middles of sides where the shear changes sign."""
+def _ends(sf: StreamFunction, region: Region, shape: Shape, sides: np.ndarray, touching: np.ndarray):
+    """Both ends of the contact on one wall.
+
+    First between the middles of sides where the shear changes sign; then led back to the wall along the
+    dividing streamline, because one triangle off the wall that line has already moved along it.
+    """
     xy, s = sf.frame.mesh.node_xy, sf.shape
     a, b = s.a[sides], s.b[sides]
     leaving = np.full(sf.frame.mesh.n_nodes, -1, np.int32)
@@ -74,7 +87,44 @@ def _ends(sf: StreamFunction, region: Region, sides: np.ndarray, touching: np.nd
     shear = _shear(sf, region, sides)[chain]
     hit = np.flatnonzero(touching[chain])
     p, q = xy[a[chain]], xy[b[chain]]
-    return _turn(p, q, shear, hit[0] - 1, hit[0], ring), _turn(p, q, shear, hit[-1], hit[-1] + 1, ring)
+    start, end = _turn(p, q, shear, hit[0] - 1, hit[0], ring), _turn(p, q, shear, hit[-1], hit[-1] + 1, ring)
+    wall = shapely.LineString(np.vstack([p, q[-1:]]))
+    outline = _outline(shape)
+    own = sf.frame.mesh.triangle_area[s.tri[sides[chain[hit]]]]
+    size = float(np.sqrt(own[[0, -1]].mean() * 4 / np.sqrt(3)))
+    return _led_back(wall, outline[::-1], start, size), _led_back(wall, outline, end, size)
+
+
+def _outline(shape: Shape) -> np.ndarray:
+    """Corners of the zone's outer ring, anticlockwise, without the repeated one."""
+    parts = shapely.get_parts(shape.polygon)
+    greatest = parts[int(shapely.area(parts).argmax())]
+    return np.asarray(shapely.geometry.polygon.orient(greatest).exterior.coords)[:-1]
+
+
+def _led_back(wall: shapely.LineString, outline: np.ndarray, rough: np.ndarray, size: float) -> np.ndarray:
+    """Where the free part of an outline meets the wall, by a straight line through its first points off it.
+
+    ``outline`` runs along the wall first and then off it; ``rough`` is where it leaves, to a triangle's
+    ``size``. Falls back on ``rough`` where the line is too short or would move it by more than two triangles.
+    """
+    off = shapely.distance(wall, shapely.points(outline))
+    on_wall = np.flatnonzero(off < 1e-9 * size)
+    if not on_wall.size:
+        return rough
+    at = on_wall[np.hypot(*(outline[on_wall] - rough).T).argmin()]
+    free = np.roll(outline, -at, axis=0)[1:40]
+    off = np.roll(off, -at)[1:40]
+    far = np.flatnonzero(off > _LEAD_BACK * size)
+    free, off = free[: far[0] if far.size else None], off[: far[0] if far.size else None]
+    used = off > 0.2 * size
+    if np.count_nonzero(used) < 2 or np.ptp(off[used]) < 0.5 * size:
+        return rough
+    along = shapely.line_locate_point(wall, shapely.points(free[used]))
+    slope, foot = np.polyfit(off[used], along, 1)
+    if abs(foot - shapely.line_locate_point(wall, shapely.Point(rough))) > 2 * size:
+        return rough
+    return np.asarray(wall.interpolate(foot).coords)[0]
 
 
 def _opened(chain: np.ndarray, touching: np.ndarray, length: np.ndarray) -> np.ndarray:
@@ -97,7 +147,7 @@ def _shear(sf: StreamFunction, region: Region, sides: np.ndarray) -> np.ndarray:
     mesh, s = sf.frame.mesh, sf.shape
     far = mesh.triangles[s.tri[sides], (s.side[sides] + 2) % 3]
     height = 2 * mesh.triangle_area[s.tri[sides]] / _lengths(sf, sides)
-    return region.sign * (sf.psi[far] - region.level) / height
+    return region.sign * (sf.psi[far] - sf.psi[s.a[sides]]) / height
 
 
 def _turn(p: np.ndarray, q: np.ndarray, shear: np.ndarray, i: int, j: int, ring: bool) -> np.ndarray:

@@ -7,7 +7,7 @@ from dataclasses import dataclass
 import numpy as np
 import shapely
 
-from .._kernels import contour
+from .._kernels import contour, labels
 from ..reach import Reach
 from ..settings import Settings
 from ..streamfunction import StreamFunction
@@ -15,7 +15,7 @@ from .contact import Contact, contact_of
 from .naming import named, setting_of
 from .outer import Extent, extent_of, narrow_of
 from .regions import Region, closed_regions, open_regions
-from .shape import Shape, peak_of, shape_of
+from .shape import Shape, peak_of, saddle_of, shape_of
 from .zone import SmallRegion, Zone, ZoneSet
 
 CAUTIONS = ("wake-detail", "no-secondary-currents", "sensitivity", "rotation-time", "no-roller")
@@ -33,6 +33,7 @@ class _Candidate:
     psi_centre: float
     noise: float
     across: float
+    cores: int
 
 
 def find_zones(sf: StreamFunction, *, reach: Reach | None = None, settings: Settings | None = None) -> ZoneSet:
@@ -95,7 +96,7 @@ def _candidate(sf: StreamFunction, region: Region, settings: Settings) -> _Candi
     if across < settings["zone_triangles_across"]:
         return _small(sf, region, flow, shape.area_m2, "too few triangles across")
     centre, psi_centre = peak_of(sf, region)
-    return _Candidate(region, shape, centre, psi_centre, noise, across)
+    return _Candidate(region, shape, centre, psi_centre, noise, across, _cores_above(sf, region, shape, noise))
 
 
 def _small(sf: StreamFunction, region: Region, flow: float, area: float, why: str) -> SmallRegion:
@@ -121,7 +122,7 @@ def _cut_by_edge(sf: StreamFunction, settings: Settings) -> list[SmallRegion]:
 
 def _zone(sf: StreamFunction, reach: Reach, c: _Candidate, in_zones: np.ndarray) -> Zone:
     region, shape = c.region, c.shape
-    contact = contact_of(sf, region, shape)
+    contact = contact_of(sf, region, shape, c.noise)
     extent = extent_of(sf, shape, in_zones)
     along = np.array(extent.along)
     kind, wall, structure = setting_of(sf, reach, shape, contact, along)
@@ -159,8 +160,8 @@ def _flags(c: _Candidate, contact: Contact | None, extent: Extent, solid: bool) 
         flags.append("at the waterline")
     if not extent.aligned:
         flags.append("no outer flow")
-    if len(c.region.cores) > 1:
-        flags.append(f"{len(c.region.cores)} cores")
+    if c.cores > 1:
+        flags.append(f"{c.cores} cores")
     return tuple(flags)
 
 
@@ -174,8 +175,60 @@ def _ends(sf, region: Region, shape: Shape, contact: Contact | None, kind: str, 
         separation, other = contact.start, contact.end
     if kind != "behind structure":
         return separation, other
+    return separation, _closing(sf, region, shape, contact, along)
+
+
+def _closing(sf, region: Region, shape: Shape, contact: Contact | None, along: np.ndarray) -> np.ndarray:
+    """Where a wake closes.
+
+    For an eddy bounded by a saddle in its rear half, that saddle; else where, on the line through its rear
+    end along the outer flow, the speed turns from backward to forward.
+    """
     points = shapely.get_coordinates(shape.polygon)
-    return separation, points[int((points @ along).argmax())]
+    distance = points @ along
+    if contact is None and sf.shape.wall_of_node[region.meets] < 0:
+        saddle = saddle_of(sf, region.meets)
+        if saddle @ along > (distance.min() + distance.max()) / 2:
+            return saddle
+    tip = points[int(distance.argmax())]
+    size = edge_size(float(sf.frame.mesh.triangle_area[shape.triangles].mean()))
+    t = np.linspace(-3 * size, 3 * size, 121)
+    speed = _speed_along(sf, tip + t[:, None] * along, along)
+    turns = np.flatnonzero((speed[:-1] < 0) & (speed[1:] >= 0))
+    if not turns.size:
+        return tip
+    k = turns[np.abs(t[turns]).argmin()]
+    return tip + (t[k] - speed[k] * (t[k + 1] - t[k]) / (speed[k + 1] - speed[k])) * along
+
+
+def _speed_along(sf: StreamFunction, points: np.ndarray, along: np.ndarray) -> np.ndarray:
+    """Component of the velocity along a unit vector at points, m/s; NaN outside the mesh."""
+    mesh = sf.frame.mesh
+    at = mesh.find(points)
+    corner = mesh.node_xy[mesh.triangles[at]]
+    one, two, rel = corner[:, 1] - corner[:, 0], corner[:, 2] - corner[:, 0], points - corner[:, 0]
+    twice = one[:, 0] * two[:, 1] - one[:, 1] * two[:, 0]
+    b = (rel[:, 0] * two[:, 1] - rel[:, 1] * two[:, 0]) / twice
+    c = (one[:, 0] * rel[:, 1] - one[:, 1] * rel[:, 0]) / twice
+    u = sf.frame.velocity[mesh.triangles[at]] @ along
+    return np.where(at >= 0, (1 - b - c) * u[:, 0] + b * u[:, 1] + c * u[:, 2], np.nan)
+
+
+def _cores_above(sf: StreamFunction, region: Region, shape: Shape, noise: float) -> int:
+    """Extrema that stand out from their neighbours by more than the noise of psi."""
+    mesh, psi = sf.frame.mesh, region.sign * sf.psi
+    triangles = mesh.triangles[shape.triangles]
+    count, kept = 1, [region.cores[0]]
+    for core in region.cores[1:]:
+        above = np.zeros(mesh.n_nodes, bool)
+        above[region.nodes] = psi[region.nodes] > psi[core] - noise
+        sides = np.concatenate([triangles[:, [0, 1]], triangles[:, [1, 2]], triangles[:, [2, 0]]])
+        sides = sides[above[sides].all(axis=1)]
+        part, _ = labels.of_pairs(sides[:, 0], sides[:, 1], above)
+        if part[core] not in part[kept]:
+            kept.append(core)
+            count += 1
+    return count
 
 
 def _reverse(sf: StreamFunction, region: Region, along: np.ndarray) -> float:

@@ -75,8 +75,10 @@ def _outline_before(sf: StreamFunction, reach: Reach, shape: Shape, along: np.nd
 def named(sf: StreamFunction, reach: Reach, zones: list[Zone]) -> tuple[Zone, ...]:
     """The zones in order along the reach, with ids and names that are not used twice."""
     def place(zone: Zone) -> tuple[float, float]:
+        # To the millimetre, left first, so that round-off cannot change the order of twins.
         x, y = zone.centre
-        return (zone.chainage_m, zone.offset_m) if zone.chainage_m is not None else (float(x), float(y))
+        along, left = (x, y) if zone.chainage_m is None else (zone.chainage_m, zone.offset_m)
+        return round(float(along), 3), -round(float(left), 3)
 
     ordered = sorted(zones, key=place)
     made, used = [], {}

@@ -10,6 +10,10 @@ from .._kernels import regions as kernel
 from ..streamfunction import StreamFunction
 from ..streamfunction.solve import node_triangles
 
+# psi counts as equal within this share of its range: far above the solver's round-off, far below any figure.
+# Without it, round-off along the axis of a symmetric wake would decide what is joined to what.
+_QUANTUM = 2.0**-33
+
 
 @dataclass(frozen=True, eq=False)
 class Region:
@@ -48,13 +52,26 @@ def closed_regions(sf: StreamFunction) -> list[Region]:
 
 
 def open_regions(sf: StreamFunction) -> list[Region]:
-    """Regions round extrema of psi on an open boundary: eddies that the model's edge cuts."""
-    return [r for sign in (1, -1) for r in _grown(sf, sign, sf.shape.open_node, past_ends=True)]
+    """Regions round extrema of psi on an open boundary: eddies that the model's edge cuts.
+
+    The corner where two open boundaries meet is no such extremum: water may come in by one and
+    leave by the other.
+    """
+    s, n = sf.shape, sf.frame.mesh.n_nodes
+    low, high = np.full(n, len(sf.open_boundaries)), np.full(n, -1)
+    both, kind = np.concatenate([s.a, s.b]), np.tile(s.opening, 2)
+    np.minimum.at(low, both, kind)
+    np.maximum.at(high, both, kind)
+    within = low == high
+    found = [r for sign in (1, -1) for r in _grown(sf, sign, s.open_node, past_ends=True)]
+    return [r for r in found if within[r.peak]]
 
 
 def _grown(sf: StreamFunction, sign: int, ends: np.ndarray, *, past_ends: bool) -> list[Region]:
     mesh = sf.frame.mesh
-    values = sign * np.nan_to_num(sf.psi)
+    psi = np.nan_to_num(sf.psi)
+    quantum = float(np.ptp(psi)) * _QUANTUM
+    values = sign * (np.round(psi / quantum) if quantum > 0 else psi)
     stands_for, first, nodes = _walls(sf)
     top = kernel.maxima(mesh.triangles, sf.domain, values, stands_for)
     if past_ends:
@@ -62,18 +79,20 @@ def _grown(sf: StreamFunction, sign: int, ends: np.ndarray, *, past_ends: bool) 
     else:
         seeds = np.flatnonzero(top & ~ends)
     # The highest first, so that the peak of a region with several cores is its greatest.
-    seeds = seeds[np.argsort(-values[seeds], kind="stable")].astype(np.int32)
+    seeds = seeds[np.argsort(-sign * psi[seeds], kind="stable")].astype(np.int32)
     start, around = node_triangles(mesh)
     found, members, level, meets, peak = kernel.grow(
         mesh.triangles, sf.domain, start, around, values, stands_for, first, nodes, sf.shape.wall_of_node, ends, seeds,
         past_ends,
     )
+    on_walls = {float(values[w.nodes[0]]): w.psi_m3_s for w in sf.walls}
     made = []
     for r in range(len(level)):
         own = members[found[r] : found[r + 1]]
         cores = own[top[own]]
-        cores = cores[np.argsort(-values[cores], kind="stable")]
-        made.append(Region(sign, int(peak[r]), sign * float(level[r]), int(meets[r]), _with_walls(sf, own), cores))
+        cores = cores[np.argsort(-sign * psi[cores], kind="stable")]
+        edge = on_walls.get(float(level[r]), float(psi[meets[r]]))
+        made.append(Region(sign, int(peak[r]), edge, int(meets[r]), _with_walls(sf, own), cores))
     return made
 
 

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Callable
 from dataclasses import dataclass
 
 import numpy as np
@@ -42,6 +43,10 @@ def shape_of(sf: StreamFunction, region: Region, level: float | None = None) -> 
     edge = region.level if level is None else level
     triangles = triangles_round(sf, region.nodes)
     values = region.sign * np.nan_to_num(sf.psi)
+    if level is None:  # what is not of the region lies below it, round-off or not
+        own = values[region.nodes]
+        values = np.minimum(values, region.sign * edge)
+        values[region.nodes] = own
     corners, number, area, volume, deepest = contour.cut(
         mesh.node_xy, mesh.triangles, triangles, values, region.sign * edge, sf.frame.depth
     )
@@ -68,11 +73,21 @@ def peak_of(sf: StreamFunction, region: Region) -> tuple[np.ndarray, float]:
     Where the node is a wall (water that goes round an island), or the fit has no extremum near, the
     node's own.
     """
-    mesh, node = sf.frame.mesh, region.peak
-    own = mesh.node_xy[node], float(sf.psi[node])
-    wall = sf.shape.wall_of_node[node]
+    wall = sf.shape.wall_of_node[region.peak]
     if wall >= 0:
-        return mesh.node_xy[sf.walls[wall].nodes].mean(axis=0), own[1]
+        return sf.frame.mesh.node_xy[sf.walls[wall].nodes].mean(axis=0), float(sf.psi[region.peak])
+    return _stationary(sf, region.peak, lambda h: np.linalg.det(h) > 0 and region.sign * h[0, 0] < 0)
+
+
+def saddle_of(sf: StreamFunction, node: int) -> np.ndarray:
+    """Place (2,) of the saddle of psi near a node, by the same fit."""
+    return _stationary(sf, node, lambda h: np.linalg.det(h) < 0)[0]
+
+
+def _stationary(sf: StreamFunction, node: int, wanted: Callable[[np.ndarray], bool]) -> tuple[np.ndarray, float]:
+    """Place and value where the gradient of the best quadratic round a node is zero; the node's own failing that."""
+    mesh = sf.frame.mesh
+    own = mesh.node_xy[node], float(sf.psi[node])
     near = np.unique(mesh.triangles[triangles_round(sf, np.array([node]))])
     ring = np.unique(mesh.triangles[triangles_round(sf, near[sf.shape.wall_of_node[near] < 0])])
     d = mesh.node_xy[ring] - own[0]
@@ -84,7 +99,7 @@ def peak_of(sf: StreamFunction, region: Region) -> tuple[np.ndarray, float]:
         return own
     c = np.linalg.lstsq(table * weight[:, None], sf.psi[ring] * weight, rcond=None)[0]
     hessian = np.array([[2 * c[3], c[4]], [c[4], 2 * c[5]]])
-    if not (np.linalg.det(hessian) > 0 and region.sign * hessian[0, 0] < 0):
+    if not wanted(hessian):
         return own
     step = -np.linalg.solve(hessian, c[1:3])
     if np.hypot(*(step * size)) > np.hypot(*(mesh.node_xy[near] - own[0]).T).max():
