@@ -1,0 +1,1 @@
+"""The review record: one model of figures, written as PDF, GeoPackage, CSV and JSON."""
