@@ -13,7 +13,7 @@ from ..mesh import Mesh
 from ..settings import Settings
 
 # A bank that bends makes the flow of a face beside it cross the face's own edge at a few degrees.
-_CROSSING = 0.25
+_CROSSING = 0.1
 _CLOSED_WORDS = ("wall", "bank", "pier", "island", "land", "closed", "dry")
 
 
@@ -57,7 +57,8 @@ def open_boundaries(
         Stretches that the review or the file names; they are taken as they are, but for those whose
         name says that they are closed ("wall", "bank", "pier", "island", "land", "closed", "dry").
         Without any, boundaries are runs of adjoining edges that water crosses in one sense, whose
-        summed discharge exceeds ``open_boundary_share`` of the largest.
+        summed discharge exceeds ``open_boundary_share`` of the largest; holes of the mesh that take
+        in as much as they give are walls.
     """
     named = {
         name: np.asarray(edges, np.int32)
@@ -91,7 +92,9 @@ def _found(frame: Frame, settings: Settings) -> tuple[OpenBoundary, ...]:
     total = np.bincount(run[run >= 0], flux[run >= 0], minlength=1)
     if not run.size or not np.any(total):
         return ()
-    kept = np.flatnonzero(np.abs(total) > settings["open_boundary_share"] * np.abs(total).max())
+    least = settings["open_boundary_share"] * np.abs(total).max()
+    closed = _closed_rings(mesh, edges, flux, least)
+    kept = np.array([r for r in np.flatnonzero(np.abs(total) > least) if not closed[run == r].any()], int)
     order = sorted(kept, key=lambda r: (total[r] > 0, -abs(total[r])))
     made, inflows, outflows = [], 0, 0
     for r in order:
@@ -103,6 +106,19 @@ def _found(frame: Frame, settings: Settings) -> tuple[OpenBoundary, ...]:
             name = "outflow" if outflows == 1 else f"outflow {outflows}"
         made.append(OpenBoundary(name, edges[run == r]))
     return tuple(made)
+
+
+def _closed_rings(mesh: Mesh, edges: np.ndarray, flux: np.ndarray, least: float) -> np.ndarray:
+    """Edges (b,) bool of holes of the mesh that take in as much as they give: piers and islands."""
+    ends = mesh.edge_nodes[edges]
+    present = np.zeros(mesh.n_nodes, bool)
+    present[ends] = True
+    part, count = labels.of_pairs(ends[:, 0], ends[:, 1], present)
+    ring = part[ends[:, 0]]
+    spans = [np.prod(np.ptp(mesh.node_xy[ends[ring == r].ravel()], axis=0)) for r in range(count)]
+    shut = np.abs(np.bincount(ring, flux, minlength=count)) <= least
+    shut[int(np.argmax(spans))] = False
+    return shut[ring]
 
 
 def _runs(mesh: Mesh, edges: np.ndarray, sense: np.ndarray) -> np.ndarray:
