@@ -1,0 +1,264 @@
+"""One viewer's page: takes what the reader does, keeps the one state, and has the screen drawn from it."""
+
+from __future__ import annotations
+
+import logging
+from collections.abc import Callable
+from dataclasses import replace
+from typing import Any
+
+import numpy as np
+
+from . import theme
+from .choices import Choices, History, from_query
+from .questions import QUESTIONS
+from .questions.base import Desk, Question, Sizes
+from .raster import View
+from .reading import STORY, Reading
+from .results import Working
+from .screen import Screen
+from .views.figure import MapFigure
+from .wire import Wire
+
+log = logging.getLogger(__name__)
+_ZOOM = 1.6
+_PAN = 0.2  # share of the map's size a key press moves it
+
+
+class Page:
+    """The page of one viewer.
+
+    Parameters
+    ----------
+    reading : Reading
+        Shared with the other viewers of the same review.
+    query : str
+        The address's query string.
+    later : callable
+        ``later(function)`` runs a function soon on the page's own thread; may be called from any.
+    """
+
+    def __init__(self, reading: Reading, query: str, later: Callable[[Callable[[], None]], None]) -> None:
+        self.reading, self.later = reading, later
+        self.trouble = ""
+        try:
+            start = from_query(query)
+        except ValueError as error:
+            start, self.trouble = Choices(), str(error)
+        self.history = History(start)
+        self.sizes = Sizes()
+        self.own_section = start.section is not None
+        self.push, self.sent = False, 0
+        self.map = MapFigure((0.0, 0.0, 100.0, 54.0), moved=self._moved)
+        self.wire = Wire(self.hear)
+        self.screen = Screen()
+        self._scheduled = False
+        self._finished: set[Any] = set()
+        self._unlisten = reading.results.listen(self._told)
+        self.refresh()
+
+    @property
+    def choices(self) -> Choices:
+        return self.history.now
+
+    @property
+    def question(self) -> Question:
+        return QUESTIONS[self.choices.question]
+
+    def close(self) -> None:
+        """The viewer has left."""
+        self._unlisten()
+
+    # ---- what the reader does ----------------------------------------------------------------------
+
+    def hear(self, name: str, value: Any) -> None:
+        """Take one message of the page; a wrong one is told on the sentence line and changes nothing."""
+        act = getattr(self, f"on_{name}", None)
+        try:
+            if act is None:
+                raise ValueError(f"the page sent {name!r}, which the desk does not know; reload the page.")
+            act(value)
+            self.trouble = ""
+        except Working:
+            return  # a button pressed before its figures were there
+        except (ValueError, KeyError, TypeError) as error:
+            self.trouble = str(error)
+        self.refresh()
+
+    def choose(self, **changed: object) -> None:
+        """Take new choices into the history."""
+        self.push = self.history.go(self.choices.with_(**changed)) and not set(changed) <= {"seconds", "view", "section"}
+
+    def on_question(self, key: str) -> None:
+        self.choose(question=key)
+
+    def on_subject(self, name: str) -> None:
+        self.choose(subject=name, view=None, **({} if self.own_section else {"section": None}))
+
+    def on_run(self, run_id: str) -> None:
+        if run_id not in [id_ for id_, _ in self.reading.matter().runs]:
+            raise ValueError(f"there is no run {run_id!r} in this review.")
+        self.choose(run=run_id, seconds=None)
+
+    def on_frame(self, value: dict) -> None:
+        self.sent = int(value.get("sent", 0))
+        desk = self.desk()
+        index = int(np.clip(int(value["index"]), 0, desk.run.n_frames - 1))
+        self.choose(seconds=float(desk.run.times.seconds[index]))
+
+    def on_section(self, value: dict) -> None:
+        self.sent = int(value.get("sent", 0))
+        local = np.array(value["ends"], float).reshape(2, 2)
+        if not np.isfinite(local).all():
+            raise ValueError("the section's ends are not numbers; drag them again.")
+        world = self.desk().run.mesh.to_world(local).round(2)
+        self.own_section = True
+        self.choose(section=tuple(float(v) for v in world.ravel()))
+
+    def on_shade(self, value: str) -> None:
+        self.choose(shade=value)
+
+    def on_tubes(self, value: str) -> None:
+        self.choose(tubes=int(value))
+
+    def on_units(self, value: str) -> None:
+        self.choose(units=value)
+
+    def on_mode(self, value: str) -> None:
+        self.choose(mode=value)
+
+    def on_hall(self, value: str) -> None:
+        self.choose(hall=value == "yes")
+
+    def on_undo(self, _: str) -> None:
+        self.push = self.history.undo()
+
+    def on_redo(self, _: str) -> None:
+        self.push = self.history.redo()
+
+    def on_address(self, query: str) -> None:
+        self.history.go(from_query(query))
+        self.own_section = self.choices.section is not None
+        self.push = False
+
+    def on_zoom(self, value: str) -> None:
+        if value == "whole":
+            mesh = self.desk().run.mesh
+            west, south, east, north = mesh.bounds
+            cols, rows = self.sizes.map
+            width = 1.04 * max(east - west, (north - south) * cols / max(rows, 1))
+            self._look_at((west + east) / 2, (south + north) / 2, width)
+        elif value == "subject":
+            self.choose(view=None)
+        else:
+            view = self.view()
+            self._look_at(view.x, view.y, view.width_m * (1 / _ZOOM if value == "nearer" else _ZOOM))
+
+    def on_pan(self, step: list) -> None:
+        view = self.view()
+        self._look_at(
+            view.x + _PAN * float(step[0]) * view.width_m, view.y + _PAN * float(step[1]) * view.height_m, view.width_m
+        )
+
+    def on_size(self, value: dict) -> None:
+        columns, rows = (int(v) for v in value["map"])
+        old = self.sizes
+        self.sizes = Sizes(
+            int(value["window"]), float(value["ratio"]), int(value["ribbon"]) or old.ribbon,
+            int(value["section"]) or old.section, (columns, rows) if columns and rows else old.map,
+        )
+        if self.sizes == old:
+            return
+        self.screen.forget()
+
+    def on_stop(self, _: str) -> None:
+        self.reading.results.stop(STORY)
+
+    def on_resume(self, _: str) -> None:
+        self.reading.results.resume(STORY)
+
+    # ---- the view ----------------------------------------------------------------------------------
+
+    def view(self) -> View:
+        """The map's window: the reader's, else the question's, else the whole reach."""
+        desk = self.desk()
+        mesh = desk.run.mesh
+        columns, rows = self.sizes.map
+        if self.choices.view is not None:
+            x, y, width = self.choices.view
+            centre = mesh.to_local(np.array([x, y]))
+            return View(float(centre[0]), float(centre[1]), width, columns, rows)
+        wanted = self.question.view(desk)
+        if wanted is None:
+            west, south, east, north = mesh.bounds
+            wanted = (west + east) / 2, (south + north) / 2, 1.04 * max(east - west, (north - south) * columns / rows)
+        return View(*wanted, columns, rows)
+
+    def desk(self, view: View | None = None) -> Desk:
+        """What the question is given."""
+        look = theme.look(self.choices.mode, hall=self.choices.hall, width_px=self.sizes.window)
+        return Desk(self.choices, self.reading, look, self.sizes, view)
+
+    def _look_at(self, x: float, y: float, width: float) -> None:
+        world = self.desk().run.mesh.to_world(np.array([x, y]))
+        self.choose(view=(round(float(world[0]), 2), round(float(world[1]), 2), round(width, 2)))
+
+    def _moved(self, extent: tuple[float, float, float, float]) -> None:
+        """The reader panned or zoomed on the map itself."""
+        west, south, east, north = extent
+        try:
+            self._look_at((west + east) / 2, (south + north) / 2, east - west)
+        except Working:
+            return
+        self.soon()
+
+    def _settle(self) -> None:
+        """Hold the view and the section still once they are known, so that time moves only the water."""
+        desk = self.desk()
+        if self.choices.view is None and self.question.has_map:
+            view = self.view()
+            world = desk.run.mesh.to_world(np.array([view.x, view.y]))
+            held = (round(float(world[0]), 2), round(float(world[1]), 2), round(view.width_m, 2))
+            self.history.now = replace(self.choices, view=held)
+        if self.choices.section is None:
+            ends = self.question.section_ends(self.desk())
+            if ends is not None:
+                world = desk.run.mesh.to_world(np.array(ends)).round(2)
+                self.history.now = replace(self.choices, section=tuple(float(v) for v in world.ravel()))
+
+    # ---- drawing -----------------------------------------------------------------------------------
+
+    def soon(self) -> None:
+        """Draw once the messages that are waiting have been heard."""
+        if not self._scheduled:
+            self._scheduled = True
+            self.later(self._now)
+
+    def _now(self) -> None:
+        self._scheduled = False
+        self.refresh()
+
+    def _told(self, key: Any) -> None:
+        """A result is ready (called from the worker)."""
+        self._finished.add(key)
+        if self.screen.awaits(key):
+            self.later(self._ready)
+
+    def _ready(self) -> None:
+        finished, self._finished = self._finished, set()
+        if any(self.screen.awaits(key) for key in finished):
+            self.screen.only = self.screen.waiting_for(finished)
+            self.refresh()
+
+    def refresh(self) -> None:
+        """Draw what can be drawn; what is still being made follows when it is ready."""
+        try:
+            self._settle()
+        except (Working, ValueError, OSError):
+            pass  # the screen meets the same and tells it
+        try:
+            self.screen.draw(self)
+        except Exception:
+            log.exception("the screen could not be drawn")
+            raise
+        self.push = False

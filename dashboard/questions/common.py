@@ -1,0 +1,184 @@
+"""What several questions show alike: structures, names, the section beside the map, controls in captions."""
+
+from __future__ import annotations
+
+import re
+from collections.abc import Mapping
+
+import numpy as np
+import shapely
+
+from hydro.eddies import Zone
+from hydro.ledger import FrameLedger
+
+from .. import text
+from ..reading import Story
+from ..views import ribbon, section
+from ..views.scene import Name, StructureMark
+from .base import Desk
+
+
+def structures(desk: Desk) -> tuple[StructureMark, ...]:
+    """The structures of the chosen run's design."""
+    return tuple(StructureMark(s.name, s.kind, s.geometry) for s in desk.reading.reach(desk.run_id).structures)
+
+
+def names(desk: Desk) -> tuple[Name, ...]:
+    """Banks and the direction of flow, placed in the part of the reach that is in view."""
+    reach = desk.reading.reach(desk.run_id)
+    centre = reach.centre_line
+    if centre is None or desk.view is None:
+        return ()
+    west, south, east, north = desk.view.extent
+    chainage = np.linspace(0, centre.length, 400)
+    at = centre.at(chainage)
+    inside = (at[:, 0] > west) & (at[:, 0] < east) & (at[:, 1] > south) & (at[:, 1] < north)
+    if not inside.any():
+        return ()
+    s = chainage[inside]
+    start = float(s[0] + 0.06 * (s[-1] - s[0]))
+    direction = centre.direction(np.array([start]))[0]
+    x, y = centre.at(np.array([start]))[0]
+    return (Name("flow", float(x), float(y), _readable(direction), arrow=True),)
+
+
+def _readable(direction: np.ndarray) -> float:
+    return float(np.arctan2(direction[1], direction[0]))
+
+
+def chooser(name: str, chosen: str, offered: Mapping[str, str], label: str) -> str:
+    """A word of the caption that changes it: a native list in the caption's own type."""
+    options = "".join(
+        f'<option value="{text.safe(v)}"{" selected" if v == chosen else ""}>{text.safe(words)}</option>'
+        for v, words in offered.items()
+    )
+    return f'<select class="word" data-choose="{name}" id="choose-{name}" aria-label="{text.safe(label)}">{options}</select>'
+
+
+def discharge(story: Story) -> np.ndarray:
+    """Through-discharge by frame, NaN where not known."""
+    return np.array([b.discharge_m3_s if b else np.nan for b in story.beats])
+
+
+def ribbon_box(desk: Desk) -> ribbon.Box:
+    """The ribbon's lines for this look and window."""
+    return ribbon.Box(max(desk.sizes.ribbon, 280), desk.look.label_px)
+
+
+def moments(course: ribbon.Course, desk: Desk) -> dict[str, object]:
+    """What the slider under the ribbon needs to know."""
+    at = ribbon.places(course, ribbon_box(desk))
+    return {
+        "index": course.index, "last": len(course.seconds) - 1, "words": ribbon.words(course, desk.units),
+        "places": [round(float(x), 1) for x in at],
+    }
+
+
+def natural(name: str) -> tuple:
+    """Sort key that puts E2 before E10."""
+    return tuple(int(p) if p.isdigit() else p for p in re.split(r"(\d+)", name))
+
+
+def section_ends(desk: Desk, zone: Zone | None) -> tuple[tuple[float, float], tuple[float, float]] | None:
+    """Left and right end of the section, local m: the reader's, else across the river at the subject."""
+    mesh = desk.run.mesh
+    if desk.choices.section is not None:
+        x1, y1, x2, y2 = desk.choices.section
+        a, b = mesh.to_local(np.array([[x1, y1], [x2, y2]]))
+        return (float(a[0]), float(a[1])), (float(b[0]), float(b[1]))
+    centre = desk.reading.reach(desk.run_id).centre_line
+    if centre is None:
+        return None
+    at = np.asarray(zone.centre) if zone is not None else centre.at(np.array([centre.length / 2]))[0]
+    chainage = float(centre.locate(at)[0][0])
+    return across(desk, chainage)
+
+
+def across(desk: Desk, chainage: float, reach_m: float = 150.0) -> tuple[tuple[float, float], tuple[float, float]]:
+    """A line square to the centre line from bank to bank, cut where it leaves the model."""
+    centre, mesh = desk.reading.reach(desk.run_id).centre_line, desk.run.mesh
+    offsets = np.arange(reach_m, -reach_m - 0.5, -0.5)
+    points = np.vstack([centre.at(np.array([chainage]), float(o)) for o in offsets])
+    inside = mesh.find(points) >= 0
+    middle = len(offsets) // 2
+    if not inside[middle]:
+        ends = points[[0, -1]]
+    else:
+        gap = np.flatnonzero(~inside)
+        left = gap[gap < middle].max(initial=-1) + 1
+        right = gap[gap > middle].min(initial=len(offsets)) - 1
+        ends = points[[left, right]]
+    return (float(ends[0, 0]), float(ends[0, 1])), (float(ends[1, 0]), float(ends[1, 1]))
+
+
+def section_html(desk: Desk, ends, ledger: FrameLedger) -> str:
+    """The section beside the map, with its discharge by the field and by psi."""
+    if ends is None:
+        return ""
+    u = desk.units
+    profile, figures = profile_of(ledger, ends)
+    box = section.Box(max(desk.sizes.section, 260), desk.look.label_px)
+    words = "hanging bars: back upstream" if not desk.look.hall else "hanging: upstream"
+    by_psi = f", <b>{u.quantity(figures['psi'], 'm3/s')}</b> by psi" if figures["psi"] is not None else ""
+    area, mean = u.quantity(figures["area"], "m2"), u.quantity(figures["mean"], "m/s")
+    return (
+        f'<h2>Section <span class="beside">looking downstream; {words}</span></h2>{section.draw(profile, box, u)}'
+        f'<p class="figures">Passes <b>{u.quantity(figures["field"], "m3/s")}</b> by the field{by_psi}; '
+        f"{area} of water at a mean of {mean}.</p>"
+    )
+
+
+def profile_of(ledger: FrameLedger, ends, count: int = 400) -> tuple[section.Profile, dict[str, float | None]]:
+    """What the section line reads from a frame, and its discharge."""
+    frame, mesh = ledger.frame, ledger.frame.mesh
+    a, b = (np.asarray(e, float) for e in ends)
+    t = np.linspace(0, 1, count)
+    points = a + t[:, None] * (b - a)
+    length = float(np.hypot(*(b - a)))
+    found = mesh.find(points)
+    nodes = mesh.triangles[np.maximum(found, 0)]
+    p = mesh.node_xy[nodes]
+    area = (p[:, 1, 0] - p[:, 0, 0]) * (p[:, 2, 1] - p[:, 0, 1]) - (p[:, 2, 0] - p[:, 0, 0]) * (p[:, 1, 1] - p[:, 0, 1])
+    w = np.empty((count, 3))
+    for k in range(3):
+        i, j = (k + 1) % 3, (k + 2) % 3
+        w[:, k] = (
+            (p[:, i, 0] - points[:, 0]) * (p[:, j, 1] - points[:, 1])
+            - (p[:, j, 0] - points[:, 0]) * (p[:, i, 1] - points[:, 1])
+        ) / area
+    off = found < 0
+
+    def along(values: np.ndarray) -> np.ndarray:
+        read = np.einsum("ij,ij...->i...", w, values[nodes])
+        read[off] = np.nan
+        return read
+
+    depth = along(frame.depth)
+    bed = along(frame.bed)
+    wet = depth > frame.wet_depth_m
+    direction = (b - a) / max(length, 1e-12)
+    normal = np.array([direction[1], -direction[0]]) * -1.0  # from left to right bank, downstream is to the left of travel
+    q = along(frame.unit_discharge) @ normal
+    speed = np.where(wet, q / np.where(wet, depth, 1.0), np.nan)
+    psi = along(ledger.sf.psi)
+    step = length / (count - 1)
+    flow = float(np.nansum(np.where(wet, q, 0.0)) * step)
+    water = float(np.nansum(np.where(wet, depth, 0.0)) * step)
+    known = psi[np.isfinite(psi)]
+    by_psi = float(known[0] - known[-1]) if known.size else None
+    levels = np.where(wet, bed + depth, np.nan)
+    lines = ledger.sf.through_discharge_m3_s / 22 if ledger.sf.through_discharge_m3_s else 0.0
+    return (
+        section.Profile(t * length, bed, levels, speed, psi, lines),
+        {"field": flow, "psi": by_psi, "area": water, "mean": flow / water if water > 0 else None},
+    )
+
+
+def crossing(ends, outline: shapely.Geometry) -> tuple[float, float] | None:
+    """From and to, m along the section, where it runs inside an outline."""
+    line = shapely.LineString(ends)
+    cut = line.intersection(outline)
+    if cut.is_empty:
+        return None
+    at = [line.project(shapely.Point(c)) for c in shapely.get_coordinates(cut)]
+    return min(at), max(at)

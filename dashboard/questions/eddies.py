@@ -1,0 +1,222 @@
+"""Eddies: where does the water turn back on itself, and how much of it?"""
+
+from __future__ import annotations
+
+import numpy as np
+
+from hydro.eddies import Zone
+from hydro.ledger import FrameLedger
+
+from .. import text
+from ..choices import SHADES, TUBES
+from ..raster import View
+from ..results import Working
+from ..views import marks, ribbon, table
+from ..views.scene import Scene, Water, ZoneMark
+from . import common
+from .base import Desk, Question, footnote
+
+_ROWS_DESK, _ROWS_HALL = 6, 1
+_UNDER_RESOLVED = "under-resolved"
+
+
+class Eddies(Question):
+    """The question that Leewater is named for."""
+
+    key = "eddies"
+    word = "Eddies"
+    asks = "Where does the water turn back on itself, and how much of it?"
+
+    def summary(self, desk: Desk) -> str:
+        ledger = desk.reading.known(("ledger", desk.run_id, desk.index))
+        if ledger is None:
+            return "being found"
+        zones = ledger.zones.zones
+        if not zones:
+            return "none in this frame"
+        largest = max(z.area_m2 for z in zones)
+        return f"{len(zones)} {'eddy' if len(zones) == 1 else 'eddies'}, largest {desk.units.quantity(largest, 'm2')}"
+
+    def sentence(self, desk: Desk) -> str:
+        ledger = self.ledger(desk)
+        zones = ledger.zones.zones
+        here = "here" if desk.look.hall else "in this mean flow" if ledger.frame.kind == "mean" else "in this frame"
+        if not ledger.sf.drawn:
+            return "Storage explains more than half of the flow in this frame, so it has no eddies to tell of."
+        if not zones:
+            rest = len(ledger.zones.small)
+            more = f" {text.count(rest, 'region')} under the floor {'is' if rest == 1 else 'are'} left out." if rest else ""
+            return f"No eddy turns {here}.{more}"
+        zone = self.subject(desk)
+        largest = zone.area_m2 == max(z.area_m2 for z in zones)
+        u, ids = desk.units, self.cautions(desk)
+        first = f"{text.count(len(zones), 'eddy', 'eddies')} {'turns' if len(zones) == 1 else 'turn'} {here}."
+        who = "It" if len(zones) == 1 else "The largest," if largest else "Of these,"
+        area = u.quantity(zone.area_m2, "m2", **_span(zone, "area_m2"))
+        flow = u.quantity(zone.recirculating_discharge_m3_s, "m3/s", **_span(zone, "recirculating_discharge_m3_s"))
+        share = zone.share_of_through_discharge
+        river = f", {text.percent(share)} of the river" if share is not None else ""
+        name = "" if len(zones) == 1 else f' <em class="subject">{text.safe(zone.id)}</em> {_where(zone)},'
+        return (
+            f"{first} {who}{name} covers <b>{area}</b>{footnote(ids, 'sensitivity')} and takes <b>{flow}</b> round with it{river}."
+        )
+
+    def scene(self, desk: Desk) -> Scene:
+        reading, run_id, index = desk.reading, desk.run_id, desk.index
+        frame = reading.frame(run_id, index)
+        shade = desk.choices.shade
+        value = frame.speed if shade == "speed" else frame.depth
+        structures = common.structures(desk)
+        water = Water(frame, value, reading.top(run_id, shade))
+        try:
+            ledger = self.ledger(desk)
+            lines, tube = reading.tubes(run_id, index, desk.choices.tubes)
+        except (Working, ValueError):  # the sentence says which; the water is shown meanwhile
+            return Scene(water=water, structures=structures, names=common.names(desk))
+        water = Water(frame, value, water.top, ledger.sf.psi, tube, ledger.sf.domain, lines)
+        subject = self.subject(desk)
+        return Scene(
+            water=water, shore=reading.shore(run_id, index), structures=structures,
+            zones=tuple(_mark(z, z is subject) for z in ledger.zones.zones), names=common.names(desk),
+            section=self.section_ends(desk),
+        )
+
+    def view(self, desk: Desk):
+        zone = self.subject(desk)
+        if zone is None:
+            return None
+        width = float(np.clip(7.0 * max(zone.length_m, zone.width_m), 60.0, 400.0))
+        return float(zone.centre[0]), float(zone.centre[1]), width
+
+    def caption(self, desk: Desk, scene: Scene, view: View) -> str:
+        choices, u = desk.choices, desk.units
+        tube = scene.water.tube_m3_s if scene.water is not None else 0.0
+        shade = common.chooser("shade", choices.shade, {s: s.capitalize() for s in SHADES}, "what the shade of the water tells")
+        count = common.chooser("tubes", str(choices.tubes), {str(t): f"{t} tubes" for t in TUBES}, "number of stream tubes")
+        of = f" of {u.quantity(tube, 'm3/s')}" if tube else ""
+        words = f"<i>Plate 2.</i> {shade} in {count}{of}: narrow is fast."
+        if not desk.sizes.narrow:
+            words += f" {marks.triangle(True)} leaves the wall {marks.triangle(False)} returns."
+        return words
+
+    def key_html(self, desk: Desk) -> str:
+        shade = desk.choices.shade
+        top = desk.reading.known(("top", desk.run_id, shade))
+        if top is None:
+            return ""
+        ramp = marks.ramp_key(shade.capitalize(), top, "m/s" if shade == "speed" else "m", desk.units)
+        return ramp + ("" if desk.sizes.narrow or desk.look.hall else marks.hatch_key())
+
+    def alternative(self, desk: Desk) -> str:
+        ledger = self.ledger(desk)
+        u = desk.units
+        through = u.quantity(ledger.sf.through_discharge_m3_s, "m3/s")
+        eddies = "; ".join(
+            f"{text.safe(z.id)} {_where(z)}, {z.rotation}, {u.quantity(z.area_m2, 'm2')}" for z in ledger.zones.zones
+        )
+        return f"Map of the reach with {through} flowing through, in tubes of equal discharge. Eddies: {eddies or 'none'}."
+
+    def ribbon(self, desk: Desk) -> str:
+        return ribbon.draw(self.course(desk), common.ribbon_box(desk), desk.units)
+
+    def moments(self, desk: Desk) -> dict[str, object]:
+        return common.moments(self.course(desk), desk)
+
+    def course(self, desk: Desk) -> ribbon.Course:
+        """What the ribbon shows: discharge and the largest eddies, with the subject among them."""
+        run, story = desk.run, desk.reading.story(desk.run_id)
+        areas: dict[str, np.ndarray] = {}
+        for i, beat in enumerate(story.beats):
+            for id_, area in (beat.areas if beat else {}).items():
+                areas.setdefault(id_, np.full(run.n_frames, np.nan))[i] = area
+        subject = self.subject(desk)
+        chosen = subject.id if subject else ""
+        order = sorted(areas, key=lambda k: (k != chosen, -float(np.nanmax(areas[k]))))
+        keep = order[: _ROWS_HALL if desk.look.hall or desk.sizes.narrow else _ROWS_DESK]
+        rows = [ribbon.Row(k, areas[k], k == chosen) for k in sorted(keep, key=common.natural)]
+        return ribbon.Course(
+            run.times.seconds, run.times.instants, common.discharge(story), rows, desk.index, more_rows=len(order) - len(keep),
+        )
+
+    def side(self, desk: Desk) -> dict[str, str]:
+        return {"section": common.section_html(desk, self.section_ends(desk), self.ledger(desk)), "table": self.table(desk)}
+
+    def table(self, desk: Desk) -> str:
+        ledger, u, ids = self.ledger(desk), desk.units, self.cautions(desk)
+        subject = self.subject(desk)
+        zones = list(ledger.zones.zones)
+        if desk.look.hall or desk.sizes.narrow:
+            zones.sort(key=lambda z: (z is not subject, -z.area_m2))
+            zones = zones[: 3 if desk.look.hall else 6]
+        lines = [_line(z, z is subject, desk, ids) for z in zones]
+        few = desk.look.hall or desk.sizes.narrow
+        columns = (
+            table.Column("Eddy", figure=False), table.Column("Where", figure=False),
+            table.Column("Area,", f"{u.label('m2')}{footnote(ids, 'sensitivity')}"),
+            *(() if few else (
+                table.Column("Takes round,", u.label("m3/s")), table.Column("Once in,", f"s{footnote(ids, 'rotation-time')}"),
+            )),
+        )
+        moment = text.moment(ledger.frame.time, ledger.frame.seconds)
+        small = len(ledger.zones.small) + len(ledger.zones.open_to_boundary)
+        left_out = f"; {small} under the floor or cut by the model's edge" if small else ""
+        return table.html(table.Table(
+            "Ledger of eddies", f"{moment}{left_out}", f"Recirculation zones at {moment}", columns, lines,
+            "No recirculation zone is kept in this frame.",
+        ))
+
+    def cautions(self, desk: Desk) -> tuple[str, ...]:
+        return ("sensitivity", "wake-detail", "rotation-time", "no-roller")
+
+    def section_ends(self, desk: Desk):
+        return common.section_ends(desk, self.subject(desk))
+
+    def ledger(self, desk: Desk) -> FrameLedger:
+        """Stream function and eddies of the chosen frame."""
+        return desk.reading.ledger(desk.run_id, desk.index)
+
+    def subject(self, desk: Desk) -> Zone | None:
+        """The chosen eddy if it is in this frame, else the largest; None where there is none."""
+        zones = self.ledger(desk).zones.zones
+        chosen = next((z for z in zones if z.id == desk.choices.subject), None)
+        return chosen or max(zones, key=lambda z: z.area_m2, default=None)
+
+
+def _where(zone: Zone) -> str:
+    """Where an eddy is, to follow its tag in a sentence."""
+    name = zone.name or zone.kind
+    return text.safe(name[:1].lower() + name[1:] if name.split(" ")[0] in ("Left", "Right", "Free", "Side") else name)
+
+
+def _span(zone: Zone, figure: str) -> dict[str, float]:
+    low, high = zone.sensitivity.get(figure, (None, None))
+    return {"low": low, "high": high} if low is not None else {}
+
+
+def _mark(zone: Zone, subject: bool) -> ZoneMark:
+    inner = tuple(zone.streamlines[1::2][:2])
+    return ZoneMark(
+        zone.id, zone.contour, inner, zone.rotation, np.asarray(zone.centre), subject, _UNDER_RESOLVED in zone.flags,
+        zone.kind == "travelling", zone.separation, zone.reattachment,
+    )
+
+
+def _line(zone: Zone, subject: bool, desk: Desk, ids: tuple[str, ...]) -> table.Line:
+    u = desk.units
+
+    def cell(figure: str, unit: str) -> tuple[str, str]:
+        span = _span(zone, figure)
+        return u.number(getattr(zone, figure), unit, **span), u.span(span.get("low"), span.get("high"), unit)
+
+    coarse = footnote(ids, "wake-detail") if _UNDER_RESOLVED in zone.flags else ""
+    few = desk.look.hall or desk.sizes.narrow
+    return table.Line(
+        (
+            (f"{marks.turning(zone.rotation)} {text.safe(zone.id)}", ""), (_where(zone) + coarse, ""),
+            cell("area_m2", "m2"),
+            *(() if few else (cell("recirculating_discharge_m3_s", "m3/s"), cell("rotation_time_s", "s"))),
+        ),
+        subject, ("subject", zone.id), f"Show {zone.id}, {zone.name}",
+    )
+
+

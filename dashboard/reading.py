@@ -1,0 +1,229 @@
+"""One review or results file as the screen reads it: choices in, hydro results out, remembered.
+
+Every method either answers at once or raises ``Working`` and has the answer made.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from pathlib import Path
+from typing import Any
+
+import numpy as np
+
+from hydro.contours import contour_lines, tube_levels
+from hydro.frame import Frame
+from hydro.ledger import FrameLedger, frame_ledger
+from hydro.ledger.frames import plan_for
+from hydro.reach import CentreLine, Reach, proposed_centre_line
+from hydro.review import Review, open_any
+from hydro.run import Run
+from hydro.streamfunction import Plan
+
+from .raster import Canvas, IndexRaster, View, canvas
+from .results import AHEAD, NOW, Results, Working
+from .views.shore import shoreline
+
+_PIXELS_KEPT = 12_000_000  # triangles held in remembered frames, over all of them
+STORY = "story"
+
+
+@dataclass(frozen=True, eq=False)
+class Matter:
+    """What was opened: a review with its runs, or one results file alone.
+
+    ``proposed`` says that the centre line was made here and wants confirmation.
+    """
+
+    review: Review | None
+    alone: Run | None
+    reach: Reach
+    proposed: bool = False
+
+    @property
+    def title(self) -> str:
+        return self.review.title if self.review else self.alone.name if self.alone else ""
+
+    @property
+    def runs(self) -> tuple[tuple[str, str], ...]:
+        """(id, label) of every run."""
+        if self.review is not None:
+            return tuple((e.id, e.label) for e in self.review.runs)
+        return (("file", self.alone.name),) if self.alone else ()
+
+    def design(self, run_id: str) -> str | None:
+        """Which design's structures stand in a run; None where the review does not say."""
+        return (self.review.entry(run_id).design or None) if self.review else None
+
+
+@dataclass(frozen=True, eq=False)
+class Beat:
+    """One frame's part in the story that the ribbon tells."""
+
+    seconds: float
+    discharge_m3_s: float
+    areas: dict[str, float]  # m2 by the zones' ids
+
+
+@dataclass(frozen=True, eq=False)
+class Story:
+    """What is known so far of a run's frames, in order; None where a frame is not done or failed."""
+
+    beats: tuple[Beat | None, ...]
+    done: int
+
+    @property
+    def whole(self) -> bool:
+        return self.done == len(self.beats)
+
+
+class Reading:
+    """Results for one path, shared by all who look at it."""
+
+    def __init__(self, path: Path | str, results: Results | None = None) -> None:
+        self.path = Path(path)
+        self.results = results or Results()
+        self._plans: dict[str, Plan] = {}
+
+    def matter(self) -> Matter:
+        """The review or the file; raises what opening it raised."""
+        return self.results.get("matter", lambda: _opened(self.path), label=f"Opening {self.path.name}.")
+
+    def run(self, run_id: str) -> Run:
+        matter = self.matter()
+        run_id = run_id or matter.runs[0][0]
+        return self.results.get(("run", run_id), lambda: self._opened_run(matter, run_id), label="Reading the run's mesh.")
+
+    def reach(self, run_id: str) -> Reach:
+        """The reach with the structures of the run's design; its centre line is proposed where there is none."""
+        matter, run = self.matter(), self.run(run_id)
+
+        def make() -> Reach:
+            reach = matter.reach
+            structures = reach.structures_of(matter.design(run_id))
+            centre = reach.centre_line or self._proposed(run)
+            return Reach(run.mesh.origin, centre, structures, reach.layers)
+
+        return self.results.get(("reach", run_id), make, label="Placing the review's lines.")
+
+    def frame(self, run_id: str, index: int) -> Frame:
+        run = self.run(run_id)
+        return self.results.get(("frame", run_id, index), lambda: run.frame(index), label="Reading the frame.", heavy=True)
+
+    def ledger(self, run_id: str, index: int, *, rank: int = NOW) -> FrameLedger:
+        """Stream function and eddies of one frame."""
+        run = self.run(run_id)
+
+        def make() -> FrameLedger:
+            if run_id not in self._plans:
+                self._plans[run_id] = plan_for(run, self.frame(run_id, index), self.reach(run_id))
+            return frame_ledger(run, index, reach=self.reach(run_id), plan=self._plans[run_id])
+
+        return self.results.get(
+            ("ledger", run_id, index), make, label="Finding the stream function and its eddies.", rank=rank, heavy=True,
+        )
+
+    def shore(self, run_id: str, index: int) -> tuple[np.ndarray, ...]:
+        """The waterline, with the water on the left of its lines."""
+
+        def make() -> tuple[np.ndarray, ...]:
+            boundaries = self.ledger(run_id, index).sf.open_boundaries if self._has_psi(run_id, index) else ()
+            edges = [b.edges for b in boundaries]
+            return tuple(shoreline(self.frame(run_id, index), np.concatenate(edges) if edges else None))
+
+        return self.results.get(("shore", run_id, index), make, label="Drawing the waterline.", heavy=True)
+
+    def tubes(self, run_id: str, index: int, count: int) -> tuple[tuple[np.ndarray, ...], float]:
+        """Lines between the stream tubes of one frame, and the discharge of one tube, m3/s."""
+        ledger = self.ledger(run_id, index)
+
+        def make() -> tuple[tuple[np.ndarray, ...], float]:
+            sf, mesh = ledger.sf, ledger.frame.mesh
+            levels = tube_levels(sf, count)
+            lines = [line for level in levels for line in contour_lines(mesh, sf.psi, level, sf.domain)]
+            return tuple(lines), float(np.median(np.diff(levels))) if len(levels) > 1 else 0.0
+
+        return self.results.get(("tubes", run_id, index, count), make, label="Drawing the stream tubes.", heavy=True)
+
+    def top(self, run_id: str, shade: str) -> float:
+        """The end of the ramp for a run, one for all its frames: a round value above most of the water's."""
+        run = self.run(run_id)
+
+        def make() -> float:
+            highest = [0.0]
+            for i in sorted({0, run.n_frames // 4, run.n_frames // 2, 3 * run.n_frames // 4, run.n_frames - 1}):
+                frame = self.frame(run_id, i)
+                value = (frame.speed if shade == "speed" else frame.depth)[frame.wet_nodes]
+                highest.append(float(np.percentile(value, 99)) if value.size else 0.0)
+            return _round_up(max(highest))
+
+        return self.results.get(("top", run_id, shade), make, label="Reading the range of speeds.")
+
+    def canvas(self, run_id: str) -> Canvas:
+        run = self.run(run_id)
+
+        def make() -> Canvas:
+            ready, frame = canvas(run.mesh), self.frame(run_id, 0)
+            # A first stroke here, so that nothing is compiled while somebody waits for a page.
+            ready.index(View(0.0, 0.0, 1.0, 1, 1)).paint(frame, frame.speed, 1.0)
+            return ready
+
+        return self.results.get(("canvas", run_id), make, label="Preparing the map; the first time compiles it.")
+
+    def raster(self, run_id: str, view: View) -> IndexRaster:
+        """Which triangle lies under each pixel of a view."""
+        ready = self.canvas(run_id)
+        return self.results.get(("raster", run_id, view), lambda: ready.index(view), label="Drawing the water.", heavy=True)
+
+    def story(self, run_id: str) -> Story:
+        """What is known of all frames; asks for the rest to be made when nobody waits for anything."""
+        run = self.run(run_id)
+        beats = []
+        for i in range(run.n_frames):
+            key = ("beat", run_id, i)
+            if not self.results.have(key):
+                self.results.ahead(key, lambda i=i: self._beat(run_id, i), label="Following the eddies.", group=STORY)
+            beats.append(self.results.peek(key))
+        done = sum(self.results.have(("beat", run_id, i)) for i in range(run.n_frames))
+        return Story(tuple(beats), done)
+
+    def known(self, key: Any) -> Any:
+        """A result that is ready, else None; starts nothing."""
+        return self.results.peek(key)
+
+    def _beat(self, run_id: str, index: int) -> Beat:
+        ledger = self.ledger(run_id, index, rank=AHEAD)
+        areas = {z.id: z.area_m2 for z in ledger.zones.zones}
+        return Beat(ledger.frame.seconds, ledger.sf.through_discharge_m3_s, areas)
+
+    def _has_psi(self, run_id: str, index: int) -> bool:
+        return self.run(run_id).times.kinds[index] != "maximum"
+
+    def _opened_run(self, matter: Matter, run_id: str) -> Run:
+        run = matter.review.open(run_id) if matter.review is not None else matter.alone
+        self.results.heavy = int(np.clip(_PIXELS_KEPT / max(run.mesh.n_triangles, 1), 24, 400))
+        return run
+
+    def _proposed(self, run: Run) -> CentreLine:
+        frame = run.frame(0)
+        return proposed_centre_line(run.mesh.node_xy, frame.unit_discharge.mean(axis=0) + [1e-12, 0])
+
+
+def _opened(path: Path) -> Matter:
+    review, run = open_any(path)
+    if review is not None:
+        if not review.runs:
+            raise ValueError(f"{review.folder / 'review.toml'} lists no runs; add one under [[runs]].")
+        return Matter(review, run, review.reach, review.reach.centre_line is None)
+    return Matter(None, run, Reach(run.mesh.origin), True)
+
+
+def _round_up(value: float) -> float:
+    """The next of 1, 1.5, 2, 3, 4, 5, 8 times a power of ten."""
+    if not value > 0:
+        return 1.0
+    power = 10.0 ** np.floor(np.log10(value))
+    return float(next(s * power for s in (1, 1.5, 2, 3, 4, 5, 8, 10) if s * power >= value * 0.999))
+
+
+__all__ = ["Beat", "Matter", "Reading", "Story", "Working"]

@@ -1,0 +1,252 @@
+"""The screen: every part of the page drawn from the state, each by itself, as soon as its figures are there."""
+
+from __future__ import annotations
+
+from collections.abc import Callable, Hashable
+from dataclasses import replace
+from typing import TYPE_CHECKING, Any
+
+from . import text
+from .choices import UNITS
+from .questions import QUESTIONS
+from .questions.base import Desk
+from .raster import View
+from .reading import STORY
+from .results import Working
+from .views import frame_words, marks
+from .views import map as drawing
+from .views.scene import Scene
+
+if TYPE_CHECKING:
+    from .page import Page
+
+_PICTURE_SHARE = 0.2  # water drawn beyond the map's edge, so that a pan has something to show
+
+
+class Screen:
+    """What the page shows now, and which results each part waits for."""
+
+    def __init__(self) -> None:
+        self.slots: dict[str, str] = {}
+        self.waits: dict[str, set[Hashable]] = {}
+        self.only: set[str] | None = None
+        self.said = ""  # what is being made
+        self.failed = ""
+        self._question = ""
+        self._dressed = None
+        self._scene: Scene | None = None
+
+    def awaits(self, key: Hashable) -> bool:
+        """Whether a part of the screen waits for this result."""
+        return any(key in keys for keys in list(self.waits.values()))
+
+    def waiting_for(self, keys: set[Any]) -> set[str]:
+        """Parts that wait for any of these results."""
+        return {part for part, waited in self.waits.items() if waited & keys}
+
+    def forget(self) -> None:
+        """Everything is drawn anew the next time."""
+        self._dressed = None
+
+    def draw(self, page: Page) -> None:
+        """Draw the parts that are due and send them."""
+        if page.choices.question != self._question:
+            self._question, self.slots, self._scene = page.choices.question, {}, None
+        due, self.only = self.only, None
+        self.said, self.failed = "", page.trouble
+        question, desk = page.question, page.desk()
+        self._part("map", due, lambda: self._map(page))
+        desk = page.desk(self._view(page))
+        self._part("answer", due, lambda: self._put("answer", question.sentence(desk)))
+        for name, make in (
+            ("key", lambda: question.key_html(desk)),
+            ("alternative", lambda: question.alternative(desk)),
+            ("caption", lambda: self._caption(page, desk)),
+            ("ribbon", lambda: question.ribbon(desk) if question.has_time else ""),
+        ):
+            self._part(name, due, lambda name=name, make=make: self._put(name, make()))
+        self._part("side", due, lambda: self.slots.update({"section": "", "table": "", **question.side(desk)}))
+        self._standing(page, desk)
+        self._story(page, desk)
+        page.wire.param.update(slots=dict(self.slots), state=self._state(page, desk))
+
+    def _part(self, name: str, due: set[str] | None, make: Callable[[], None]) -> None:
+        """Run one part; one that is not due keeps what it waits for."""
+        if due is not None and name not in due:
+            return
+        self.waits.pop(name, None)
+        try:
+            make()
+        except Working as working:
+            self.waits[name] = {working.key}
+            if name in ("map", "answer") or not self.said:
+                self.said = working.label
+        except (ValueError, OSError) as error:
+            self.failed = str(error)
+
+    def _put(self, name: str, html: str) -> None:
+        self.slots[name] = html
+
+    # ---- the map -----------------------------------------------------------------------------------
+
+    def _view(self, page: Page) -> View | None:
+        try:
+            return page.view()
+        except (Working, ValueError, OSError):
+            return None
+
+    def _map(self, page: Page) -> None:
+        question = page.question
+        if not question.has_map:
+            return
+        run = page.desk().run
+        try:
+            view = page.view()
+        except Working as working:  # the question's own view needs figures: the whole reach meanwhile
+            self._draw_map(page, _whole(run.mesh.bounds, page.sizes.map))
+            raise working from None
+        self._draw_map(page, view)
+
+    def _draw_map(self, page: Page, view: View) -> None:
+        desk = page.desk(view)
+        question, look = page.question, desk.look
+        if self._dressed != look:
+            page.map.dress(look)
+            self._dressed = look
+        page.map.turn_to(view)
+        scene = question.scene(desk)
+        self._scene = scene
+        sheet = drawing.draw(scene, view, look)
+        self._hidden = sheet.hidden
+        picture = picture_view = None
+        if scene.water is not None:
+            ratio = min(max(desk.sizes.ratio, 1.0), 2.0)
+            wide = view.widened(_PICTURE_SHARE)
+            picture_view = replace(wide, columns=round(wide.columns * ratio), rows=round(wide.rows * ratio))
+            raster = desk.reading.raster(desk.run_id, picture_view)
+            w = scene.water
+            picture = raster.paint(w.frame, w.value, w.top, psi=w.psi, tube=w.tube_m3_s, carries=w.carries)
+        page.map.show(sheet, picture, picture_view)
+        self._put("scale", marks.scale_bar(view.step, desk.units, label=look.label_px) + marks.north())
+        missing = self._missing(desk)
+        if missing is not None:
+            raise missing
+
+    def _missing(self, desk: Desk) -> Working | None:
+        """The map shows only water until psi is there: then it is drawn again."""
+        try:
+            desk.reading.tubes(desk.run_id, desk.index, desk.choices.tubes)
+        except Working as working:
+            return working
+        except ValueError:
+            return None
+        return None
+
+    def _caption(self, page: Page, desk: Desk) -> str:
+        if not page.question.has_map or desk.view is None:
+            return ""
+        words = page.question.caption(desk, self._scene or Scene(), desk.view)
+        hidden = getattr(self, "_hidden", 0)
+        if hidden:
+            words += f" {text.count(hidden, 'more eddy is', 'more eddies are')} too small to name here."
+        zoom = "".join(
+            f'<button type="button" class="word" data-do="zoom" data-value="{value}" data-key="zoom-{value}">{label}</button> '
+            for value, label in (("subject", "the eddy"), ("nearer", "nearer"), ("farther", "farther"), ("whole", "whole reach"))
+        )
+        return f"<span>{words}</span><span class=zoom>{zoom}</span>"
+
+    # ---- what stands on every screen ----------------------------------------------------------------
+
+    def _standing(self, page: Page, desk: Desk) -> None:
+        question, choices = page.question, page.choices
+        rows = []
+        for key, q in QUESTIONS.items():
+            try:
+                rows.append((key, q.word, q.summary(desk)))
+            except (Working, ValueError, OSError):
+                rows.append((key, q.word, "waiting for the results"))
+        self._put("rail", frame_words.rail(rows, choices.question))
+        self._put("asks", question.asks)
+        if self.failed:
+            self._put("status", f'<span class="trouble">{frame_words.trouble(self.failed)}</span>')
+        else:
+            self._put("status", frame_words.working(self.said) if self.said else "")
+        if "answer" not in self.slots or self.waits.get("answer"):
+            self.slots.setdefault("answer", text.safe(self.said or "Nothing to show."))
+        self._put("cautions", frame_words.cautions(question.cautions(desk), short=desk.look.hall))
+        try:
+            matter = page.reading.matter()
+        except (Working, ValueError, OSError):
+            self._put("title", f"<b>Leewater</b><span>{text.safe(page.reading.path.name)}</span>")
+            self._put("foot", "")
+            return
+        place = matter.review.contents.place if matter.review else ""
+        self._put("title", f"<b>Leewater</b><span>{text.safe(matter.title)}{'. ' + text.safe(place) if place else ''}</span>")
+        self._put("foot", _foot(page, desk, matter.runs))
+
+    def _story(self, page: Page, desk: Desk) -> None:
+        """Progress of following the eddies through the run, with its Stop."""
+        try:
+            story = page.reading.story(desk.run_id) if page.question.has_time else None
+        except (Working, ValueError, OSError):
+            story = None
+        if story is None or story.whole:
+            self._put("progress", "")
+            return
+        results = page.reading.results
+        missing = {("beat", desk.run_id, i) for i, beat in enumerate(story.beats) if beat is None}
+        self.waits.setdefault("ribbon", set()).update(missing)
+        if results.stopped(STORY):
+            self._put(
+                "progress", f"<span>Followed {story.done} of {len(story.beats)} frames; stopped.</span>"
+                '<button type="button" class="plain" data-do="resume" data-key="resume">Go on</button>',
+            )
+        else:
+            self._put("progress", frame_words.working("Following the eddies:", story.done, len(story.beats), stoppable=True))
+
+    def _state(self, page: Page, desk: Desk) -> dict[str, Any]:
+        choices = page.choices
+        state: dict[str, Any] = {
+            "mode": choices.mode, "view": "hall" if choices.hall else "desk", "question": choices.question,
+            "query": choices.query(), "push": page.push, "title": f"{page.question.word} \u00b7 Leewater",
+            "working": "yes" if self.said else "no", "ends": None, "time": None,
+            "arrangement": "map" if page.question.has_map else "words",
+        }
+        if "map" not in self.waits:
+            state["seen"] = page.sent
+        try:
+            ends = page.question.section_ends(desk) if page.question.has_map else None
+            state["ends"] = [list(end) for end in ends] if ends else None
+            state["time"] = page.question.moments(desk) if page.question.has_time else None
+        except (Working, ValueError, OSError):
+            pass
+        return state
+
+
+def _whole(bounds: tuple[float, float, float, float], size: tuple[int, int]) -> View:
+    west, south, east, north = bounds
+    return View((west + east) / 2, (south + north) / 2, 1.04 * max(east - west, (north - south) * size[0] / size[1]), *size)
+
+
+def _foot(page: Page, desk: Desk, runs: tuple[tuple[str, str], ...]) -> str:
+    choices = page.choices
+
+    def word(do: str, value: str, label: str, off: bool = False) -> str:
+        disabled = " disabled" if off else ""
+        return (
+            f'<button type="button" class="word" data-do="{do}" data-value="{value}" data-key="{do}-{value}"{disabled}>'
+            f"{label}</button>"
+        )
+
+    options = "".join(
+        f'<option value="{text.safe(i)}"{" selected" if i == desk.run_id else ""}>{text.safe(label)}</option>' for i, label in runs
+    )
+    units = "".join(f'<option{" selected" if u == choices.units else ""}>{u}</option>' for u in UNITS)
+    night = choices.mode == "night"
+    return (
+        f"<div>{word('undo', '', 'Undo', not page.history.can_undo)} {word('redo', '', 'Redo', not page.history.can_redo)}</div>"
+        f"<div>{word('hall', 'no' if choices.hall else 'yes', 'Desk view' if choices.hall else 'Hall view')} "
+        f"{word('mode', 'day' if night else 'night', 'Day' if night else 'Night')}</div>"
+        f'<div><label for="units">Units</label> <select class="word" id="units" data-choose="units">{units}</select></div>'
+        f'<div><label for="run">Run</label> <select class="word" id="run" data-choose="run">{options}</select></div>'
+    )

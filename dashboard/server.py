@@ -1,0 +1,214 @@
+"""The served desk: this machine only, every byte from here, installable, with a strict content policy."""
+
+from __future__ import annotations
+
+import hashlib
+import json
+import os
+import re
+import secrets
+import socket
+import threading
+import webbrowser
+from pathlib import Path
+
+os.environ["BOKEH_RESOURCES"] = "server"  # before bokeh is imported: a user's own value could name other machines
+
+import panel as pn  # noqa: E402
+from tornado.web import OutputTransform, RequestHandler, StaticFileHandler  # noqa: E402
+
+from . import theme  # noqa: E402
+from .page import Page  # noqa: E402
+from .reading import Reading  # noqa: E402
+from .wire import WEB  # noqa: E402
+
+HOST, PORT = "127.0.0.1", 5377
+_STARTED = secrets.token_hex(8)
+_POLICY = (
+    "default-src 'none'; script-src 'self' 'nonce-{nonce}'; style-src 'self' 'unsafe-inline'; img-src 'self' data: blob:; "
+    "font-src 'self' data:; connect-src 'self' blob:; manifest-src 'self'; worker-src 'self'; base-uri 'none'; "
+    "form-action 'none'; frame-ancestors 'none'"
+)
+
+
+class Policy(OutputTransform):
+    """Adds a nonce to every script of a page and sends the content policy with it.
+
+    Pages are sent whole in one chunk; one that is not gets no nonce and so runs no script.
+    """
+
+    def __init__(self, request) -> None:
+        pass
+
+    def transform_first_chunk(self, status_code, headers, chunk, finishing):
+        if headers.get("Content-Type", "").startswith("text/html"):
+            nonce = secrets.token_urlsafe(16)
+            chunk = re.sub(rb"<script(?=[\s>])", f'<script nonce="{nonce}"'.encode(), chunk)
+            if "Content-Length" in headers:
+                headers["Content-Length"] = str(len(chunk))
+            headers["Content-Security-Policy"] = _POLICY.format(nonce=nonce)
+            headers["X-Content-Type-Options"] = "nosniff"
+            headers["Referrer-Policy"] = "no-referrer"
+        return status_code, headers, chunk
+
+
+class Ping(RequestHandler):
+    """Tells that the desk is there, and which one: a page of an older one draws itself anew."""
+
+    def get(self) -> None:
+        self.set_header("Cache-Control", "no-store")
+        self.finish({"started": _STARTED})
+
+
+class Theme(RequestHandler):
+    """The theme's colours as CSS."""
+
+    def get(self) -> None:
+        self.set_header("Content-Type", "text/css; charset=utf-8")
+        self.set_header("Cache-Control", "no-cache")
+        self.finish(theme.stylesheet())
+
+
+class Worker(RequestHandler):
+    """The service worker, stamped with a version made of everything it stores."""
+
+    def get(self) -> None:
+        self.set_header("Content-Type", "text/javascript; charset=utf-8")
+        self.set_header("Cache-Control", "no-cache")
+        self.finish(worker_script())
+
+
+class Manifest(RequestHandler):
+    """What an installed desk is called and shows."""
+
+    def get(self) -> None:
+        self.set_header("Content-Type", "application/manifest+json")
+        self.finish(json.dumps(manifest()))
+
+
+class Web(StaticFileHandler):
+    """Our own files: asked for anew each time, so that a new version is seen at once."""
+
+    def set_extra_headers(self, path: str) -> None:
+        self.set_header("Cache-Control", "no-cache")
+        if path.endswith(".woff2"):
+            self.set_header("Content-Type", "font/woff2")
+
+
+def manifest() -> dict:
+    """The web app manifest."""
+    return {
+        "id": "/", "name": "Leewater", "short_name": "Leewater", "start_url": "/", "scope": "/", "display": "standalone",
+        "description": "Review desk for depth-averaged river models", "background_color": theme.LIGHT.paper,
+        "theme_color": theme.LIGHT.ink,
+        "icons": [
+            {"src": f"/icons/leewater-{size}.png", "sizes": f"{size}x{size}", "type": "image/png", "purpose": "any"}
+            for size in (192, 512)
+        ] + [{"src": "/icons/leewater.svg", "sizes": "any", "type": "image/svg+xml"}],
+    }
+
+
+def stored_files() -> list[str]:
+    """Addresses that the worker stores at once."""
+    web = ["/web/offline.html", "/web/offline.js", "/web/desk.css", "/web/theme.css", "/manifest.webmanifest"]
+    fonts = [f"/web/fonts/{p.name}" for p in sorted((WEB / "fonts").glob("*.woff2"))]
+    return web + fonts + [f"/icons/{p.name}" for p in sorted((WEB / "icons").iterdir())]
+
+
+def worker_script() -> str:
+    """sw.js with its version: a hash of the libraries' versions and of our own files."""
+    import bokeh
+
+    digest = hashlib.sha256(f"{bokeh.__version__} {pn.__version__} {theme.stylesheet()}".encode())
+    for path in sorted(p for p in WEB.rglob("*") if p.is_file()):
+        digest.update(path.read_bytes())
+    files = ", ".join(json.dumps(f) for f in stored_files())
+    text = (WEB / "sw.js").read_text(encoding="utf-8")
+    return text.replace("{{version}}", digest.hexdigest()[:16]).replace("{{files}}", files)
+
+
+def page_for(reading: Reading) -> pn.Template:
+    """A new viewer's page."""
+    document = pn.state.curdoc
+    location = pn.state.location
+
+    def later(function) -> None:
+        document.add_next_tick_callback(function)
+
+    page = Page(reading, location.search if location is not None else "", later)
+    template = pn.Template((WEB / "index.html").read_text(encoding="utf-8"))
+    template.add_panel("map", pn.pane.Bokeh(page.map.figure, sizing_mode="stretch_both"))
+    template.add_panel("wire", page.wire)
+    template.add_variable("slots", {**dict.fromkeys(_SLOTS, ""), **page.screen.slots})
+    document.title = "Leewater"
+    pn.state.on_session_destroyed(lambda _: page.close())
+    return template
+
+
+_SLOTS = (
+    "title", "rail", "foot", "asks", "answer", "status", "key", "scale", "alternative", "caption", "ribbon", "progress",
+    "section", "table", "body", "cautions",
+)
+
+
+def free_port(wanted: int | None) -> int:
+    """The wanted port, else the usual one, else any that is free; a wanted one in use is refused.
+
+    An installed desk looks for the usual port, so another one is said aloud by :func:`serve`.
+    """
+    for port in [wanted] if wanted is not None else [PORT, 0]:
+        with socket.socket() as probe:
+            probe.setsockopt(socket.SOL_SOCKET, socket.SO_REUSEADDR, 1)
+            try:
+                probe.bind((HOST, port))
+                return probe.getsockname()[1]
+            except OSError:
+                continue
+    raise ValueError(f"port {wanted} is in use; give another with --port, or leave it out.")
+
+
+def serve(path: Path | str, *, port: int | None = None, browser: bool = True) -> None:
+    """Serve the desk for a review or a results file until it is stopped.
+
+    Raises ``ValueError`` when the wanted port is in use.
+    """
+    chosen = free_port(port)
+    reading = Reading(path)
+    application = make_server(reading, chosen)
+    address = f"http://{HOST}:{chosen}/"
+    if port is None and chosen != PORT:
+        print(f"Port {PORT} is in use (another desk?); this one is at another port, where an installed desk does not look.")
+    print(f"Leewater shows {path} at {address}  (stop with Ctrl+C)", flush=True)
+    if browser:
+        threading.Timer(0.3, webbrowser.open, (address,)).start()
+    application.start()
+    try:
+        application.io_loop.start()
+    except KeyboardInterrupt:
+        print("Leewater has stopped.")
+    finally:
+        application.stop()
+
+
+def make_server(reading: Reading, port: int):
+    """The server for a reading, not yet started; the first opening of the path begins at once."""
+    pn.config.session_history = 0
+    try:
+        reading.matter()
+    except Exception:  # being opened: the page says how far it is, and what went wrong if it does
+        pass
+    static = {"path": str(WEB)}
+    server = pn.serve(
+        {"/": lambda: page_for(reading)}, address=HOST, port=port, show=False, start=False, title="Leewater",
+        websocket_origin=[f"{HOST}:{port}"], admin=False, check_unused_sessions_milliseconds=2000,
+        unused_session_lifetime_milliseconds=20_000,
+        extra_patterns=[
+            (r"/ping", Ping), (r"/sw\.js", Worker), (r"/manifest\.webmanifest", Manifest), (r"/web/theme\.css", Theme),
+            (r"/web/(.*)", Web, static), (r"/icons/(.*)", Web, {"path": str(WEB / "icons")}),
+        ],
+    )
+    server._tornado.transforms.append(Policy)
+    return server
+
+
+__all__ = ["HOST", "PORT", "make_server", "serve"]

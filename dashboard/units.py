@@ -1,0 +1,76 @@
+"""Display units: SI or US customary, at the edge only. The two feet are kept apart by name."""
+
+from __future__ import annotations
+
+import math
+from dataclasses import dataclass
+
+from hydro.figure import printed
+
+_FOOT = {"US survey feet": 1200 / 3937, "international feet": 0.3048}  # m
+_SHORT = {"US survey feet": "US ft", "international feet": "ft"}
+_POWERS = {"m": 1, "m2": 2, "m3": 3, "m/s": 1, "m2/s": 2, "m3/s": 3}
+_SUPER = str.maketrans({"2": "\u00b2", "3": "\u00b3"})
+NBSP = "\u00a0"
+
+
+@dataclass(frozen=True, slots=True)
+class Units:
+    """One system of display units, by its name in the choices."""
+
+    name: str = "SI"
+
+    def factor(self, unit: str) -> float:
+        """What an SI value in ``unit`` is multiplied by to be shown; 1 for units both systems share."""
+        if self.name == "SI" or unit not in _POWERS:
+            return 1.0
+        return _FOOT[self.name] ** -_POWERS[unit]
+
+    def label(self, unit: str) -> str:
+        """The unit as printed, such as m\u00b2 or US ft\u00b3/s."""
+        if self.name != "SI" and unit in _POWERS:
+            foot = _SHORT[self.name]
+            return foot + unit[1:].translate(_SUPER)
+        return unit.translate(_SUPER)
+
+    def number(
+        self, value: float | None, unit: str, low: float | None = None, high: float | None = None, digits: int = 3
+    ) -> str:
+        """An SI value as text in display units, rounded to its sensitivity, thousands set apart."""
+        if value is None or not math.isfinite(value):
+            return "n/a"
+        f = self.factor(unit)
+        text = printed(value * f, None if low is None else low * f, None if high is None else high * f, digits)
+        whole, dot, rest = text.partition(".")
+        sign, whole = ("\u2212", whole[1:]) if whole.startswith("-") else ("", whole)
+        if len(whole) > 4:
+            whole = f"{int(whole):,}".replace(",", "\u202f")
+        return sign + whole + dot + rest
+
+    def quantity(self, value: float | None, unit: str, **how) -> str:
+        """Number and unit that never break apart."""
+        text = self.number(value, unit, **how)
+        return text if text == "n/a" else f"{text}{NBSP}{self.label(unit)}"
+
+    def span(self, low: float | None, high: float | None, unit: str) -> str:
+        """A sensitivity as "440 to 474"; empty where there is none."""
+        if low is None or high is None or not (math.isfinite(low) and math.isfinite(high)):
+            return ""
+        digits = _shared_digits(low * self.factor(unit), high * self.factor(unit))
+        return f"{self.number(low, unit, digits=digits)} to {self.number(high, unit, digits=digits)}"
+
+
+def _shared_digits(low: float, high: float) -> int:
+    """Digits that let both ends be told apart: 3, more where the range is narrow, at most 5."""
+    size, spread = max(abs(low), abs(high)), abs(high - low)
+    if not spread > 0 or not size > 0:
+        return 3
+    return min(max(3, math.ceil(math.log10(size / spread)) + 2), 5)
+
+
+def round_step(target: float) -> float:
+    """The nearest of 1, 2, 5 times a power of ten below ``target``: for scales and ticks."""
+    if not target > 0 or not math.isfinite(target):
+        return 1.0
+    power = 10.0 ** math.floor(math.log10(target) + 1e-12)
+    return max(s for s in (1, 2, 5) if s * power <= target * (1 + 1e-9)) * power

@@ -1,0 +1,241 @@
+"""The time ribbon: discharge, one row a thing that comes and goes, and the cursor; SVG text."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from dataclasses import dataclass
+
+import numpy as np
+
+from .. import text
+from ..units import Units, round_step
+
+_HOURS = np.array([0.25, 0.5, 1, 2, 3, 6, 12, 24, 48, 24 * 7, 24 * 30]) * 3600.0
+_SPANS = np.array([0.1, 0.2, 0.5, 1, 2, 5, 10, 20, 30, 60, 120, 300, 600, 900, 1800, 3600, 7200, 14400, 43200, 86400.0])
+
+
+@dataclass(frozen=True, eq=False)
+class Row:
+    """A thing's size at each frame (NaN: not there), drawn as a spindle."""
+
+    name: str
+    sizes: np.ndarray
+    subject: bool = False
+
+
+@dataclass(frozen=True, eq=False)
+class Course:
+    """What the ribbon shows.
+
+    Attributes
+    ----------
+    seconds : (k,) float64
+    instants : (k,) datetime64 or None
+    discharge_m3_s : (k,) float64
+        NaN where not known yet.
+    rows : sequence of Row
+    index : int
+        The frame under the cursor.
+    more_rows : int
+        Things that found no row.
+    """
+
+    seconds: np.ndarray
+    instants: np.ndarray | None
+    discharge_m3_s: np.ndarray
+    rows: Sequence[Row]
+    index: int
+    rows_title: str = "Eddies"
+    rows_note: str = "size"
+    more_rows: int = 0
+
+
+@dataclass(frozen=True, slots=True)
+class Box:
+    """The ribbon's lines, px: its width, the left gutter of names, the right one of the scale, the label size."""
+
+    width: float
+    label: float = 13.0
+
+    @property
+    def left(self) -> float:
+        return 5.2 * self.label
+
+    @property
+    def right(self) -> float:
+        return self.width - 4.2 * self.label
+
+    @property
+    def flag(self) -> float:
+        return 1.75 * self.label
+
+    @property
+    def base(self) -> float:
+        """Foot of the discharge."""
+        return self.flag + 4.6 * self.label
+
+    @property
+    def row(self) -> float:
+        return 1.12 * self.label
+
+
+def places(course: Course, box: Box) -> np.ndarray:
+    """x of each frame, px."""
+    s = course.seconds
+    span = s[-1] - s[0]
+    share = (s - s[0]) / span if span > 0 else np.full(len(s), 0.5)
+    return box.left + share * (box.right - box.left)
+
+
+def draw(course: Course, box: Box, units: Units) -> str:
+    """The ribbon as SVG text; colours come from the page's custom properties."""
+    x = places(course, box)
+    axis = box.base + 0.9 * box.label + len(course.rows) * box.row
+    height = axis + 2.1 * box.label
+    parts = [_discharge(course, box, units, x), _rows(course, box, x), _axis(course, box, x, axis)]
+    parts.append(_cursor(course, box, units, x, axis))
+    return (
+        f'<svg class="ribbon" viewBox="0 0 {box.width:.0f} {height:.0f}" width="{box.width:.0f}" height="{height:.0f}" '
+        f'aria-hidden="true" font-size="{box.label:.1f}">{"".join(parts)}</svg>'
+    )
+
+
+def words(course: Course, units: Units) -> str:
+    """The moment under the cursor, for those who do not see it."""
+    q = course.discharge_m3_s[course.index]
+    moment = text.moment(_instant(course), course.seconds[course.index])
+    return f"{moment}, {units.quantity(q, 'm3/s')}" if np.isfinite(q) else moment
+
+
+def _instant(course: Course):
+    return None if course.instants is None else course.instants[course.index]
+
+
+def _discharge(course: Course, box: Box, units: Units, x: np.ndarray) -> str:
+    q = course.discharge_m3_s
+    out = [
+        f'<text class="strong" x="0" y="{box.flag + 1.2 * box.label:.1f}">Discharge</text>'
+        f'<text class="second" x="0" y="{box.flag + 2.5 * box.label:.1f}">{units.label("m3/s")}</text>'
+        f'<line class="hair" x1="{box.left}" x2="{box.right}" y1="{box.base}" y2="{box.base}"/>'
+    ]
+    known = np.isfinite(q)
+    if known.sum() < 1:
+        return out[0]
+    f = units.factor("m3/s")
+    step = round_step(max(float(np.nanmax(q)) * f, 1e-9) / 2.2)
+    top = max(float(np.nanmax(q)) * f * 1.06, step)
+    y = box.base - q * f / top * (box.base - box.flag - 4)
+    for run in _pieces(known):
+        line = " ".join(f"{a:.1f},{b:.1f}" for a, b in zip(x[run], y[run]))
+        if len(run) > 1:
+            out.append(
+                f'<polygon class="flow" points="{x[run][0]:.1f},{box.base} {line} {x[run][-1]:.1f},{box.base}"/>'
+                f'<polyline class="ink" points="{line}"/>'
+            )
+        else:
+            out.append(f'<circle class="dot" cx="{x[run][0]:.1f}" cy="{y[run][0]:.1f}" r="3"/>')
+    for k in range(1, int(top / step) + 1):
+        at = box.base - k * step / top * (box.base - box.flag - 4)
+        out.append(
+            f'<line class="hair2" x1="{box.right + 3}" x2="{box.right + 9}" y1="{at:.1f}" y2="{at:.1f}"/>'
+            f'<text x="{box.right + 13}" y="{at + 0.35 * box.label:.1f}">{k * step:g}</text>'
+        )
+    return "".join(out)
+
+
+def _rows(course: Course, box: Box, x: np.ndarray) -> str:
+    if not len(course.rows):
+        return ""
+    largest = max((float(np.nanmax(r.sizes)) for r in course.rows if np.isfinite(r.sizes).any()), default=1.0)
+    first = box.base + 0.9 * box.label
+    out = [
+        f'<text class="strong" x="0" y="{first + 0.8 * box.label:.1f}">{course.rows_title}</text>'
+        f'<text class="second" x="0" y="{first + 2.1 * box.label:.1f}">{course.rows_note}</text>'
+    ]
+    for i, row in enumerate(course.rows):
+        y = first + (i + 0.4) * box.row
+        kind = "subject" if row.subject else "plain"
+        out.append(
+            f'<text class="{kind} end" x="{box.left - 6}" y="{y + 0.35 * box.label:.1f}">{text.safe(row.name)}</text>'
+            f'<line class="rule" x1="{box.left}" x2="{box.right}" y1="{y:.1f}" y2="{y:.1f}"/>'
+        )
+        half = np.sqrt(np.maximum(row.sizes, 0) / max(largest, 1e-12)) * 0.46 * box.row
+        for run in _pieces(np.isfinite(half)):
+            h = np.maximum(half[run], 0.9)
+            if len(run) == 1:
+                out.append(f'<circle class="{kind}" cx="{x[run][0]:.1f}" cy="{y:.1f}" r="{max(h[0], 2):.1f}"/>')
+                continue
+            up = [f"{a:.1f},{y - b:.1f}" for a, b in zip(x[run], h)]
+            down = [f"{a:.1f},{y + b:.1f}" for a, b in zip(x[run][::-1], h[::-1])]
+            out.append(f'<polygon class="{kind}" points="{" ".join(up + down)}"/>')
+    return "".join(out)
+
+
+def _axis(course: Course, box: Box, x: np.ndarray, y: float) -> str:
+    out = [f'<line class="hair" x1="{box.left}" x2="{box.right}" y1="{y:.1f}" y2="{y:.1f}"/>']
+    gap = float(np.median(np.diff(x))) if len(x) > 1 else 10.0
+    for at in x[:: max(1, int(np.ceil(3 / max(gap, 1e-6))))]:
+        out.append(f'<line class="hair" x1="{at:.1f}" x2="{at:.1f}" y1="{y:.1f}" y2="{y + 5:.1f}"/>')
+    last = -np.inf
+    for at, label in _labels(course, box):
+        width = 0.52 * box.label * len(label)
+        begin = min(max(at, box.left), box.width - width)
+        if begin < last + 10:
+            continue
+        last = begin + width
+        out.append(
+            f'<line class="hair2" x1="{at:.1f}" x2="{at:.1f}" y1="{y:.1f}" y2="{y + 9:.1f}"/>'
+            f'<text x="{begin:.1f}" y="{y + 9 + 0.95 * box.label:.1f}">{label}</text>'
+        )
+    return "".join(out)
+
+
+def _labels(course: Course, box: Box) -> list[tuple[float, str]]:
+    """Round moments with their x, the first of a day with its date."""
+    s, wide = course.seconds, box.right - box.left
+    span = float(s[-1] - s[0])
+    if not span > 0:
+        return [(box.left, text.moment(_instant(course), s[0]))]
+    wanted = span / max(2.0, wide / (11 * box.label))
+    if course.instants is None:
+        step = float(_SPANS[min(np.searchsorted(_SPANS, wanted), len(_SPANS) - 1)])
+        moments = np.arange(np.ceil(s[0] / step) * step, s[-1] + 1e-9, step)
+        return [(box.left + (m - s[0]) / span * wide, text.elapsed(m)) for m in moments]
+    step = float(_HOURS[min(np.searchsorted(_HOURS, wanted), len(_HOURS) - 1)])
+    if wanted < _HOURS[0]:
+        step = float(_SPANS[min(np.searchsorted(_SPANS, wanted), len(_SPANS) - 1)])
+    start = course.instants[0]
+    offset = (start - start.astype("datetime64[D]")) / np.timedelta64(1, "s")
+    moments = np.arange(np.ceil(offset / step) * step, offset + span + 1e-9, step)
+    out, shown = [], ""
+    for m in moments:
+        instant = start.astype("datetime64[D]") + np.timedelta64(round(m * 1000), "ms")
+        day, hour = text.day(instant), text.clock(instant, 0.0)
+        out.append((box.left + (m - offset) / span * wide, hour if day == shown else f"{day} {hour}"))
+        shown = day
+    return out
+
+
+def _cursor(course: Course, box: Box, units: Units, x: np.ndarray, axis: float) -> str:
+    q = course.discharge_m3_s[course.index]
+    words = text.clock(_instant(course), course.seconds[course.index])
+    if np.isfinite(q):
+        words += f" \u00b7 {units.quantity(q, 'm3/s')}"
+    width = 0.56 * box.label * len(words) + 12
+    left = x[course.index] + width > box.width
+    start = -width if left else 0.0
+    top, b = 0.0, box.label
+    return (
+        f'<g data-cursor transform="translate({x[course.index]:.1f} 0)">'
+        f'<line class="case" x1="0" x2="0" y1="{top}" y2="{axis + 2:.1f}"/>'
+        f'<line class="cursor" x1="0" x2="0" y1="{top}" y2="{axis + 2:.1f}"/>'
+        f'<path class="subject" d="M-6 {axis + 9:.1f} L6 {axis + 9:.1f} L0 {axis:.1f} Z"/>'
+        f'<rect class="subject" x="{start - (1 if not left else -1):.1f}" y="0" width="{width:.1f}" height="{1.55 * b:.1f}"/>'
+        f'<text class="flag" x="{start + 6:.1f}" y="{1.12 * b:.1f}">{words}</text></g>'
+    )
+
+
+def _pieces(known: np.ndarray) -> list[np.ndarray]:
+    """Runs of neighbouring True places."""
+    at = np.flatnonzero(known)
+    return np.split(at, np.flatnonzero(np.diff(at) > 1) + 1) if at.size else []

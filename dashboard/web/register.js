@@ -1,0 +1,28 @@
+// Registers the worker that answers when the desk has stopped, and tells the open page when that happens.
+
+if ("serviceWorker" in navigator) navigator.serviceWorker.register("/sw.js");
+
+const root = document.documentElement;
+const every = 2000; // ms between questions whether the desk is there
+let started = null;
+
+async function ask() {
+  try {
+    const answer = await fetch("/ping", { cache: "no-store" });
+    const now = (await answer.json()).started;
+    if (started !== null && now !== started) location.reload(); // a new desk: its page is drawn anew
+    started = now;
+    lost(false);
+  } catch {
+    lost(true);
+  }
+}
+
+function lost(gone) {
+  root.dataset.lost = gone ? "yes" : "";
+  const note = document.getElementById("lost");
+  if (note && note.hidden === gone) note.hidden = !gone;
+}
+
+setInterval(ask, every);
+ask();

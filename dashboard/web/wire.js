@@ -1,0 +1,284 @@
+// The one wire between page and server: HTML goes into its places, what the reader does goes back.
+// Nothing here computes a figure; the server sends finished words and drawings.
+
+const root = document.documentElement;
+
+export function render({ model }) {
+  const page = new Desk((name, value) => model.send_msg({ name, value }));
+  const show = () => page.show(model.slots, model.state);
+  model.on("slots", show);
+  model.on("state", show);
+  show();
+  page.listen();
+  page.measure();
+  root.dataset.ready = "yes"; // last: listeners are in place
+  return document.createElement("span");
+}
+
+class Desk {
+  constructor(tell) {
+    this.tell = tell;
+    this.shown = {};
+    this.state = {};
+    this.busy = false;
+    this.next = null;
+  }
+
+  // ---- from the server -------------------------------------------------------------------------
+
+  show(slots, state) {
+    for (const [name, html] of Object.entries(slots)) {
+      if (this.shown[name] === html) continue;
+      this.shown[name] = html;
+      for (const place of document.querySelectorAll(`[data-slot="${name}"]`)) this.put(place, html);
+    }
+    this.state = state;
+    for (const name of ["mode", "view", "arrangement", "question", "working"]) root.dataset[name] = state[name] ?? "";
+    document.title = state.title;
+    this.address(state);
+    this.time(state);
+    this.overlay();
+    if (state.seen === this.sent) this.release();
+  }
+
+  put(place, html) {
+    const focused = place.contains(document.activeElement) ? document.activeElement : null;
+    const key = focused && (focused.id || focused.dataset.key);
+    place.innerHTML = html;
+    if (key) place.querySelector(`#${CSS.escape(key)}, [data-key="${CSS.escape(key)}"]`)?.focus({ preventScroll: true });
+  }
+
+  address(state) {
+    const wanted = location.pathname + (state.query ? `?${state.query}` : "");
+    if (wanted === location.pathname + location.search) return;
+    if (state.push) history.pushState({}, "", wanted);
+    else history.replaceState({}, "", wanted);
+  }
+
+  time(state) {
+    const slider = document.getElementById("time");
+    if (!slider || !state.time) return;
+    slider.max = state.time.last;
+    slider.disabled = state.time.last === 0;
+    if (!this.moving) slider.value = state.time.index;
+    slider.setAttribute("aria-valuetext", state.time.words);
+    this.cursor(Number(slider.value));
+  }
+
+  cursor(index) {
+    const places = this.state.time?.places;
+    if (!places || !places.length) return;
+    const x = places[Math.min(index, places.length - 1)];
+    for (const line of document.querySelectorAll("[data-cursor]")) line.setAttribute("transform", `translate(${x} 0)`);
+  }
+
+  // ---- to the server ---------------------------------------------------------------------------
+
+  // Movements are sent one at a time, always the newest: the next one goes when the last was drawn.
+  sweep(name, value) {
+    this.next = [name, value];
+    if (!this.busy) this.release();
+  }
+
+  release() {
+    this.busy = false;
+    if (!this.next) return;
+    const [name, value] = this.next;
+    this.next = null;
+    this.busy = true;
+    this.sent = (this.sent ?? 0) + 1;
+    this.tell(name, { ...value, sent: this.sent });
+  }
+
+  listen() {
+    document.addEventListener("click", (e) => {
+      const button = e.target.closest("[data-do]");
+      if (!button) return;
+      if (button.dataset.do === "menu") {
+        root.dataset.menu = root.dataset.menu === "open" ? "" : "open";
+        return;
+      }
+      root.dataset.menu = "";
+      this.tell(button.dataset.do, button.dataset.value ?? "");
+    });
+    document.addEventListener("change", (e) => {
+      const control = e.target.closest("[data-choose]");
+      if (control) this.tell(control.dataset.choose, control.value);
+    });
+    document.addEventListener("submit", (e) => {
+      e.preventDefault();
+      const form = e.target;
+      this.tell(form.dataset.send, Object.fromEntries(new FormData(form)));
+    });
+    const slider = document.getElementById("time");
+    slider?.addEventListener("input", () => {
+      this.moving = true;
+      this.cursor(Number(slider.value));
+      this.sweep("frame", { index: Number(slider.value) });
+    });
+    slider?.addEventListener("change", () => (this.moving = false));
+    this.listenRibbon(slider);
+    document.addEventListener("keydown", (e) => this.key(e));
+    window.addEventListener("popstate", () => this.tell("address", location.search));
+    let timer;
+    window.addEventListener("resize", () => {
+      clearTimeout(timer);
+      timer = setTimeout(() => this.measure(), 120);
+    });
+    this.listenEnds();
+    this.followMap();
+  }
+
+  // A press anywhere on the ribbon takes the slider to the nearest frame there.
+  listenRibbon(slider) {
+    const ribbon = document.getElementById("ribbon");
+    if (!ribbon) return;
+    const go = (e) => {
+      const drawing = ribbon.querySelector("svg");
+      const places = this.state.time?.places;
+      if (!drawing || !places) return;
+      const box = drawing.getBoundingClientRect();
+      const x = ((e.clientX - box.left) / box.width) * drawing.viewBox.baseVal.width;
+      let best = 0;
+      places.forEach((at, i) => {
+        if (Math.abs(at - x) < Math.abs(places[best] - x)) best = i;
+      });
+      if (Number(slider.value) === best && this.state.time.index === best) return;
+      slider.value = best;
+      slider.dispatchEvent(new Event("input"));
+    };
+    ribbon.addEventListener("pointerdown", (e) => {
+      ribbon.setPointerCapture(e.pointerId);
+      this.moving = true;
+      go(e);
+      slider.focus({ focusVisible: false, preventScroll: true });
+      e.preventDefault();
+    });
+    ribbon.addEventListener("pointermove", (e) => ribbon.hasPointerCapture(e.pointerId) && go(e));
+    ribbon.addEventListener("pointerup", () => (this.moving = false));
+    ribbon.addEventListener("pointercancel", () => (this.moving = false));
+  }
+
+  key(e) {
+    const typing = e.target.closest("input, textarea, select");
+    if ((e.ctrlKey || e.metaKey) && e.key.toLowerCase() === "z" && !typing?.matches("[type=text], textarea")) {
+      e.preventDefault();
+      this.tell(e.shiftKey ? "redo" : "undo", "");
+    }
+    if (e.target.id === "map") {
+      const step = { ArrowLeft: [-1, 0], ArrowRight: [1, 0], ArrowUp: [0, 1], ArrowDown: [0, -1] }[e.key];
+      if (step) this.tell("pan", step);
+      else if (e.key === "+" || e.key === "=") this.tell("zoom", "nearer");
+      else if (e.key === "-") this.tell("zoom", "farther");
+      else return;
+      e.preventDefault();
+    }
+  }
+
+  measure() {
+    const width = (name) => Math.round(document.querySelector(`[data-slot="${name}"]`)?.clientWidth ?? 0);
+    const map = document.getElementById("map");
+    this.tell("size", {
+      window: window.innerWidth,
+      ratio: window.devicePixelRatio,
+      ribbon: width("ribbon"),
+      section: width("section"),
+      map: [map?.clientWidth ?? 0, map?.clientHeight ?? 0],
+    });
+  }
+
+  // ---- the section line over the map -----------------------------------------------------------
+
+  figure() {
+    for (const doc of window.Bokeh?.documents ?? []) {
+      const found = doc.get_model_by_name("map-figure");
+      if (found) return found;
+    }
+    return null;
+  }
+
+  followMap() {
+    const figure = this.figure();
+    if (!figure) return;
+    for (const range of [figure.x_range, figure.y_range]) range.change.connect(() => this.overlay());
+    new ResizeObserver(() => this.overlay()).observe(document.getElementById("map"));
+  }
+
+  // Pixels of a local point on the map, and back.
+  toPixels([x, y]) {
+    const { x_range, y_range } = this.figure();
+    const map = document.getElementById("map");
+    return [
+      ((x - x_range.start) / (x_range.end - x_range.start)) * map.clientWidth,
+      (1 - (y - y_range.start) / (y_range.end - y_range.start)) * map.clientHeight,
+    ];
+  }
+
+  toPlace([px, py]) {
+    const { x_range, y_range } = this.figure();
+    const map = document.getElementById("map");
+    return [
+      x_range.start + (px / map.clientWidth) * (x_range.end - x_range.start),
+      y_range.start + (1 - py / map.clientHeight) * (y_range.end - y_range.start),
+    ];
+  }
+
+  overlay() {
+    const layer = document.getElementById("over");
+    if (!layer || !this.figure()) return;
+    const ends = this.ends ?? this.state.ends;
+    layer.hidden = !ends;
+    if (!ends) return;
+    const [left, right] = ends.map((end) => this.toPixels(end));
+    for (const line of layer.querySelectorAll("line")) {
+      line.setAttribute("x1", left[0]);
+      line.setAttribute("y1", left[1]);
+      line.setAttribute("x2", right[0]);
+      line.setAttribute("y2", right[1]);
+    }
+    for (const [button, at] of [["end-left", left], ["end-right", right]]) {
+      document.getElementById(button).style.transform = `translate(${at[0]}px, ${at[1]}px)`;
+    }
+  }
+
+  listenEnds() {
+    for (const [id, which] of [["end-left", 0], ["end-right", 1]]) {
+      const button = document.getElementById(id);
+      if (!button) continue;
+      button.addEventListener("pointerdown", (e) => {
+        e.preventDefault();
+        button.focus();
+        button.setPointerCapture(e.pointerId);
+        this.dragged = which;
+      });
+      button.addEventListener("pointermove", (e) => {
+        if (this.dragged !== which) return;
+        const box = document.getElementById("map").getBoundingClientRect();
+        this.moveEnd(which, this.toPlace([e.clientX - box.left, e.clientY - box.top]));
+      });
+      const letGo = () => {
+        if (this.dragged === which) this.dragged = undefined;
+      };
+      button.addEventListener("pointerup", letGo);
+      button.addEventListener("pointercancel", letGo);
+      button.addEventListener("keydown", (e) => {
+        const step = { ArrowLeft: [-1, 0], ArrowRight: [1, 0], ArrowUp: [0, -1], ArrowDown: [0, 1] }[e.key];
+        if (!step) return;
+        e.preventDefault();
+        const far = e.shiftKey ? 20 : 4;
+        const [x, y] = this.toPixels((this.ends ?? this.state.ends)[which]);
+        this.moveEnd(which, this.toPlace([x + far * step[0], y + far * step[1]]));
+      });
+    }
+  }
+
+  moveEnd(which, place) {
+    const ends = [...(this.ends ?? this.state.ends)];
+    ends[which] = place;
+    this.ends = ends;
+    this.overlay();
+    this.sweep("section", { ends });
+    clearTimeout(this.settle);
+    this.settle = setTimeout(() => (this.ends = undefined), 1500);
+  }
+}
