@@ -59,8 +59,12 @@ class Figure:
     extra: Mapping[str, object] = field(default_factory=dict)
 
     def as_dict(self) -> dict[str, object]:
-        """Plain values for JSON, full digits."""
-        return asdict(self)
+        """Plain values for JSON, full digits; what is not a number is None."""
+        plain = asdict(self)
+        for name in ("value", "low", "high"):
+            number = plain[name]
+            plain[name] = float(number) if number is not None and math.isfinite(number) else None
+        return plain
 
 
 def significant_step(value: float, low: float | None, high: float | None, digits: int = 3) -> float:

@@ -1,0 +1,112 @@
+"""A record made from a review: which parts, in which order, from which runs."""
+
+from __future__ import annotations
+
+from collections.abc import Callable
+from dataclasses import dataclass
+from functools import cached_property
+from typing import Any
+
+from ..provenance import file_hash
+from ..review import Review, now
+from ..run import Run
+from . import basis
+from .eddies import Reading, eddies, read
+from .model import Part, Record
+
+LIMITS = (
+    "This record says what was read in the files named in it. It is not an approval, and not an assessment of the "
+    "model's fitness for any purpose that is not named here. Screening figures do not replace licensed judgement, "
+    "local standards or codes."
+)
+
+
+@dataclass(frozen=True, eq=False)
+class Material:
+    """A review with its runs opened and read once, shared by all parts."""
+
+    review: Review
+    progress: Callable[[str], None] = lambda text: None
+
+    @cached_property
+    def runs(self) -> dict[str, Run]:
+        """Runs by id."""
+        return {e.id: self.review.open(e.id) for e in self.review.runs}
+
+    @cached_property
+    def readings(self) -> list[Reading]:
+        """Every run that the record reads in full: all but those named in [record] leave_out."""
+        left = set(self.review.contents.record.get("leave_out", ()))
+        out = []
+        for entry in self.review.runs:
+            if entry.id not in left:
+                self.progress(f"reading {entry.label}")
+                out.append(read(self.review, entry, self.runs[entry.id]))
+        return out
+
+
+PARTS: dict[str, Callable[[Material], Part]] = {
+    "documents": lambda m: basis.documents(m.review),
+    "runs": lambda m: basis.runs(m.review, m.runs),
+    "method": lambda m: basis.method(),
+    "eddies": lambda m: eddies(m.readings),
+    "settings": lambda m: basis.settings(m.review),
+}
+
+
+def build_record(material: Material) -> Record:
+    """The record of a review, from its material.
+
+    Parts are those of ``[record] parts`` in review.toml, in that order; without it, all of them.
+
+    Raises
+    ------
+    ValueError
+        An unknown part, no runs, or a run whose file is missing or changed since it was reviewed.
+    """
+    review, progress = material.review, material.progress
+    chosen = review.contents.record.get("parts", list(PARTS))
+    unknown = next((p for p in chosen if p not in PARTS), None)
+    if unknown:
+        raise ValueError(f"review.toml, record.parts: there is no part {unknown!r}; the parts are {', '.join(PARTS)}.")
+    if not review.runs:
+        raise ValueError("the review lists no runs; add one under [[runs]] before making a record.")
+    if changed := review.changed_inputs():
+        raise ValueError(changed[0])
+    parts = []
+    for name in chosen:
+        progress(name)
+        parts.append(PARTS[name](material))
+    return Record(
+        title=review.title, front=_front(review, parts), parts=tuple(parts), inputs=tuple(_inputs(material)),
+        settings=dict(review.settings), made=now(),
+    )
+
+
+def _front(review: Review, parts: list[Part]) -> dict[str, str]:
+    who = review.contents.reviewer
+    missing = [d.name for d in review.contents.documents if not d.received]
+    left = review.contents.record.get("leave_out", ())
+    return {
+        "Reviewer": who.name or "not named",
+        "Role": who.role or "not named",
+        "Organisation": who.organisation or "not named",
+        "Date": now()[:10],
+        "Place": review.contents.place or "not named",
+        "What was reviewed": "; ".join(e.label for e in review.runs),
+        "Done": ", ".join(p.title for p in parts),
+        "Still awaited": "; ".join(missing) or "nothing listed",
+        "Left out": "; ".join(left) or "nothing",
+        "Limits": review.contents.record.get("limits", LIMITS),
+    }
+
+
+def _inputs(material: Material) -> list[dict[str, Any]]:
+    review = material.review
+    out = [
+        {"kind": "run", "id": e.id, "file": ", ".join(e.files), "sha256": material.runs[e.id].hash} for e in review.runs
+    ]
+    for name in ("review.toml", review.contents.lines):
+        if (review.folder / name).is_file():
+            out.append({"kind": "file", "id": name, "file": name, "sha256": file_hash(review.folder / name)})
+    return out
