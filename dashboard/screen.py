@@ -61,7 +61,6 @@ class Screen:
         for name, make in (
             ("key", lambda: question.key_html(desk)),
             ("alternative", lambda: question.alternative(desk)),
-            ("caption", lambda: self._caption(page, desk)),
             ("ribbon", lambda: question.ribbon(desk) if question.has_time else ""),
         ):
             self._part(name, due, lambda name=name, make=make: self._put(name, make()))
@@ -127,6 +126,7 @@ class Screen:
             w = scene.water
             picture = raster.paint(w.frame, w.value, w.top, psi=w.psi, tube=w.tube_m3_s, carries=w.carries)
         page.map.show(sheet, picture, picture_view)
+        self._put("caption", self._caption(page, desk))
         self._put("scale", marks.scale_bar(view.step, desk.units, label=look.label_px) + marks.north())
         missing = self._missing(desk)
         if missing is not None:
@@ -143,15 +143,13 @@ class Screen:
         return None
 
     def _caption(self, page: Page, desk: Desk) -> str:
-        if not page.question.has_map or desk.view is None:
-            return ""
         words = page.question.caption(desk, self._scene or Scene(), desk.view)
         hidden = getattr(self, "_hidden", 0)
         if hidden:
             words += f" {text.count(hidden, 'more eddy is', 'more eddies are')} too small to name here."
         zoom = "".join(
             f'<button type="button" class="word" data-do="zoom" data-value="{value}" data-key="zoom-{value}">{label}</button> '
-            for value, label in (("subject", "the eddy"), ("nearer", "nearer"), ("farther", "farther"), ("whole", "whole reach"))
+            for value, label in (*page.question.places, ("nearer", "nearer"), ("farther", "farther"), ("whole", "whole reach"))
         )
         return f"<span>{words}</span><span class=zoom>{zoom}</span>"
 

@@ -68,9 +68,9 @@ def _shared_digits(low: float, high: float) -> int:
     return min(max(3, math.ceil(math.log10(size / spread)) + 2), 5)
 
 
-def round_step(target: float) -> float:
-    """The nearest of 1, 2, 5 times a power of ten below ``target``: for scales and ticks."""
+def round_step(target: float, steps: tuple[float, ...] = (1, 2, 5)) -> float:
+    """The largest of ``steps`` times a power of ten that is not above ``target``: for scales and ticks."""
     if not target > 0 or not math.isfinite(target):
         return 1.0
     power = 10.0 ** math.floor(math.log10(target) + 1e-12)
-    return max(s for s in (1, 2, 5) if s * power <= target * (1 + 1e-9)) * power
+    return max(s for s in steps if s * power <= target * (1 + 1e-9)) * power

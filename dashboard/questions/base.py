@@ -73,6 +73,7 @@ class Question:
     asks: str
     has_map = True
     has_time = True
+    places: tuple[tuple[str, str], ...] = (("subject", "the place"),)  # of the caption's words for where to look
 
     def summary(self, desk: Desk) -> str:
         """The rail's line, plain text; must not start long work."""

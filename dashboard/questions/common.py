@@ -46,6 +46,17 @@ def _readable(direction: np.ndarray) -> float:
     return float(np.arctan2(direction[1], direction[0]))
 
 
+def view_of(desk: Desk, bounds, ends) -> tuple[float, float, float]:
+    """Centre and width, m, of a map that holds a thing and the section through it, with room round them."""
+    boxes = np.array([bounds] + ([[*np.min(ends, axis=0), *np.max(ends, axis=0)]] if ends else []))
+    west, south = boxes[:, :2].min(axis=0)
+    east, north = boxes[:, 2:].max(axis=0)
+    columns, rows = desk.sizes.map
+    thing = max(bounds[2] - bounds[0], bounds[3] - bounds[1])
+    width = max(1.3 * (east - west), 1.3 * (north - south) * columns / rows, 4.0 * thing, 40.0)
+    return float((west + east) / 2), float((south + north) / 2), float(width)
+
+
 def chooser(name: str, chosen: str, offered: Mapping[str, str], label: str) -> str:
     """A word of the caption that changes it: a native list in the caption's own type."""
     options = "".join(
@@ -117,7 +128,7 @@ def section_html(desk: Desk, ends, ledger: FrameLedger) -> str:
         return ""
     u = desk.units
     profile, figures = profile_of(ledger, ends)
-    box = section.Box(max(desk.sizes.section, 260), desk.look.label_px)
+    box = section.Box(max(desk.sizes.section, 260), desk.look.label_px, 0.72 if desk.look.hall else 1.0)
     words = "hanging bars: back upstream" if not desk.look.hall else "hanging: upstream"
     by_psi = f", <b>{u.quantity(figures['psi'], 'm3/s')}</b> by psi" if figures["psi"] is not None else ""
     area, mean = u.quantity(figures["area"], "m2"), u.quantity(figures["mean"], "m/s")

@@ -10,6 +10,7 @@ from hydro.ledger import FrameLedger
 from .. import text
 from ..choices import SHADES, TUBES
 from ..raster import View
+from ..reading import Story
 from ..results import Working
 from ..views import marks, ribbon, table
 from ..views.scene import Scene, Water, ZoneMark
@@ -26,6 +27,8 @@ class Eddies(Question):
     key = "eddies"
     word = "Eddies"
     asks = "Where does the water turn back on itself, and how much of it?"
+
+    places = (("subject", "the eddy"),)
 
     def summary(self, desk: Desk) -> str:
         ledger = desk.reading.known(("ledger", desk.run_id, desk.index))
@@ -56,9 +59,12 @@ class Eddies(Question):
         flow = u.quantity(zone.recirculating_discharge_m3_s, "m3/s", **_span(zone, "recirculating_discharge_m3_s"))
         share = zone.share_of_through_discharge
         river = f", {text.percent(share)} of the river" if share is not None else ""
+        if desk.look.hall and share is not None:
+            flow, river = text.percent(share), " of the river"
         name = "" if len(zones) == 1 else f' <em class="subject">{text.safe(zone.id)}</em> {_where(zone)},'
         return (
-            f"{first} {who}{name} covers <b>{area}</b>{footnote(ids, 'sensitivity')} and takes <b>{flow}</b> round with it{river}."
+            f"{first} {who}{name} covers <b>{area}</b>{footnote(ids, 'sensitivity')} and "
+            f"takes <b>{flow}</b>{river + ' round with it' if desk.look.hall else ' round with it' + river}."
         )
 
     def scene(self, desk: Desk) -> Scene:
@@ -85,8 +91,7 @@ class Eddies(Question):
         zone = self.subject(desk)
         if zone is None:
             return None
-        width = float(np.clip(7.0 * max(zone.length_m, zone.width_m), 60.0, 400.0))
-        return float(zone.centre[0]), float(zone.centre[1]), width
+        return common.view_of(desk, zone.contour.bounds, self.section_ends(desk))
 
     def caption(self, desk: Desk, scene: Scene, view: View) -> str:
         choices, u = desk.choices, desk.units
@@ -135,8 +140,15 @@ class Eddies(Question):
         keep = order[: _ROWS_HALL if desk.look.hall or desk.sizes.narrow else _ROWS_DESK]
         rows = [ribbon.Row(k, areas[k], k == chosen) for k in sorted(keep, key=common.natural)]
         return ribbon.Course(
-            run.times.seconds, run.times.instants, common.discharge(story), rows, desk.index, more_rows=len(order) - len(keep),
+            run.times.seconds, run.times.instants, self.discharge(desk, story), rows, desk.index,
+            more_rows=len(order) - len(keep),
         )
+
+    def discharge(self, desk: Desk, story: Story) -> np.ndarray:
+        """Through-discharge by frame, the chosen frame's as soon as it is known."""
+        found = common.discharge(story)
+        found[desk.index] = self.ledger(desk).sf.through_discharge_m3_s
+        return found
 
     def side(self, desk: Desk) -> dict[str, str]:
         return {"section": common.section_html(desk, self.section_ends(desk), self.ledger(desk)), "table": self.table(desk)}
@@ -158,11 +170,9 @@ class Eddies(Question):
             )),
         )
         moment = text.moment(ledger.frame.time, ledger.frame.seconds)
-        small = len(ledger.zones.small) + len(ledger.zones.open_to_boundary)
-        left_out = f"; {small} under the floor or cut by the model's edge" if small else ""
         return table.html(table.Table(
-            "Ledger of eddies", f"{moment}{left_out}", f"Recirculation zones at {moment}", columns, lines,
-            "No recirculation zone is kept in this frame.",
+            "Ledger of eddies", moment, f"Recirculation zones at {moment}", columns, lines,
+            "No recirculation zone is kept in this frame.", _left_out(ledger, len(ledger.zones.zones) - len(zones)),
         ))
 
     def cautions(self, desk: Desk) -> tuple[str, ...]:
@@ -183,9 +193,26 @@ class Eddies(Question):
 
 
 def _where(zone: Zone) -> str:
-    """Where an eddy is, to follow its tag in a sentence."""
-    name = zone.name or zone.kind
-    return text.safe(name[:1].lower() + name[1:] if name.split(" ")[0] in ("Left", "Right", "Free", "Side") else name)
+    """Where an eddy is, in words that follow its tag in a sentence."""
+    name = text.safe(zone.name or zone.kind).replace(", chainage", ", at chainage").replace(" m", "\u00a0m")
+    if zone.kind == "behind structure":
+        return f"at {name}"
+    if zone.kind in ("at bank", "side bay"):
+        return f"{'in' if zone.kind == 'side bay' else 'on'} the {name}"
+    return f"a {name}"
+
+
+def _left_out(ledger: FrameLedger, unlisted: int) -> str:
+    """What the table does not list, counted."""
+    parts = []
+    if unlisted > 0:
+        parts.append(f"{unlisted} smaller {'eddy is' if unlisted == 1 else 'eddies are'} not listed at this width")
+    small, cut = len(ledger.zones.small), len(ledger.zones.open_to_boundary)
+    if small:
+        parts.append(f"{text.count(small, 'region')} under the noise or the floor {'is' if small == 1 else 'are'} left out")
+    if cut:
+        parts.append(f"{text.count(cut, 'region')} cut by the model's edge {'is' if cut == 1 else 'are'} not counted")
+    return ("; ".join(parts)[:1].upper() + "; ".join(parts)[1:] + ".") if parts else ""
 
 
 def _span(zone: Zone, figure: str) -> dict[str, float]:
@@ -212,7 +239,7 @@ def _line(zone: Zone, subject: bool, desk: Desk, ids: tuple[str, ...]) -> table.
     few = desk.look.hall or desk.sizes.narrow
     return table.Line(
         (
-            (f"{marks.turning(zone.rotation)} {text.safe(zone.id)}", ""), (_where(zone) + coarse, ""),
+            (f"{marks.turning(zone.rotation)} {text.safe(zone.id)}", ""), (text.safe(zone.name or zone.kind) + coarse, ""),
             cell("area_m2", "m2"),
             *(() if few else (cell("recirculating_discharge_m3_s", "m3/s"), cell("rotation_time_s", "s"))),
         ),

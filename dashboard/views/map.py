@@ -195,6 +195,7 @@ class _Draughtsman:
 
     def labels(self, scene: Scene) -> None:
         size = self.look.label_px
+        self.margins()
         for name in scene.names:
             self.name(name)
         if scene.section is not None:
@@ -204,6 +205,7 @@ class _Draughtsman:
             line = np.array(scene.section)
             for x, y in strokes.along(line, 12 * self.px)[0]:
                 self.avoid.append((x - 3 * self.px, y - 3 * self.px, x + 3 * self.px, y + 3 * self.px))
+        # Text on the map: eddies' tags first, the subject's before all, then what is built.
         wanted = [(Tag(z.tag, tuple(z.centre), z.subject, z.coarse), self.room(z), True) for z in scene.zones]
         wanted += [(t, 0.0, True) for t in scene.tags]
         named = [s for s in scene.structures if s.name]
@@ -215,15 +217,26 @@ class _Draughtsman:
             return
         sizes = np.array([[(len(t.text) * 0.6 * size + 12) * self.px, (size * 1.25 + 8) * self.px] for t, _, _ in wanted])
         anchors = np.array([t.at for t, _, _ in wanted])
-        room = [r / 1.0 for _, r, _ in wanted]
+        room = [r for _, r, _ in wanted]
         own = np.array(self.avoid).reshape(-1, 4)
-        for (tag, _, boxed), spot in zip(wanted, tags.place(anchors, sizes, own, self.view.extent, inside=room)):
+        free = [boxed for _, _, boxed in wanted]
+        spots = tags.place(anchors, sizes, own, self.view.extent, inside=room, leaders=free)
+        for (tag, _, boxed), spot in zip(wanted, spots):
             if not spot.shown:
                 self.sheet.hidden += boxed
             elif boxed:
                 self.tag(tag, spot)
             else:
                 self.plain(tag, spot)
+
+    def margins(self) -> None:
+        """Keep labels off the key, the north arrow and the scale bar, which lie over the map's corners."""
+        west, south, east, north = self.view.extent
+        unit = self.look.label_px * self.px
+        key = (17.5, 9.5) if self.view.columns > 640 and not self.look.hall else (15, 5.5)
+        self.avoid.append((west, north - key[1] * unit, west + key[0] * unit, north))
+        self.avoid.append((east - 3.5 * unit, north - 5.5 * unit, east, north))
+        self.avoid.append((east - 12 * unit, south, east, south + 3.4 * unit))
 
     def tag(self, tag: Tag, spot: tags.Placed) -> None:
         p, colour = self.p, self.p.signal if tag.subject else self.p.ink
@@ -247,6 +260,9 @@ class _Draughtsman:
             name.x, name.y, name.text, self.p.ink if name.arrow else self.p.ink2, size=size, angle=name.angle,
             style="italic", font="literata",
         )
+        half = np.array([0.3 * len(name.text) * size + (28 if name.arrow else 0), 0.8 * size]) * self.px
+        turn = np.abs([[np.cos(name.angle), -np.sin(name.angle)], [np.sin(name.angle), np.cos(name.angle)]]) @ half
+        self.avoid.append((name.x - turn[0], name.y - turn[1], name.x + turn[0], name.y + turn[1]))
         if name.arrow:
             ahead = np.array([np.cos(name.angle), np.sin(name.angle)])
             start = np.array([name.x, name.y]) + 0.36 * len(name.text) * size * self.px * ahead

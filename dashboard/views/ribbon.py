@@ -59,7 +59,7 @@ class Box:
 
     @property
     def left(self) -> float:
-        return 5.2 * self.label
+        return 6.4 * self.label
 
     @property
     def right(self) -> float:
@@ -122,7 +122,7 @@ def _discharge(course: Course, box: Box, units: Units, x: np.ndarray) -> str:
     if known.sum() < 1:
         return out[0]
     f = units.factor("m3/s")
-    step = round_step(max(float(np.nanmax(q)) * f, 1e-9) / 2.2)
+    step = round_step(max(float(np.nanmax(q)) * f, 1e-9) / 3, steps=(1, 2, 2.5, 5))
     top = max(float(np.nanmax(q)) * f * 1.06, step)
     y = box.base - q * f / top * (box.base - box.flag - 4)
     for run in _pieces(known):
@@ -154,7 +154,7 @@ def _rows(course: Course, box: Box, x: np.ndarray) -> str:
     ]
     for i, row in enumerate(course.rows):
         y = first + (i + 0.4) * box.row
-        kind = "subject" if row.subject else "plain"
+        kind = "subject" if row.subject else "still"
         out.append(
             f'<text class="{kind} end" x="{box.left - 6}" y="{y + 0.35 * box.label:.1f}">{text.safe(row.name)}</text>'
             f'<line class="rule" x1="{box.left}" x2="{box.right}" y1="{y:.1f}" y2="{y:.1f}"/>'
@@ -221,7 +221,7 @@ def _cursor(course: Course, box: Box, units: Units, x: np.ndarray, axis: float) 
     words = text.clock(_instant(course), course.seconds[course.index])
     if np.isfinite(q):
         words += f" \u00b7 {units.quantity(q, 'm3/s')}"
-    width = 0.56 * box.label * len(words) + 12
+    width = 0.53 * box.label * len(words) + 14
     left = x[course.index] + width > box.width
     start = -width if left else 0.0
     top, b = 0.0, box.label

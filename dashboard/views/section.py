@@ -46,6 +46,7 @@ class Box:
 
     width: float
     label: float = 13.0
+    tall: float = 1.0
 
     @property
     def right(self) -> float:
@@ -57,11 +58,11 @@ class Box:
 
     @property
     def surface(self) -> float:
-        return self.head + 8.4 * self.label
+        return self.head + 8.4 * self.tall * self.label
 
     @property
     def foot(self) -> float:
-        return self.surface + 7.4 * self.label
+        return self.surface + 7.4 * self.tall * self.label
 
     @property
     def height(self) -> float:
@@ -197,12 +198,13 @@ def _axis(s: _Scale, units: Units) -> str:
     out = [f'<line class="hair" x1="0" x2="{box.right:.1f}" y1="{box.foot}" y2="{box.foot}"/>']
     for k in range(int(s.length * f / step + 1e-9) + 1):
         x = k * step / f / s.length * box.right
-        label = f"{k * step:g} {units.label('m')}" if k == 0 else f"{k * step:g}"
+        label = f"{k * step:g}"
         anchor = ' class="mid"' if k else ""
         out.append(
             f'<line class="hair2" x1="{x:.1f}" x2="{x:.1f}" y1="{box.foot}" y2="{box.foot + 5:.1f}"/>'
             f'<text{anchor} x="{x:.1f}" y="{box.foot + 5 + box.label:.1f}">{label}</text>'
         )
+    out.append(f'<text x="{box.right + 6:.1f}" y="{box.foot + 5 + box.label:.1f}">{units.label("m")}</text>')
     return "".join(out)
 
 

@@ -38,6 +38,7 @@ class Table:
     columns: tuple[Column, ...]
     lines: Sequence[Line] = field(default=())
     empty: str = "None."
+    aside: str = ""  # HTML under the table
 
 
 def html(table: Table) -> str:
@@ -52,12 +53,12 @@ def html(table: Table) -> str:
     return (
         f'<h2>{table.title} <span class="beside">{table.beside}</span></h2>'
         f'<table><caption class="unseen">{safe(table.caption)}</caption><thead><tr>{head}</tr></thead>'
-        f"<tbody>{body}</tbody></table>"
+        f"<tbody>{body}</tbody></table>" + (f'<p class="aside">{table.aside}</p>' if table.aside else "")
     )
 
 
 def _kind(column: Column) -> str:
-    return f"{'figure' if column.figure else 'word'}{' secondary' if column.secondary else ''}"
+    return f"{'figure' if column.figure else 'name'}{' secondary' if column.secondary else ''}"
 
 
 def _line(line: Line, columns: tuple[Column, ...]) -> str:

@@ -23,7 +23,7 @@ class Placed:
 
 def place(
     anchors: np.ndarray, sizes: np.ndarray, avoid: np.ndarray, extent: tuple[float, float, float, float], *,
-    inside: Sequence[float] = (), limit: float = 0.35,
+    inside: Sequence[float] = (), leaders: Sequence[bool] = (), limit: float = 0.35,
 ) -> list[Placed]:
     """Places for labels, most important first.
 
@@ -39,6 +39,8 @@ def place(
         The map; labels stay inside it.
     inside : sequence of float, optional
         Room round each anchor, m; where it is larger than the label, it stands there without a leader.
+    leaders : sequence of bool, optional
+        Whether a label may stand away from its anchor on a leader; others stay close.
     limit : float
         Share of a label that may lie on something; above, it is not shown.
     """
@@ -46,7 +48,8 @@ def place(
     out = []
     for i, (anchor, size) in enumerate(zip(anchors, sizes)):
         room = inside[i] if len(inside) else 0.0
-        best = _best(anchor, size, np.array(taken).reshape(-1, 4), extent, room)
+        distances = _DISTANCES if not len(leaders) or leaders[i] else _DISTANCES[:1]
+        best = _best(anchor, size, np.array(taken).reshape(-1, 4), extent, room, distances)
         cost, x, y, leader = best
         shown = cost <= limit
         if shown:
@@ -55,11 +58,11 @@ def place(
     return out
 
 
-def _best(anchor, size, taken, extent, room) -> tuple[float, float, float, bool]:
+def _best(anchor, size, taken, extent, room, distances) -> tuple[float, float, float, bool]:
     gap = 0.5 * np.hypot(*size) + 0.6 * size[1]
     near = [(anchor[0] + 1.5 * size[1], anchor[1], False)] if room > 0.75 * size[0] + size[1] else []
     far = [
-        (anchor[0] + d * gap * np.cos(a), anchor[1] + d * gap * np.sin(a), True) for d in _DISTANCES for a in _DIRECTIONS
+        (anchor[0] + d * gap * np.cos(a), anchor[1] + d * gap * np.sin(a), True) for d in distances for a in _DIRECTIONS
     ]
     best = (np.inf, float(anchor[0]), float(anchor[1]), True)
     for rank, (x, y, leader) in enumerate([*near, *far]):
