@@ -1,0 +1,248 @@
+"""From fields in the file's own numbering to a run: which field becomes what, derived by one rule for every door."""
+
+from __future__ import annotations
+
+from collections.abc import Callable
+from dataclasses import dataclass, field
+from pathlib import Path
+
+import numpy as np
+
+from ..frame import RawFrame, face_bed_and_node_bed, flow_from_edges, to_nodes
+from ..mesh import Mesh
+from ..run import Note, Run, TimeAxis
+from ..settings import Settings
+from . import faults
+from .crs import Ground
+
+
+@dataclass(frozen=True, eq=False)
+class Field:
+    """A quantity on nodes, faces or edges: ``read(i)`` gives its values at frame i, (places,), SI, NaN where missing.
+
+    The places are in the file's order.
+    """
+
+    name: str
+    location: str
+    read: Callable[[int], np.ndarray]
+    per_length: bool = False
+
+
+@dataclass(frozen=True, eq=False)
+class Parts:
+    """What a door found: everything that a run is made of. ``fields`` by quantity; bed as node bed and face bed."""
+
+    name: str
+    files: tuple[Path, ...]
+    mesh: Mesh
+    fields: dict[str, Field]
+    times: TimeAxis
+    ground: Ground
+    settings: Settings
+    depth_is: str
+    notes: list[Note] = field(default_factory=list)
+    boundary_sets: dict[str, np.ndarray] = field(default_factory=dict)
+    statements: dict[str, str] = field(default_factory=dict)
+
+    @property
+    def file(self) -> str:
+        """For messages."""
+        return self.files[0].name if len(self.files) == 1 else f"{self.files[0].name} and {len(self.files) - 1} more"
+
+
+def make_run(parts: Parts) -> Run:
+    """A run, its first frame checked.
+
+    Raises ``ValueError`` for what is missing (bed, depth or level, velocity), for values that are
+    missing throughout, and for values that no river has.
+    """
+    node_bed, face_bed = _bed(parts)
+    frames = _Frames(parts, node_bed, face_bed)
+    parts.notes.extend(frames.notes)
+    first = frames(0)
+    parts.notes.extend(faults.check_frame(parts.file, parts.mesh, first, parts.settings["wet_depth_m"]))
+    return Run(
+        parts.name, parts.files, parts.mesh, parts.times, node_bed, face_bed, parts.ground.crs, parts.ground.datum, frames,
+        parts.settings, _roughness(parts), parts.boundary_sets, (*parts.ground.notes, *parts.notes), parts.depth_is,
+        parts.statements,
+    )
+
+
+class _Frames:
+    """Raw frames of a run, one at a time."""
+
+    def __init__(self, parts: Parts, node_bed: np.ndarray, face_bed: np.ndarray) -> None:
+        self._file, self._mesh, self._fields = parts.file, parts.mesh, parts.fields
+        self._bed = {"node": node_bed, "face": face_bed}
+        self._wet = parts.settings["wet_depth_m"]
+        self.notes: list[Note] = []
+        self._flow = self._flow_fields()
+        self.stored_on = self._flow[0].location if self._flow else "edge"
+        self._place = "node" if self.stored_on == "node" else "face"
+        self._say_derivations()
+
+    def __call__(self, index: int) -> RawFrame:
+        depth = self._depth(index)
+        edge = self._edge_discharge(index)
+        if not self._flow:
+            return RawFrame("edge", depth, None, edge)
+        flow = np.column_stack([self._read(f, index) for f in self._flow])
+        if self._of_velocity:
+            faults.check_velocity(self._file, self._flow[0].name, index, flow, depth, self._wet)
+            flow *= depth[:, None]
+            flow[depth == 0] = 0.0
+        return RawFrame(self.stored_on, depth, flow, edge)
+
+    def _flow_fields(self) -> tuple[Field, ...]:
+        fields = self._fields
+        for kind in ("unit_discharge", "velocity"):
+            pair = [fields.get(f"{kind}_{axis}") for axis in "xy"]
+            if any(pair) and not all(pair):
+                there, lacking = ("x", "y") if pair[0] else ("y", "x")
+                raise ValueError(
+                    f"{self._file}: {kind.replace('_', ' ')} has its {there} component ({(pair[0] or pair[1]).name}) but not "
+                    f"{lacking}; export both, or name it with mapping.{kind}_{lacking}.variable."
+                )
+            if all(pair):
+                if pair[0].location != pair[1].location or pair[0].location == "edge":
+                    raise ValueError(
+                        f"{self._file}: {pair[0].name} stands on {pair[0].location}s and {pair[1].name} on "
+                        f"{pair[1].location}s; export both components on faces (or both on nodes)."
+                    )
+                self._of_velocity = kind == "velocity"
+                return tuple(pair)
+        self._of_velocity = False
+        if "edge_discharge" in fields:
+            return ()
+        raise ValueError(
+            f"{self._file} has no velocity, unit discharge or edge discharge that can be recognised; export one, or name "
+            "it with mapping.velocity_x.variable and velocity_y."
+        )
+
+    def _say_derivations(self) -> None:
+        depth, level = self._fields.get("depth"), self._fields.get("level")
+        say = lambda text, name="": self.notes.append(Note(text, name))  # noqa: E731
+        if depth is None and level is None:
+            what = "velocity" if self._of_velocity else "discharge"
+            raise ValueError(
+                f"{self._file} has {what} but neither depth nor water level that can be recognised; export one, or name it "
+                "with mapping.depth.variable or mapping.level.variable."
+            )
+        source = depth or level
+        if source.location == "edge":
+            raise ValueError(f"{self._file}: {source.name} stands on edges; export depth or level on faces or nodes.")
+        if depth is None:
+            say("depth = level - bed, 0 where negative or missing", level.name)
+        elif level is None:
+            say("level = bed + depth", depth.name)
+        else:
+            say(f"level = bed + depth; the file's own level {level.name} is not used", depth.name)
+        if source.location != self._place:
+            rule = "the area mean of nodes" if self._place == "face" else "carried from faces exactly for linear fields"
+            say(f"{source.name} stands on {source.location}s and the flow on {self.stored_on}s: depth is {rule}", source.name)
+        if self._of_velocity:
+            say("unit discharge = depth x velocity", self._flow[0].name)
+        elif not self._flow:
+            say("unit discharge of faces from the discharges of their edges", self._fields["edge_discharge"].name)
+        else:
+            say("velocity = unit discharge / depth", self._flow[0].name)
+        if "edge_discharge" in self._fields:
+            say(
+                "edge discharge counts positive from left to right of an edge, walking from its first node to its second",
+                self._fields["edge_discharge"].name,
+            )
+
+    def _read(self, f: Field, index: int) -> np.ndarray:
+        return f.read(index)[_order(self._mesh, f.location)]
+
+    def _depth(self, index: int) -> np.ndarray:
+        """Depth where the flow stands, m; 0 where it is missing or negative."""
+        source = self._fields.get("depth") or self._fields["level"]
+        values = self._read(source, index)
+        if "depth" not in self._fields:
+            values = values - self._bed[source.location]
+        # fmax takes the number where the other is missing.
+        depth = np.fmax(values, 0.0)
+        if source.location == self._place:
+            return depth
+        if self._place == "face":
+            return self._mesh.triangle_to_face(depth[self._mesh.triangles].mean(axis=1))
+        level = (depth + self._bed["face"])[:, None]
+        at_nodes = to_nodes(self._mesh, level, depth > self._wet)[:, 0] - self._bed["node"]
+        return np.fmax(at_nodes, 0.0)
+
+    def _edge_discharge(self, index: int) -> np.ndarray | None:
+        f = self._fields.get("edge_discharge")
+        if f is None:
+            return None
+        values = np.nan_to_num(self._read(f, index))
+        return values * self._mesh.edge_length if f.per_length else values
+
+
+def _order(mesh: Mesh, location: str) -> np.ndarray:
+    return {"node": mesh.file_node, "face": mesh.file_face, "edge": mesh.file_edge}[location]
+
+
+def _bed(parts: Parts) -> tuple[np.ndarray, np.ndarray]:
+    """Node and face bed, m; from level and depth where the file has no bed."""
+    mesh, fields = parts.mesh, parts.fields
+    given: dict[str, np.ndarray | None] = {"node": None, "face": None}
+    for location in given:
+        f = fields.get(f"{location} bed")
+        if f is not None:
+            given[location] = f.read(0)[_order(mesh, location)]
+            faults.check_bed(parts.file, f.name, location, given[location], mesh)
+    if given["node"] is None and given["face"] is None:
+        depth, level = fields.get("depth"), fields.get("level")
+        if depth is None or level is None or depth.location != level.location or depth.location == "edge":
+            raise ValueError(
+                f"{parts.file} has no bed level that can be recognised; export it, or name it with mapping.bed.variable."
+            )
+        order = _order(mesh, depth.location)
+        derived = (level.read(0) - depth.read(0))[order]
+        faults.check_bed(parts.file, f"{level.name} - {depth.name}", depth.location, derived, mesh)
+        given[depth.location] = derived
+        parts.notes.append(Note("bed = level - depth of the first frame", level.name))
+    made = {"node": "face", "face": "node"}
+    for location, other in made.items():
+        if given[location] is None:
+            rule = "the area mean of its nodes" if location == "face" else "carried from faces exactly for linear fields"
+            parts.notes.append(Note(f"{location} bed is made from the {other} bed: {rule}", ""))
+    return face_bed_and_node_bed(mesh, given["node"], given["face"])
+
+
+def _roughness(parts: Parts) -> np.ndarray | None:
+    """Manning's n of faces; node values give faces their area mean."""
+    f = parts.fields.get("roughness")
+    if f is None:
+        return None
+    mesh = parts.mesh
+    values = f.read(0)[_order(mesh, f.location)]
+    if f.location == "node":
+        values = mesh.triangle_to_face(values[mesh.triangles].mean(axis=1))
+    faults.check_roughness(parts.file, f.name, values, mesh)
+    return values
+
+
+def check_edge_sense(parts: Parts, run: Run) -> list[Note]:
+    """Whether stored edge discharges run with the faces' own flow.
+
+    Raises ``ValueError`` when they clearly run against it.
+    """
+    first = run.read(0)
+    if first.edge_discharge is None or first.unit_discharge is None or first.stored_on != "face":
+        return []
+    own, theirs = np.nan_to_num(first.unit_discharge), flow_from_edges(run.mesh, first.edge_discharge)
+    product = float(np.sum(own * theirs))
+    sizes = float(np.sqrt(np.sum(own**2) * np.sum(theirs**2)))
+    name = parts.fields["edge_discharge"].name
+    if sizes == 0 or product > 0.9 * sizes:
+        return []
+    if product < -0.5 * sizes:
+        raise ValueError(
+            f"{parts.file}: {name} runs against the faces' own flow; it seems to count from right to left of its edges: say "
+            'mapping.edge_discharge.positive = "right to left".'
+        )
+    text = f"edge discharges and the faces' own flow agree only in part (correlation {product / sizes:.2f}); ask which is right"
+    return [Note(text, name)]
