@@ -39,7 +39,7 @@ class Mesh:
     neighbours, triangle_edges : (m, 3) int32
         Across side k (corner k to k + 1): the triangle (-1: none), the edge (-1: inside a face).
     file_node, file_face, file_edge : int32
-        The file's number (from 0) of each node, face and edge here.
+        The file's number (from 0) of each node, face and edge here; nodes that no face uses are not here.
     turned_faces : int
         Faces that the file listed clockwise and that were turned.
     """
@@ -188,7 +188,7 @@ def build_mesh(
     """
     world = np.asarray(node_xy, float)
     faces, count = _padded(face_nodes, len(world))
-    place = origin if origin is not None else default_origin(world)
+    place = origin if origin is not None else default_origin(world[np.unique(faces[faces >= 0])])
     xy = world - place
     areas = topology.signed_areas(xy[:, 0], xy[:, 1], faces, count)
     _refuse_flat(areas, xy, faces, count, world)
@@ -256,14 +256,11 @@ def _corner_means(xy: np.ndarray, faces: np.ndarray, count: np.ndarray) -> np.nd
 
 
 def _number_nodes(faces: np.ndarray, n_nodes: int) -> tuple[np.ndarray, np.ndarray]:
-    """Nodes in order of first use, unused ones last: (file numbers, faces renumbered)."""
+    """Nodes in order of first use: (file numbers, faces renumbered). Nodes that no face uses are left out."""
     used, first = np.unique(faces[faces >= 0], return_index=True)
-    order = used[np.argsort(first, kind="stable")]
-    unused = np.setdiff1d(np.arange(n_nodes), used, assume_unique=True)
-    file_node = np.concatenate([order, unused]).astype(np.int32)
-    new = np.empty(n_nodes + 1, np.int32)
-    new[file_node] = np.arange(n_nodes, dtype=np.int32)
-    new[-1] = -1
+    file_node = used[np.argsort(first, kind="stable")].astype(np.int32)
+    new = np.full(n_nodes + 1, -1, np.int32)
+    new[file_node] = np.arange(len(file_node), dtype=np.int32)
     return file_node, np.ascontiguousarray(new[faces])
 
 
@@ -285,7 +282,7 @@ def _edges(faces, count, edge_nodes, file_node, file_face, world):
 
 def _like_file(edges, edge_faces, edge_nodes, file_node):
     """Number and direct edges as the file does; edges of the file that no face uses are left out."""
-    n = len(file_node)
+    n = int(max(file_node.max(), edge_nodes.max())) + 1
     key = np.sort(file_node[edges].astype(np.int64), axis=1) @ np.array([n, 1])
     theirs = np.sort(edge_nodes.astype(np.int64), axis=1) @ np.array([n, 1])
     order = np.argsort(theirs, kind="stable")

@@ -36,11 +36,12 @@ def turn_clockwise(faces, count, areas):
 
 
 @njit(cache=True, nogil=True)
-def _inside(ax, ay, bx, by, cx, cy, px, py):
+def _blocks(ax, ay, bx, by, cx, cy, px, py):
+    """Whether p lies in the ear a, b, c or on its cut from c to a, where it would leave a face of no area."""
     d1 = (bx - ax) * (py - ay) - (by - ay) * (px - ax)
     d2 = (cx - bx) * (py - by) - (cy - by) * (px - bx)
     d3 = (ax - cx) * (py - cy) - (ay - cy) * (px - cx)
-    return d1 > 0 and d2 > 0 and d3 > 0
+    return d1 > 0 and d2 > 0 and d3 > -1e-9 * ((ax - cx) ** 2 + (ay - cy) ** 2)
 
 
 @njit(cache=True, nogil=True)
@@ -75,9 +76,9 @@ def triangulate(x, y, faces, count):
                     for j in range(n):
                         p = ring[j]
                         if p != a and p != b and p != c:
-                            if _inside(x[a], y[a], x[b], y[b], x[c], y[c], x[p], y[p]):
+                            if _blocks(x[a], y[a], x[b], y[b], x[c], y[c], x[p], y[p]):
                                 q = -1.0
-                            # What is left after the cut must not fold over.
+                    # What is left after the last cut must not fold over.
                     if n == 4 and q > 0:
                         d = ring[(k + 2) % 4]
                         rest = (x[c] - x[a]) * (y[d] - y[a]) - (x[d] - x[a]) * (y[c] - y[a])
