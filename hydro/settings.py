@@ -44,6 +44,17 @@ REGISTRY: dict[str, Setting] = {
         ),
         Setting("zone_share", 0.0001, "-", "Leewater's own", "least recirculating discharge of a listed zone", 0.0, 1.0),
         Setting("zone_triangles_across", 4, "triangles", _COMMON, "least width of a listed zone", 1),
+        Setting(
+            "strouhal", 0.2, "-", "about 0.20 for cylinders at 3e2 < Re < 2e5 (Roshko 1961, J. Fluid Mech. 10, 345-356)",
+            "expected shedding period: structure's width over this and the approach speed", 0.05, 0.5,
+        ),
+        Setting(
+            "core_share", 0.5, "-", "Leewater's own",
+            "the core by which a zone is followed: where psi is at least this share of the way to its extremum", 0.05, 0.95,
+        ),
+        Setting(
+            "follow_gap_frames", 2, "frames", "Leewater's own", "an eddy not seen for more frames than this has ended", 0
+        ),
         Setting("gravity_m_s2", 9.81, "m/s2", "conventional value", "heads, Froude numbers, weirs", 9.7, 9.9),
         Setting("density_kg_m3", 1000.0, "kg/m3", "fresh water, rounded", "shear, power, drift", 900.0, 1100.0),
         Setting(

@@ -8,14 +8,16 @@ import numpy as np
 import shapely
 
 from .._kernels import contour, labels
-from ..reach import Reach
+from ..reach import Reach, Structure
 from ..settings import Settings
 from ..streamfunction import StreamFunction
 from .contact import Contact, contact_of
 from .naming import named, setting_of
 from .outer import Extent, extent_of, narrow_of
 from .regions import Region, closed_regions, open_regions
+from .sensitivity import from_outline
 from .shape import Shape, peak_of, saddle_of, shape_of
+from .wake import wake_of
 from .zone import SmallRegion, Zone, ZoneSet
 
 CAUTIONS = ("wake-detail", "no-secondary-currents", "sensitivity", "rotation-time", "no-roller")
@@ -34,9 +36,13 @@ class _Candidate:
     noise: float
     across: float
     cores: int
+    size: float
 
 
-def find_zones(sf: StreamFunction, *, reach: Reach | None = None, settings: Settings | None = None) -> ZoneSet:
+def find_zones(
+    sf: StreamFunction, *, reach: Reach | None = None, settings: Settings | None = None,
+    roughness: np.ndarray | None = None,
+) -> ZoneSet:
     """Every recirculation zone of a frame.
 
     A zone is a maximal connected region round an extremum of psi, bounded by a psi contour that is
@@ -50,6 +56,8 @@ def find_zones(sf: StreamFunction, *, reach: Reach | None = None, settings: Sett
     reach : Reach, optional
         Gives chainage, sides and the names of structures.
     settings : Settings
+    roughness : (f,) array, optional
+        Manning's n of faces, s/m^(1/3), for shallow-wake numbers.
 
     Returns
     -------
@@ -67,7 +75,7 @@ def find_zones(sf: StreamFunction, *, reach: Reach | None = None, settings: Sett
     in_zones = np.zeros(sf.frame.mesh.n_triangles, bool)
     for c in kept:
         in_zones[c.shape.triangles] = True
-    zones = [_zone(sf, reach, c, in_zones) for c in kept]
+    zones = [_zone(sf, reach, c, in_zones, settings, roughness) for c in kept]
     return ZoneSet(named(sf, reach, zones), tuple(small), tuple(_cut_by_edge(sf, settings)))
 
 
@@ -96,7 +104,8 @@ def _candidate(sf: StreamFunction, region: Region, settings: Settings) -> _Candi
     if across < settings["zone_triangles_across"]:
         return _small(sf, region, flow, shape.area_m2, "too few triangles across")
     centre, psi_centre = peak_of(sf, region)
-    return _Candidate(region, shape, centre, psi_centre, noise, across, _cores_above(sf, region, shape, noise))
+    cores = _cores_above(sf, region, shape, noise)
+    return _Candidate(region, shape, centre, psi_centre, noise, across, cores, size)
 
 
 def _small(sf: StreamFunction, region: Region, flow: float, area: float, why: str) -> SmallRegion:
@@ -120,7 +129,10 @@ def _cut_by_edge(sf: StreamFunction, settings: Settings) -> list[SmallRegion]:
     return found
 
 
-def _zone(sf: StreamFunction, reach: Reach, c: _Candidate, in_zones: np.ndarray) -> Zone:
+def _zone(
+    sf: StreamFunction, reach: Reach, c: _Candidate, in_zones: np.ndarray, settings: Settings,
+    roughness: np.ndarray | None,
+) -> Zone:
     region, shape = c.region, c.shape
     contact = contact_of(sf, region, shape, c.noise)
     extent = extent_of(sf, shape, in_zones)
@@ -129,29 +141,50 @@ def _zone(sf: StreamFunction, reach: Reach, c: _Candidate, in_zones: np.ndarray)
     flow = abs(c.psi_centre - region.level)
     separation, reattachment = _ends(sf, region, shape, contact, kind, along)
     solid = structure is None or wall is not None
+    inner = shape_of(sf, region, region.level + region.sign * min(c.noise, 0.5 * flow))
+    wake = None
+    if kind == "behind structure":
+        wake = wake_of(sf, _outline(sf, wall, structure), along, reattachment, in_zones, settings, roughness)
     chainage = offset = None
     if reach.centre_line is not None:
         s, n = reach.centre_line.locate(c.centre)
         chainage, offset = float(s[0]), float(n[0])
     through = sf.through_discharge_m3_s
+    depth = shape.volume_m3 / shape.area_m2
+    free = shape.polygon.length - (contact.length_m if contact else 0.0)
     return Zone(
         id="", name="", kind=kind, wall=sf.walls[wall].id if wall is not None else structure and structure.name,
         rotation=_rotation(region), centre=c.centre, chainage_m=chainage, offset_m=offset,
         area_m2=shape.area_m2, volume_m3=shape.volume_m3, length_m=extent.length_m, width_m=extent.width_m,
-        mean_depth_m=shape.volume_m3 / shape.area_m2, max_depth_m=shape.max_depth_m,
+        mean_depth_m=depth, max_depth_m=shape.max_depth_m,
         psi_centre_m3_s=c.psi_centre, psi_edge_m3_s=region.level,
         psi_wall_m3_s=None if wall is None else sf.walls[wall].psi_m3_s,
         recirculating_discharge_m3_s=flow, share_of_through_discharge=flow / through if through > 0 else None,
         rotation_time_s=shape.volume_m3 / flow,
         separation=separation if solid else None, reattachment=reattachment if solid else None,
         triangles_across=c.across, max_reverse_speed_m_s=_reverse(sf, region, along),
-        flags=_flags(c, contact, extent, solid), sensitivity={}, cautions=CAUTIONS, contour=shape.polygon,
-        streamlines=_streamlines(sf, c), along=along, noise_m3_s=c.noise, region=region,
+        flags=_flags(sf, c, contact, extent, solid, settings), cautions=CAUTIONS, wake=wake, contour=shape.polygon,
+        inner=inner.polygon, streamlines=_streamlines(sf, c), along=along, noise_m3_s=c.noise, region=region,
+        sensitivity=from_outline(
+            shape.area_m2, shape.volume_m3, extent.length_m, extent.width_m, depth, flow, free_outline=free,
+            size=c.size, noise=c.noise, inner_area=inner.area_m2, inner_volume=inner.volume_m3,
+        ),
     )
 
 
-def _flags(c: _Candidate, contact: Contact | None, extent: Extent, solid: bool) -> tuple[str, ...]:
+def _outline(sf: StreamFunction, wall: int | None, structure: Structure | None) -> np.ndarray:
+    if wall is not None:
+        return sf.frame.mesh.node_xy[sf.walls[wall].nodes]
+    return shapely.get_coordinates(structure.geometry)
+
+
+def _flags(
+    sf: StreamFunction, c: _Candidate, contact: Contact | None, extent: Extent, solid: bool, settings: Settings
+) -> tuple[str, ...]:
     flags = []
+    floor = max(c.noise, settings["zone_share"] * sf.through_discharge_m3_s)
+    if abs(c.psi_centre - c.region.level) < 2 * floor:
+        flags.append("near the floor")
     if c.across < _FINE_ACROSS:
         flags.append("under-resolved")
     if not solid:

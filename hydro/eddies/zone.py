@@ -10,6 +10,7 @@ import shapely
 
 from ..figure import Place
 from .regions import Region
+from .wake import Wake
 
 KINDS = ("behind structure", "at bank", "side bay", "free", "travelling")
 
@@ -47,7 +48,11 @@ class Zone:
         Greatest speed against the outer flow.
     flags, cautions : tuple of str
     sensitivity : mapping of figure to (low, high)
+    wake : Wake or None
+        For zones behind a structure.
     contour : shapely Polygon or MultiPolygon
+    inner : shapely Polygon or MultiPolygon
+        The contour at the dividing level moved inwards by the noise of psi.
     streamlines : list of (k, 2) float64
         Closed streamlines inside, for drawing.
     along : (2,) float64
@@ -84,7 +89,9 @@ class Zone:
     flags: tuple[str, ...]
     sensitivity: Mapping[str, tuple[float, float]]
     cautions: tuple[str, ...]
+    wake: Wake | None
     contour: shapely.Polygon | shapely.MultiPolygon
+    inner: shapely.Polygon | shapely.MultiPolygon
     streamlines: list[np.ndarray]
     along: np.ndarray
     noise_m3_s: float

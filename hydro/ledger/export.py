@@ -51,6 +51,8 @@ def zone_rows(run: Run, frames: Sequence[FrameLedger]) -> list[dict[str, Any]]:
             for key, value in zone.items():
                 if key in _POINTS:
                     row[f"{key}_x_m"], row[f"{key}_y_m"] = value or (None, None)
+                elif key == "wake":
+                    row.update(value or {})
                 elif key == "sensitivity":
                     for name, (low, high) in value.items():
                         row[f"{name}_low"], row[f"{name}_high"] = low, high

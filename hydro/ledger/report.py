@@ -5,6 +5,7 @@ from __future__ import annotations
 import datetime
 import math
 from collections.abc import Iterable
+from dataclasses import asdict
 from typing import Any
 
 import numpy as np
@@ -100,6 +101,7 @@ def zone_json(mesh: Mesh, zone: Zone) -> dict[str, Any]:
         "reattachment": point(mesh, zone.reattachment),
         "triangles_across": zone.triangles_across,
         "max_reverse_speed_m_s": zone.max_reverse_speed_m_s,
+        "wake": None if zone.wake is None else {k: _number(v) for k, v in asdict(zone.wake).items()},
         "flags": list(zone.flags),
         "sensitivity": {name: [_number(low), _number(high)] for name, (low, high) in zone.sensitivity.items()},
         "cautions": list(zone.cautions),

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import copy
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, replace
 
@@ -97,6 +98,12 @@ class Plan:
         self.shape = topology_of(frame.mesh, domain, boundaries, self.structures, self.centre_line)
         self._psi, self._phi, self._key = _psi_system(frame, self.shape), None, key
 
+    def sibling(self) -> Plan:
+        """A plan with the same choices and its own factors, for another reading of the same frames."""
+        other = copy.copy(self)
+        other._key = None
+        return other
+
     @property
     def psi_system(self) -> System:
         return self._psi
@@ -117,6 +124,7 @@ def stream_function(
     centre_line: CentreLine | None = None,
     boundary_sets: Mapping[str, np.ndarray] | None = None,
     depth_rate: np.ndarray | None = None,
+    split: bool = True,
 ) -> StreamFunction:
     """The stream function that fits a frame's unit discharge best.
 
@@ -140,6 +148,8 @@ def stream_function(
     depth_rate : (f,) array, optional
         Rise of depth in each face, m/s, from neighbouring frames; without it the storage part of the
         misfit is not available.
+    split : bool
+        Split the misfit; False saves a second solution where only psi is wanted.
 
     Raises
     ------
@@ -166,7 +176,7 @@ def stream_function(
     plan.fit(frame, domain, boundaries)
     flow = _flow(frame, domain)
     psi = _solved(frame, plan, flow)
-    split, rest = _split(frame, plan, flow, psi, depth_rate)
+    parted, rest = _split(frame, plan, flow, psi, depth_rate, split)
     stored = None
     if depth_rate is not None:
         held = domain.triangles[frame.mesh.face_first_triangle[:-1]]
@@ -178,8 +188,8 @@ def stream_function(
     return StreamFunction(
         frame, psi, domain.triangles, walls, boundaries,
         float(discharges[discharges > 0].sum()), float(-discharges[discharges < 0].sum()), stored,
-        _through(boundaries), split, rest, domain.n_specks, domain.thin_faces,
-        split.storage is None or split.storage <= 0.5, plan.shape,
+        _through(boundaries), parted, rest, domain.n_specks, domain.thin_faces,
+        parted.storage is None or parted.storage <= 0.5, plan.shape,
     )
 
 
@@ -223,20 +233,25 @@ def _solved(frame: Frame, plan: Plan, flow: np.ndarray) -> np.ndarray:
     return np.where(plan.shape.part >= 0, psi, np.nan)
 
 
-def _split(frame: Frame, plan: Plan, flow: np.ndarray, psi: np.ndarray, depth_rate: np.ndarray | None):
-    """The misfit and the unexplained unit discharge (m,) of each triangle."""
-    mesh, shape, phi = frame.mesh, plan.shape, plan.phi_system
+def _split(
+    frame: Frame, plan: Plan, flow: np.ndarray, psi: np.ndarray, depth_rate: np.ndarray | None, wanted: bool
+) -> tuple[Misfit, np.ndarray]:
+    """The misfit and the size of the unexplained unit discharge (m,) in each triangle."""
+    mesh, shape = frame.mesh, plan.shape
     gradient = p1.gradients(mesh.node_xy, mesh.triangles, shape.triangles, psi)
     rest = flow - np.column_stack([gradient[:, 1], -gradient[:, 0]])
     rest[~shape.triangles] = 0.0
     whole = parts.norm(mesh, shape.triangles, flow)
     if whole == 0.0:
         return Misfit(0.0, None if depth_rate is None else 0.0, 0.0, 0.0), np.zeros(mesh.n_triangles)
+    total = parts.norm(mesh, shape.triangles, rest) / whole
+    if not wanted:
+        return Misfit(total, None, 0.0, total), np.hypot(*rest.T)
+    phi = plan.phi_system
 
     def part(load: np.ndarray) -> np.ndarray:
         return p1.gradients(mesh.node_xy, mesh.triangles, shape.triangles, phi.on_nodes(phi.solve(load)))
 
-    total = parts.norm(mesh, shape.triangles, rest) / whole
     stored = None
     if depth_rate is not None:
         field = part(parts.storage_load(mesh, shape, depth_rate[mesh.triangle_face], phi))
@@ -244,7 +259,6 @@ def _split(frame: Frame, plan: Plan, flow: np.ndarray, psi: np.ndarray, depth_ra
         rest = rest - field
     field = part(parts.wall_load(frame, shape, phi))
     rest = rest - field
-    split = Misfit(
-        total, stored, parts.norm(mesh, shape.triangles, field) / whole, parts.norm(mesh, shape.triangles, rest) / whole
-    )
-    return split, np.hypot(*rest.T)
+    through_walls = parts.norm(mesh, shape.triangles, field) / whole
+    unexplained = parts.norm(mesh, shape.triangles, rest) / whole
+    return Misfit(total, stored, through_walls, unexplained), np.hypot(*rest.T)

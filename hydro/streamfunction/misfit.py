@@ -17,7 +17,7 @@ class Misfit:
     """Ratios of norms: the root of the area integral of the square, over that of the unit discharge.
 
     ``storage`` is None ("not available") where the rate of depth is not known; it is then part of
-    ``unexplained``.
+    ``unexplained``. Where no split was asked for, all is unexplained.
     """
 
     total: float
@@ -38,7 +38,8 @@ def potential_system(mesh: Mesh, shape: Topology) -> System:
     unknown = np.full(mesh.n_nodes, -1, np.int32)
     count = int(np.count_nonzero(free))
     unknown[free] = np.arange(count, dtype=np.int32)
-    return System(mesh, shape.triangles, unknown, count, count)
+    # Its norms are printed to two or three digits.
+    return System(mesh, shape.triangles, unknown, count, count, tolerance=1e-5)
 
 
 def wall_outflow(frame: Frame, shape: Topology) -> np.ndarray:

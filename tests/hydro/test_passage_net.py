@@ -52,7 +52,7 @@ def _all_links(search) -> coo_matrix:
         count = route.links_of(p, routes.net, len(routes.nodes), to, within)
         assert len(set(to[:count])) == count
         for q, t in zip(to[:count], within[:count]):
-            fatigue, seconds = route.link(np.int32(p), q, t, water.points, water.drops, swimmer, False)
+            fatigue, seconds = route.link(np.int32(p), q, t, water.points, water.drops, swimmer, False, np.inf)
             if np.isfinite(fatigue):
                 rows.append(p), columns.append(q), weights.append(fatigue + 1e-6 * seconds)
     return coo_matrix((weights, (rows, columns)), shape=(routes.n_points,) * 2)
