@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import math
 from dataclasses import dataclass, fields, replace
+from typing import Any
 from urllib.parse import parse_qsl, urlencode
 
 QUESTIONS = ("arrival", "eddies", "drift", "passage", "sections", "change", "record")
@@ -36,7 +37,7 @@ class Choices:
     mode: str = "day"
     hall: bool = False
 
-    def with_(self, **changed: object) -> Choices:
+    def with_(self, **changed: Any) -> Choices:
         """The same choices with some changed.
 
         Raises ``ValueError`` for a value that is not on offer.

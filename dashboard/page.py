@@ -224,7 +224,7 @@ class Page:
             ends = self.question.section_ends(self.desk())
             if ends is not None:
                 world = desk.run.mesh.to_world(np.array(ends)).round(2)
-                self.history.now = replace(self.choices, section=tuple(float(v) for v in world.ravel()))
+                self.history.now = self.choices.with_(section=tuple(float(v) for v in world.ravel()))
 
     # ---- drawing -----------------------------------------------------------------------------------
 

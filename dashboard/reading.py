@@ -6,6 +6,7 @@ Every method either answers at once or raises ``Working`` and has the answer mad
 from __future__ import annotations
 
 from dataclasses import dataclass
+from functools import partial
 from pathlib import Path
 from typing import Any
 
@@ -182,7 +183,7 @@ class Reading:
         for i in range(run.n_frames):
             key = ("beat", run_id, i)
             if not self.results.have(key):
-                self.results.ahead(key, lambda i=i: self._beat(run_id, i), label="Following the eddies.", group=STORY)
+                self.results.ahead(key, partial(self._beat, run_id, i), label="Following the eddies.", group=STORY)
             beats.append(self.results.peek(key))
         done = sum(self.results.have(("beat", run_id, i)) for i in range(run.n_frames))
         return Story(tuple(beats), done)
@@ -201,6 +202,7 @@ class Reading:
 
     def _opened_run(self, matter: Matter, run_id: str) -> Run:
         run = matter.review.open(run_id) if matter.review is not None else matter.alone
+        assert run is not None  # a matter has a review or a run
         self.results.heavy = int(np.clip(_PIXELS_KEPT / max(run.mesh.n_triangles, 1), 24, 400))
         return run
 
@@ -215,6 +217,7 @@ def _opened(path: Path) -> Matter:
         if not review.runs:
             raise ValueError(f"{review.folder / 'review.toml'} lists no runs; add one under [[runs]].")
         return Matter(review, run, review.reach, review.reach.centre_line is None)
+    assert run is not None  # open_any gives a review or a run
     return Matter(None, run, Reach(run.mesh.origin), True)
 
 

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Callable, Hashable
 from dataclasses import replace
+from functools import partial
 from typing import TYPE_CHECKING, Any
 
 from . import text
@@ -13,6 +14,7 @@ from .questions.base import Desk
 from .raster import View
 from .reading import STORY
 from .results import Working
+from .theme import Look
 from .views import frame_words, marks
 from .views import map as drawing
 from .views.scene import Scene
@@ -33,7 +35,8 @@ class Screen:
         self.said = ""  # what is being made
         self.failed = ""
         self._question = ""
-        self._dressed = None
+        self._dressed: Look | None = None
+        self._hidden = 0
         self._scene: Scene | None = None
 
     def awaits(self, key: Hashable) -> bool:
@@ -63,7 +66,7 @@ class Screen:
             ("alternative", lambda: question.alternative(desk)),
             ("ribbon", lambda: question.ribbon(desk) if question.has_time else ""),
         ):
-            self._part(name, due, lambda name=name, make=make: self._put(name, make()))
+            self._part(name, due, partial(self._made, name, make))
         self._part("side", due, lambda: self.slots.update({"section": "", "table": "", **question.side(desk)}))
         self._standing(page, desk)
         self._story(page, desk)
@@ -82,6 +85,9 @@ class Screen:
                 self.said = working.label
         except (ValueError, OSError) as error:
             self.failed = str(error)
+
+    def _made(self, name: str, make: Callable[[], str]) -> None:
+        self._put(name, make())
 
     def _put(self, name: str, html: str) -> None:
         self.slots[name] = html
@@ -126,7 +132,7 @@ class Screen:
             w = scene.water
             picture = raster.paint(w.frame, w.value, w.top, psi=w.psi, tube=w.tube_m3_s, carries=w.carries)
         page.map.show(sheet, picture, picture_view)
-        self._put("caption", self._caption(page, desk))
+        self._put("caption", self._caption(page, desk, view))
         self._put("scale", marks.scale_bar(view.step, desk.units, label=look.label_px) + marks.north())
         missing = self._missing(desk)
         if missing is not None:
@@ -142,11 +148,10 @@ class Screen:
             return None
         return None
 
-    def _caption(self, page: Page, desk: Desk) -> str:
-        words = page.question.caption(desk, self._scene or Scene(), desk.view)
-        hidden = getattr(self, "_hidden", 0)
-        if hidden:
-            words += f" {text.count(hidden, 'more eddy is', 'more eddies are')} too small to name here."
+    def _caption(self, page: Page, desk: Desk, view: View) -> str:
+        words = page.question.caption(desk, self._scene or Scene(), view)
+        if self._hidden:
+            words += f" {text.count(self._hidden, 'more eddy is', 'more eddies are')} too small to name here."
         zoom = "".join(
             f'<button type="button" class="word" data-do="zoom" data-value="{value}" data-key="zoom-{value}">{label}</button> '
             for value, label in (*page.question.places, ("nearer", "nearer"), ("farther", "farther"), ("whole", "whole reach"))

@@ -131,6 +131,7 @@ def page_for(reading: Reading) -> pn.Template:
     """A new viewer's page."""
     document = pn.state.curdoc
     location = pn.state.location
+    assert document is not None  # Panel makes one for every viewer
 
     def later(function) -> None:
         document.add_next_tick_callback(function)

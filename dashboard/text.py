@@ -74,7 +74,7 @@ def percent(share: float | None) -> str:
 
 
 def _shown(time: np.datetime64) -> tuple[str, str]:
-    stamp = str(np.datetime64(time, "s"))
+    stamp = str(time.astype("datetime64[s]"))
     date, hour = stamp.split("T")
     _, month, of_month = date.split("-")
     shown = hour if hour[6:] != "00" else hour[:5]

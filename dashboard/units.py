@@ -47,9 +47,11 @@ class Units:
             whole = f"{int(whole):,}".replace(",", "\u202f")
         return sign + whole + dot + rest
 
-    def quantity(self, value: float | None, unit: str, **how) -> str:
+    def quantity(
+        self, value: float | None, unit: str, low: float | None = None, high: float | None = None, digits: int = 3
+    ) -> str:
         """Number and unit that never break apart."""
-        text = self.number(value, unit, **how)
+        text = self.number(value, unit, low, high, digits)
         return text if text == "n/a" else f"{text}{NBSP}{self.label(unit)}"
 
     def span(self, low: float | None, high: float | None, unit: str) -> str:

@@ -108,6 +108,7 @@ def section_ends(desk: Desk, zone: Zone | None) -> tuple[tuple[float, float], tu
 def across(desk: Desk, chainage: float, reach_m: float = 150.0) -> tuple[tuple[float, float], tuple[float, float]]:
     """A line square to the centre line from bank to bank, cut where it leaves the model."""
     centre, mesh = desk.reading.reach(desk.run_id).centre_line, desk.run.mesh
+    assert centre is not None  # one is proposed where the review has none
     offsets = np.arange(reach_m, -reach_m - 0.5, -0.5)
     points = np.vstack([centre.at(np.array([chainage]), float(o)) for o in offsets])
     inside = mesh.find(points) >= 0

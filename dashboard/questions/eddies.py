@@ -12,7 +12,8 @@ from ..choices import SHADES, TUBES
 from ..raster import View
 from ..reading import Story
 from ..results import Working
-from ..views import marks, ribbon, table
+from ..views import marks, table
+from ..views import ribbon as strip
 from ..views.scene import Scene, Water, ZoneMark
 from . import common
 from .base import Desk, Question, footnote
@@ -42,21 +43,22 @@ class Eddies(Question):
 
     def sentence(self, desk: Desk) -> str:
         ledger = self.ledger(desk)
-        zones = ledger.zones.zones
+        zones, zone = ledger.zones.zones, self.subject(desk)
         here = "here" if desk.look.hall else "in this mean flow" if ledger.frame.kind == "mean" else "in this frame"
         if not ledger.sf.drawn:
             return "Storage explains more than half of the flow in this frame, so it has no eddies to tell of."
-        if not zones:
+        if zone is None:
             rest = len(ledger.zones.small)
             more = f" {text.count(rest, 'region')} under the floor {'is' if rest == 1 else 'are'} left out." if rest else ""
             return f"No eddy turns {here}.{more}"
-        zone = self.subject(desk)
         largest = zone.area_m2 == max(z.area_m2 for z in zones)
         u, ids = desk.units, self.cautions(desk)
         first = f"{text.count(len(zones), 'eddy', 'eddies')} {'turns' if len(zones) == 1 else 'turn'} {here}."
         who = "It" if len(zones) == 1 else "The largest," if largest else "Of these,"
-        area = u.quantity(zone.area_m2, "m2", **_span(zone, "area_m2"))
-        flow = u.quantity(zone.recirculating_discharge_m3_s, "m3/s", **_span(zone, "recirculating_discharge_m3_s"))
+        area = u.quantity(zone.area_m2, "m2", *_span(zone, "area_m2"))
+        flow = u.quantity(
+            zone.recirculating_discharge_m3_s, "m3/s", *_span(zone, "recirculating_discharge_m3_s")
+        )
         share = zone.share_of_through_discharge
         river = f", {text.percent(share)} of the river" if share is not None else ""
         if desk.look.hall and share is not None:
@@ -122,12 +124,12 @@ class Eddies(Question):
         return f"Map of the reach with {through} flowing through, in tubes of equal discharge. Eddies: {eddies or 'none'}."
 
     def ribbon(self, desk: Desk) -> str:
-        return ribbon.draw(self.course(desk), common.ribbon_box(desk), desk.units)
+        return strip.draw(self.course(desk), common.ribbon_box(desk), desk.units)
 
     def moments(self, desk: Desk) -> dict[str, object]:
         return common.moments(self.course(desk), desk)
 
-    def course(self, desk: Desk) -> ribbon.Course:
+    def course(self, desk: Desk) -> strip.Course:
         """What the ribbon shows: discharge and the largest eddies, with the subject among them."""
         run, story = desk.run, desk.reading.story(desk.run_id)
         areas: dict[str, np.ndarray] = {}
@@ -138,8 +140,8 @@ class Eddies(Question):
         chosen = subject.id if subject else ""
         order = sorted(areas, key=lambda k: (k != chosen, -float(np.nanmax(areas[k]))))
         keep = order[: _ROWS_HALL if desk.look.hall or desk.sizes.narrow else _ROWS_DESK]
-        rows = [ribbon.Row(k, areas[k], k == chosen) for k in sorted(keep, key=common.natural)]
-        return ribbon.Course(
+        rows = [strip.Row(k, areas[k], k == chosen) for k in sorted(keep, key=common.natural)]
+        return strip.Course(
             run.times.seconds, run.times.instants, self.discharge(desk, story), rows, desk.index,
             more_rows=len(order) - len(keep),
         )
@@ -215,9 +217,8 @@ def _left_out(ledger: FrameLedger, unlisted: int) -> str:
     return ("; ".join(parts)[:1].upper() + "; ".join(parts)[1:] + ".") if parts else ""
 
 
-def _span(zone: Zone, figure: str) -> dict[str, float]:
-    low, high = zone.sensitivity.get(figure, (None, None))
-    return {"low": low, "high": high} if low is not None else {}
+def _span(zone: Zone, figure: str) -> tuple[float | None, float | None]:
+    return zone.sensitivity.get(figure, (None, None))
 
 
 def _mark(zone: Zone, subject: bool) -> ZoneMark:
@@ -233,7 +234,7 @@ def _line(zone: Zone, subject: bool, desk: Desk, ids: tuple[str, ...]) -> table.
 
     def cell(figure: str, unit: str) -> tuple[str, str]:
         span = _span(zone, figure)
-        return u.number(getattr(zone, figure), unit, **span), u.span(span.get("low"), span.get("high"), unit)
+        return u.number(getattr(zone, figure), unit, *span), u.span(*span, unit)
 
     coarse = footnote(ids, "wake-detail") if _UNDER_RESOLVED in zone.flags else ""
     few = desk.look.hall or desk.sizes.narrow

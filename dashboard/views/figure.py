@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Callable
+from typing import Any
 
 import numpy as np
 from bokeh.core.properties import value
@@ -35,7 +36,7 @@ class MapFigure:
         west, south, east, north = bounds
         size = max(east - west, north - south)
         self.x, self.y = (
-            Range1d(low, high, min_interval=1.0, max_interval=_FAR * size) for low, high in ((west, east), (south, north))
+            Range1d(start=low, end=high, min_interval=1.0, max_interval=_FAR * size) for low, high in ((west, east), (south, north))
         )
         self.figure = figure(
             name="map-figure", x_range=self.x, y_range=self.y, sizing_mode="stretch_both", tools=[], toolbar_location=None,
@@ -58,8 +59,8 @@ class MapFigure:
         self.x.update(start=west, end=east)
         self.y.update(start=south, end=north)
         interval = max(round_step(view.width_m / 12), 0.1)
-        for axis in self.figure.axis:
-            axis.ticker.interval = interval
+        for ticker in self.tickers:
+            ticker.interval = interval
 
     def dress(self, look: Look) -> None:
         """Take a look's colours and weights."""
@@ -99,9 +100,10 @@ class MapFigure:
         f = self.figure
         f.add_layout(f.xaxis[0].clone(), "above")
         f.add_layout(f.yaxis[0].clone(), "right")
-        for axis in f.axis:
+        self.tickers = [SingleIntervalTicker(interval=10, num_minor_ticks=5) for _ in f.axis]
+        for axis, ticker in zip(f.axis, self.tickers):
             axis.update(
-                ticker=SingleIntervalTicker(interval=10, num_minor_ticks=5), major_label_text_font_size="0px",
+                ticker=ticker, major_label_text_font_size="0px",
                 major_label_standoff=0, major_tick_in=9, major_tick_out=0, minor_tick_in=5, minor_tick_out=0,
                 axis_line_width=0, minor_tick_line_width=1,
             )
@@ -109,7 +111,7 @@ class MapFigure:
         f.grid.visible = False
 
     def _glyphs(self) -> None:
-        f = self.figure
+        f: Any = self.figure
         f.image("image", "x", "y", "dw", "dh", source=self.sources["water"], color_mapper=self.colours, level="image")
         for name in ("under", "areas", "over"):
             if name == "areas":
@@ -136,7 +138,7 @@ class MapFigure:
 def _empty() -> dict[str, dict]:
     blank = Sheet()
     texts = {font: dict(blank.texts) for font in _FONTS}
-    water = {"image": [], "x": [], "y": [], "dw": [], "dh": []}
+    water: dict[str, list] = {"image": [], "x": [], "y": [], "dw": [], "dh": []}
     return {"water": water, "under": blank.under, "areas": blank.areas, "over": blank.over, **texts}
 
 

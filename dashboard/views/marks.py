@@ -2,13 +2,15 @@
 
 from __future__ import annotations
 
+import numpy as np
+
 from ..units import Units, round_step
 from .strokes import turning_mark
 
 
 def turning(rotation: str) -> str:
     """A turning mark for a line of text."""
-    arc, *head = turning_mark([0.0, 0.0], 6.0, rotation)
+    arc, *head = turning_mark(np.zeros(2), 6.0, rotation)
     lines = "".join(
         f'<polyline points="{" ".join(f"{8 + x:.2f},{8 - y:.2f}" for x, y in stroke)}"/>' for stroke in (arc, *head)
     )

@@ -198,12 +198,12 @@ def _labels(course: Course, box: Box) -> list[tuple[float, str]]:
         return [(box.left, text.moment(_instant(course), s[0]))]
     wanted = span / max(2.0, wide / (11 * box.label))
     if course.instants is None:
-        step = float(_SPANS[min(np.searchsorted(_SPANS, wanted), len(_SPANS) - 1)])
+        step = _at_least(_SPANS, wanted)
         moments = np.arange(np.ceil(s[0] / step) * step, s[-1] + 1e-9, step)
         return [(box.left + (m - s[0]) / span * wide, text.elapsed(m)) for m in moments]
-    step = float(_HOURS[min(np.searchsorted(_HOURS, wanted), len(_HOURS) - 1)])
+    step = _at_least(_HOURS, wanted)
     if wanted < _HOURS[0]:
-        step = float(_SPANS[min(np.searchsorted(_SPANS, wanted), len(_SPANS) - 1)])
+        step = _at_least(_SPANS, wanted)
     start = course.instants[0]
     offset = (start - start.astype("datetime64[D]")) / np.timedelta64(1, "s")
     moments = np.arange(np.ceil(offset / step) * step, offset + span + 1e-9, step)
@@ -214,6 +214,10 @@ def _labels(course: Course, box: Box) -> list[tuple[float, str]]:
         out.append((box.left + (m - offset) / span * wide, hour if day == shown else f"{day} {hour}"))
         shown = day
     return out
+
+
+def _at_least(steps: np.ndarray, wanted: float) -> float:
+    return float(steps[min(int(np.searchsorted(steps, wanted)), len(steps) - 1)])
 
 
 def _cursor(course: Course, box: Box, units: Units, x: np.ndarray, axis: float) -> str:

@@ -103,7 +103,7 @@ class _Scale:
         # Hanging bars must end above the bed's foot: they share the upward scale unless that is too long.
         self.bed_y = self.y(np.where(np.isfinite(profile.bed), profile.bed, np.nan))
 
-    def y(self, level: np.ndarray | float) -> np.ndarray | float:
+    def y(self, level: np.ndarray | float) -> np.ndarray:
         high = self.box.surface - 1.6 * self.box.label
         return np.clip(self.box.surface + (self.level - level) * self.per_m, high, self.box.foot)
 
@@ -184,7 +184,7 @@ def _speed_lines(s: _Scale, units: Units) -> str:
         )
     out.append(f'<text x="{box.right + 6:.1f}" y="{box.surface + 0.35 * box.label:.1f}">surface</text>')
     depth = float(np.nanmax(s.level - s.profile.bed))
-    deepest = s.y(s.level - depth)
+    deepest = float(s.y(s.level - depth))
     out.append(
         f'<text class="second" x="{box.right + 6:.1f}" y="{deepest:.1f}">{units.quantity(depth, "m", digits=2)}</text>'
         f'<text class="second" x="{box.right + 6:.1f}" y="{deepest - 1.1 * box.label:.1f}">deepest</text>'
