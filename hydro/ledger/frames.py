@@ -1,17 +1,21 @@
-"""One frame's entry in the ledger: its stream function and its zones."""
+"""One frame's entry in the ledger: its stream function and its zones, read in several ways."""
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 
 from ..eddies import ZoneSet, find_zones
+from ..eddies.sensitivity import Readings
 from ..frame import Frame
 from ..reach import Reach
 from ..run import Run
 from ..settings import Settings
 from ..streamfunction import Plan, StreamFunction, stream_function
+
+# Three more solutions a frame; on meshes above this they would take longer than the answer is worth waiting for.
+_MOST_READ_NODES = 300_000
 
 
 @dataclass(frozen=True, eq=False)
@@ -27,6 +31,48 @@ class FrameLedger:
     window_s: tuple[float, float] | None = None
 
 
+class FrameReader:
+    """Reads frames of a run into ledger entries with one plan: same open boundaries, factors reused."""
+
+    def __init__(
+        self, run: Run, *, reach: Reach | None = None, settings: Settings | None = None, plan: Plan | None = None,
+        sensitivity: bool = True,
+    ) -> None:
+        """The open boundaries are judged by the first frame that has no maxima, unless ``plan`` is given."""
+        self.run, self.reach, self.settings = run, reach, settings or run.settings
+        first = next((i for i, kind in enumerate(run.times.kinds) if kind != "maximum"), 0)
+        self.plan = plan or plan_for(run, run.frame(first), reach, self.settings)
+        self.readings = Readings(self.plan) if sensitivity and run.mesh.n_nodes <= _MOST_READ_NODES else None
+        self.left_out = sensitivity and self.readings is None
+
+    def frame(self, index: int) -> FrameLedger:
+        """The entry of frame ``index``."""
+        frame = self.run.frame(index)
+        return self._entry(frame, depth_rate(self.run, frame.index, frame), None)
+
+    def mean(self, t1: float, t2: float) -> FrameLedger:
+        """The entry of the mean flow between t1 and t2, s from the first frame."""
+        chosen, _ = self.run.window(t1, t2)
+        rate = None
+        if len(chosen) > 1:
+            first, last = self.run.frame(int(chosen[0])), self.run.frame(int(chosen[-1]))
+            rate = (last.face_depth - first.face_depth) / (last.seconds - first.seconds)
+        return self._entry(self.run.mean(t1, t2), rate, (float(t1), float(t2)))
+
+    def _entry(self, frame: Frame, rate: np.ndarray | None, window: tuple[float, float] | None) -> FrameLedger:
+        sf = stream_function(frame, plan=self.plan, depth_rate=rate)
+        found = find_zones(sf, reach=self.reach, settings=self.settings, roughness=self.run.roughness)
+        if self.readings is not None:
+            found = replace(found, zones=tuple(self.readings.of(sf, found.zones)))
+        elif self.left_out:
+            note = (
+                f"the mesh has more than {_MOST_READ_NODES} nodes: ranges leave out the other field and other wet "
+                "thresholds"
+            )
+            found = replace(found, notes=(*found.notes, note))
+        return FrameLedger(frame, sf, found, window)
+
+
 def plan_for(run: Run, frame: Frame, reach: Reach | None = None, settings: Settings | None = None) -> Plan:
     """The plan that all frames of a run share, judged by one of them."""
     return Plan(
@@ -36,50 +82,40 @@ def plan_for(run: Run, frame: Frame, reach: Reach | None = None, settings: Setti
 
 
 def frame_ledger(
-    run: Run, index: int, *, reach: Reach | None = None, settings: Settings | None = None, plan: Plan | None = None
+    run: Run, index: int, *, reach: Reach | None = None, settings: Settings | None = None, plan: Plan | None = None,
+    sensitivity: bool = True,
 ) -> FrameLedger:
     """Stream function and zones of frame ``index``.
 
-    Raises ``ValueError`` for a frame that is not there, holds maxima or has no water.
+    Without a ``plan`` the open boundaries are judged by this frame. Raises ``ValueError`` for a frame that is
+    not there, holds maxima or has no water.
     """
-    frame = run.frame(index)
-    plan = plan or plan_for(run, frame, reach, settings)
-    sf = stream_function(frame, plan=plan, depth_rate=depth_rate(run, frame.index, frame))
-    return FrameLedger(frame, sf, find_zones(sf, reach=reach, settings=plan.settings))
+    plan = plan or plan_for(run, run.frame(index), reach, settings)
+    return FrameReader(run, reach=reach, settings=settings, plan=plan, sensitivity=sensitivity).frame(index)
 
 
 def mean_ledger(
     run: Run, t1: float, t2: float, *, reach: Reach | None = None, settings: Settings | None = None,
-    plan: Plan | None = None,
+    plan: Plan | None = None, sensitivity: bool = True,
 ) -> FrameLedger:
     """Stream function and zones of the mean flow between t1 and t2, s from the first frame."""
-    chosen, _ = run.window(t1, t2)
-    frame = run.mean(t1, t2)
-    plan = plan or plan_for(run, frame, reach, settings)
-    rate = None
-    if len(chosen) > 1:
-        first, last = run.frame(int(chosen[0])), run.frame(int(chosen[-1]))
-        rate = (last.face_depth - first.face_depth) / (last.seconds - first.seconds)
-    sf = stream_function(frame, plan=plan, depth_rate=rate)
-    return FrameLedger(frame, sf, find_zones(sf, reach=reach, settings=plan.settings), (float(t1), float(t2)))
+    return FrameReader(run, reach=reach, settings=settings, plan=plan, sensitivity=sensitivity).mean(t1, t2)
 
 
 def depth_rate(run: Run, index: int, frame: Frame | None = None) -> np.ndarray | None:
     """Rise of depth (f,) of faces at a frame, m/s, by the parabola through it and its neighbours.
 
-    None where the run has one frame. At the run's ends, the difference to the one neighbour.
+    None where the run has one frame, or its neighbours are of another kind. At the run's ends, the
+    difference to the one neighbour.
     """
-    near = [i for i in (index - 1, index, index + 1) if 0 <= i < run.n_frames]
+    kinds = run.times.kinds
+    near = [i for i in (index - 1, index, index + 1) if 0 <= i < run.n_frames and kinds[i] == kinds[index]]
     if len(near) < 2:
         return None
     t = run.times.seconds[near] - run.times.seconds[index]
-    depths = [
-        (frame if frame is not None and i == index else run.frame(i)).face_depth for i in near
-    ]
+    depths = [(frame if frame is not None and i == index else run.frame(i)).face_depth for i in near]
     if len(near) == 2:
         return (depths[1] - depths[0]) / (t[1] - t[0])
-    before, after = t[0], t[2]
-    weights = np.array([
-        -after / (before * (before - after)), -(before + after) / (before * after), -before / (after * (after - before)),
-    ])
+    a, b = t[0], t[2]
+    weights = (-b / (a * (a - b)), -(a + b) / (a * b), -a / (b * (b - a)))
     return weights[0] * depths[0] + weights[1] * depths[1] + weights[2] * depths[2]
