@@ -13,7 +13,7 @@ import numpy as np
 from numba import njit
 
 from .queue import pop, push
-from .swim import BODY, LEAST_DEPTH, POSITION, TIME_WEIGHT, TOP, WET_DEPTH, metre, needed
+from .swim import BODY, LEAST_DEPTH, POSITION, TIME_WEIGHT, TOP, WET_DEPTH, floor_metre, metre, needed
 
 FREE = -1  # label of a point in no area
 SECTORS = 16  # headings told apart by the mask of drops
@@ -124,8 +124,9 @@ def barred_by(p, q, t, water, drops, swimmer, ex, ey):
 
 
 @njit(cache=True, nogil=True)
-def link(p, q, t, water, drops, swimmer, relaxed):
-    """(fatigue, seconds) of the straight link p to q through triangle t; (inf, inf) if it is barred.
+def link(p, q, t, water, drops, swimmer, relaxed, spare):
+    """(fatigue, seconds) of the straight link p to q through triangle t; (inf, inf) if it is barred or cannot cost
+    less than ``spare``.
 
     Two-point Gauss rule in depth-weighted place, so q/h is met exactly at its points. ``relaxed`` lets a barred link
     through at one whole leg a body length and more with the excess, to find the least barred way.
@@ -140,12 +141,15 @@ def link(p, q, t, water, drops, swimmer, relaxed):
     if min(h0, h1) < swimmer[WET_DEPTH]:
         return math.inf, math.inf
     ex, ey = dx / length, dy / length
+    k = swimmer[POSITION]
+    along = k * max(water[p, 3] * ex + water[p, 4] * ey, water[q, 3] * ex + water[q, 4] * ey)
+    if not relaxed and length * floor_metre(along, swimmer) > spare:
+        return math.inf, math.inf
     speed, shallow, drop = barred_by(p, q, t, water, drops, swimmer, ex, ey)
     if speed + shallow + drop > 0.0:
         if not relaxed:
             return math.inf, math.inf
         return length / swimmer[BODY] * (1.0 + speed + shallow + drop), length / swimmer[TOP]
-    k = swimmer[POSITION]
     fatigue = 0.0
     seconds = 0.0
     for s in (0.21132486540518713, 0.7886751345948129):
@@ -230,7 +234,8 @@ def chain_of_legs(net, water, drops, swimmer, label, rim_start, rim_points, star
             item = w if area == FREE else n_points + area
             if key[item] <= key[p] or area == source[p]:
                 continue
-            f, s = link(p, w, within[c], water, drops, swimmer, relaxed)
+            spare = min(key[item] - key[p], bound - cost[p, 0])
+            f, s = link(p, w, within[c], water, drops, swimmer, relaxed, spare)
             f += cost[p, 0]
             s += cost[p, 1]
             if f <= bound and f + weight * s < key[item]:
@@ -281,8 +286,10 @@ def legs_from(net, water, drops, swimmer, label, n_areas, sources, own, target, 
             w = to[c]
             if key[w] <= key[p]:
                 continue
-            f, s = link(p, w, within[c], water, drops, swimmer, relaxed)
-            if area == own and label[w] == own:  # at rest here, whatever the mean speed says
+            resting = area == own and label[w] == own
+            spare = math.inf if resting else key[w] - key[p]
+            f, s = link(p, w, within[c], water, drops, swimmer, relaxed, spare)
+            if resting:  # whatever the mean speed says
                 f = 0.0
                 if s == math.inf:
                     s = math.hypot(water[w, 0] - water[p, 0], water[w, 1] - water[p, 1]) / swimmer[TOP]
@@ -309,4 +316,36 @@ def traced(parent, last):
     for i in range(count - 1, -1, -1):
         out[i] = at
         at = parent[at]
+    return out
+
+
+@njit(cache=True, nogil=True)
+def walked(points, within, resting, drops, swimmer):
+    """Every link of a route: (k - 1, 7) fatigue, seconds, speed through the water, ground speed at its middle, and what
+    bars it (speed excess, depth deficit, drop).
+
+    ``points`` (k, 5) as ``water``; ``within`` the triangle of each link, ``resting`` whether it lies in an area.
+    """
+    n = points.shape[0] - 1
+    out = np.zeros((n, 7))
+    for i in range(n):
+        dx, dy = points[i + 1, 0] - points[i, 0], points[i + 1, 1] - points[i, 1]
+        length = math.sqrt(dx * dx + dy * dy)
+        if length == 0.0:
+            continue
+        ex, ey = dx / length, dy / length
+        fatigue, seconds = link(i, i + 1, within[i], points, drops, swimmer, True, math.inf)
+        k = swimmer[POSITION]
+        u, v = 0.5 * k * (points[i, 3] + points[i + 1, 3]), 0.5 * k * (points[i, 4] + points[i + 1, 4])
+        along, across = u * ex + v * ey, u * ey - v * ex
+        _, pace = metre(along, across, swimmer)
+        out[i, 0] = 0.0 if resting[i] else fatigue
+        out[i, 1] = seconds
+        if pace < math.inf:
+            out[i, 3] = 1.0 / pace
+            out[i, 2] = math.sqrt((out[i, 3] - along) ** 2 + across * across)
+        else:
+            out[i, 2] = needed(along, across)
+        if not resting[i]:
+            out[i, 4], out[i, 5], out[i, 6] = barred_by(i, i + 1, within[i], points, drops, swimmer, ex, ey)
     return out

@@ -17,7 +17,7 @@ from .fish import Fish
 from .water import Routes, triangles_of, widened
 
 LAYER = "fish"
-ROLES = ("start", "rest", "goal")
+ROLES = ("start", "rest", "goal", "entrance")
 
 
 @dataclass(frozen=True, eq=False)
@@ -75,11 +75,12 @@ class Areas:
 
 @dataclass(frozen=True, slots=True)
 class Places:
-    """Start, goal and declared resting places of a review, local metres."""
+    """Start, goal, declared resting places, and lines across the entrances of passes; local metres."""
 
     start: NamedLine
     goal: NamedLine
     rests: tuple[NamedLine, ...] = ()
+    entrances: tuple[NamedLine, ...] = ()
 
 
 def places_of(reach: Reach) -> Places:
@@ -99,7 +100,7 @@ def places_of(reach: Reach) -> Places:
                 f"layer {LAYER} has {len(by_role[role])} features with role {role!r}; passage needs exactly one: draw it "
                 "in lines.gpkg."
             )
-    return Places(by_role["start"][0], by_role["goal"][0], tuple(by_role["rest"]))
+    return Places(by_role["start"][0], by_role["goal"][0], tuple(by_role["rest"]), tuple(by_role["entrance"]))
 
 
 def find_areas(frame: Frame, fish: Fish, places: Places, drops: np.ndarray) -> Areas:

@@ -195,10 +195,12 @@ def read_fish(table: Mapping[str, Any]) -> Fish:
         raise ValueError(f"fish {who}: {where}: {first['msg'].lower()}; mend that entry in review.toml.") from error
     if entry.prolonged is None and entry.sprint is None:
         raise ValueError(f"fish {who}: no endurance line; give prolonged, sprint or both, with their sources.")
-    if entry.sustained is None and entry.prolonged is None:
-        raise ValueError(f"fish {who}: no sustained speed; give it, or a prolonged line that begins there.")
+    start = entry.sustained
+    if start is None:
+        if entry.prolonged is None:
+            raise ValueError(f"fish {who}: no sustained speed; give it, or a prolonged line that begins there.")
+        start = entry.prolonged.lowest
     unit = entry.length_m if entry.speeds == "BL/s" else 1.0
-    start = entry.sustained if entry.sustained is not None else entry.prolonged.lowest
     fish = Fish(
         entry.name, entry.length_m, start * unit, _line(entry.prolonged, unit, who), _line(entry.sprint, unit, who),
         entry.least_depth_m, entry.greatest_drop_m, entry.rest.speed_m_s, entry.rest.depth_m, entry.position_factor,

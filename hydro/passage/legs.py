@@ -15,9 +15,9 @@ from .areas import Area, Areas, Places, around, find_areas
 from .fish import Fish
 from .water import Routes, Water, drop_masks, gathered, make_routes, make_water
 
-_BAND_RINGS = 3  # triangles either side of a route that its refinement may use
-_BAND_POINTS = 9  # points a side there
-_ROUNDS, _QUIET = 16, 4  # refinements at most; enough after this many that changed little
+_BAND_RINGS = 3  # triangles either side of a route that its first refinement may use; later ones use one
+_BAND_POINTS = 7  # points a side there
+_ROUNDS, _CLOSEST = 16, 0.125  # refinements at most; share of a side over which the points of the last ones spread
 _OVER = 1e9  # s; in the choice by time, a leg over the limit weighs more than any swim
 
 
@@ -63,6 +63,11 @@ class LegChain:
         return max(leg.fatigue for leg in self.legs)
 
     @property
+    def worst_index(self) -> int:
+        """Place of the worst leg in ``legs``."""
+        return int(np.argmax([leg.fatigue for leg in self.legs]))
+
+    @property
     def seconds(self) -> float:
         return sum(leg.seconds for leg in self.legs)
 
@@ -80,26 +85,38 @@ class Search:
     def least_worst(self, *, bound: float = math.inf, recovering: bool = True, relaxed: bool = False) -> float:
         """Fatigue of the worst leg of the best chain; infinite where none keeps every leg within ``bound``."""
         areas, label = self._labels(recovering)
-        start, points = areas.rims(self.water.routes, label)
-        found = kernel.chain_of_legs(
-            self.water.routes.net, self.water.points, self.water.drops, self.fish.swimmer(self.settings), label,
-            start, points, Areas.START, Areas.GOAL, bound, relaxed,
-        )
-        return float(found.worst[Areas.GOAL])
+        return float(self._chain(areas, label, bound, relaxed).worst[Areas.GOAL])
 
     def best_chain(self, *, recovering: bool = True, relaxed: bool = False) -> LegChain | None:
         """The chain with the least worst leg and, among those, the least time; None where there is no way."""
-        worst = self.least_worst(recovering=recovering, relaxed=relaxed)
+        areas, label = self._labels(recovering)
+        found = self._chain(areas, label, math.inf, relaxed)
+        worst = float(found.worst[Areas.GOAL])
         if not math.isfinite(worst):
             return None
-        areas, label = self._labels(recovering)
-        legs = self._quickest(areas, label, worst * (1 + 1e-9) + 1e-12, relaxed)
+        if len(areas.items) == 2:
+            legs: tuple[Leg, ...] = (self._only_leg(areas, found),)
+        else:
+            legs = self._quickest(areas, label, worst * (1 + 1e-9) + 1e-12, relaxed)
         return self._refined(areas, LegChain(legs, relaxed, recovering, worst, 0.0))
 
     def _labels(self, recovering: bool) -> tuple[Areas, np.ndarray]:
         """The areas that count, and the area of each point; without recovery only start and goal do."""
         areas = self.areas if recovering else self.areas.ends()
         return areas, areas.labels(self.water.routes)
+
+    def _chain(self, areas: Areas, label: np.ndarray, bound: float, relaxed: bool) -> kernel.Chain:
+        start, points = areas.rims(self.water.routes, label)
+        return kernel.chain_of_legs(
+            self.water.routes.net, self.water.points, self.water.drops, self.fish.swimmer(self.settings), label,
+            start, points, Areas.START, Areas.GOAL, bound, relaxed,
+        )
+
+    def _only_leg(self, areas: Areas, found: kernel.Chain) -> Leg:
+        """The leg from start to goal where there is no other area."""
+        goal = Areas.GOAL
+        path = self.water.points[found.paths[found.path_start[goal] : found.path_end[goal]][::-1], :2]
+        return Leg(areas.items[0], areas.items[1], float(found.fatigue[goal]), float(found.seconds[goal]), path)
 
     def _quickest(self, areas: Areas, label: np.ndarray, bound: float, relaxed: bool) -> tuple[Leg, ...]:
         """Dijkstra over areas by time; a leg over the limit of 1 is taken only where nothing else leads on."""
@@ -120,14 +137,14 @@ class Search:
             entry, cost, parent = kernel.legs_from(
                 routes.net, points, self.water.drops, swimmer, label, len(areas.items), sources[at], at, -1, bound, relaxed
             )
-            for other in np.flatnonzero(entry >= 0):
+            for other in np.flatnonzero(entry >= 0).tolist():
                 fatigue, seconds = cost[entry[other]]
                 when = arrival[at] + seconds + _OVER * max(0.0, fatigue - 1.0)
                 if other not in done and when < arrival.get(other, math.inf):
                     arrival[other], sources[other] = when, entry[other : other + 1]
                     path = points[kernel.traced(parent, entry[other]), :2]
                     into[other] = at, Leg(areas.items[at], areas.items[other], float(fatigue), float(seconds), path)
-                    heapq.heappush(queue, (when, int(other)))
+                    heapq.heappush(queue, (when, other))
         legs = []
         at = Areas.GOAL
         while at != Areas.START:
@@ -137,8 +154,7 @@ class Search:
 
     def _refined(self, areas: Areas, chain: LegChain) -> LegChain:
         """The same chain with its headings refined round the route until the worst leg settles."""
-        settled = self.settings["passage_direction_error"] / 5
-        share, quiet = 1.0, 0
+        share = 0.5
         for _ in range(_ROUNDS):
             before = max(self._effort(leg) for leg in chain.legs)
             if before == 0.0:
@@ -146,10 +162,10 @@ class Search:
             chain = self._again(areas, chain, share)
             moved = 1.0 - max(self._effort(leg) for leg in chain.legs) / before
             chain = replace(chain, moved=moved)
-            if moved < settled:
-                share, quiet = share / 2, quiet + 1
-            if quiet == _QUIET:
-                break
+            if moved < self.settings["passage_direction_error"]:
+                if share <= _CLOSEST:
+                    break
+                share /= 2
         return chain
 
     def _effort(self, leg: Leg) -> float:
@@ -171,7 +187,7 @@ class Search:
         """A leg on a denser net in a band round it, from ``begin`` or anywhere in the start; None if it fails."""
         mesh = self.water.frame.mesh
         under = mesh.find((leg.path[1:] + leg.path[:-1]) / 2)
-        routes = make_routes(mesh, _BAND_POINTS, around(mesh, under[under >= 0], _BAND_RINGS))
+        routes = make_routes(mesh, _BAND_POINTS, around(mesh, under[under >= 0], _BAND_RINGS if share == 0.5 else 1))
         if share < 0.5:
             routes = gathered(routes, leg.path, share)
         water = make_water(routes, self.water.frame, self.drops)

@@ -51,7 +51,7 @@ def _log_fatigue(g, a, b, along, across):
 
 
 def test_oblique_headings_cost_what_a_search_over_ground_speeds_finds():
-    """Second method: scipy's bounded search of exp(-a - b s)/g on each admissible stretch. Tolerance: its own, 1e-6."""
+    """Second method: scipy's bounded search of exp(-a - b s)/g on each admissible stretch. Tolerance: 1e-5 of the fatigue."""
     rng = np.random.default_rng(7)
     checked = 0
     for _ in range(300):
@@ -68,7 +68,7 @@ def test_oblique_headings_cost_what_a_search_over_ground_speeds_finds():
             _log_fatigue, bounds=(slowest, fastest), args=(a, b, along, across), method="bounded",
             options={"xatol": 1e-10},
         )
-        assert math.log(fatigue) <= found.fun + 1e-6
+        assert math.log(fatigue) <= found.fun + 1e-5
         assert low - 1e-9 <= math.hypot(ground - along, across) <= high + 1e-9
         assert fatigue == pytest.approx(math.exp(-a - b * math.hypot(ground - along, across)) / ground, rel=1e-12)
         checked += 1

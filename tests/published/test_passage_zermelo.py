@@ -41,7 +41,7 @@ def _crossing(cells: int):
     frame = frame_of(mesh, 1.0, (lambda x, y: -y, 0.0), stored_on="node")
     swimmer = Fish("swims at 1 m/s", 0.4, 1.0, None, None, 0.1, 1.0, 0.0, 0.5)
     settings = Settings(
-        {"passage_time_weight": 1e-3, "passage_direction_error": 1e-3, "passage_points_per_side": 7}
+        {"passage_time_weight": 1e-3, "passage_direction_error": 1e-4, "passage_points_per_side": 7}
     )
     places = Places(*(NamedLine(n, n, shapely.Point(p)) for n, p in (("start", FROM), ("goal", TO))))
     return prepare(frame, swimmer, places, settings).best_chain()
