@@ -61,13 +61,11 @@ def make_run(design: str, name: str, work: Path) -> None:
         frames = [fields]
     else:
         # One march serves flood and burst, so every time of either is visited in order.
-        burst = runs.BURST_FRAMES if design == "existing" else []
-        every = np.unique(np.concatenate([runs.FLOOD_FRAMES, burst]))
-        wanted = set(runs.FLOOD_FRAMES if event == "flood" else runs.BURST_FRAMES)
-        model, frames = None, []
-        for model, fields in chain.flood(every):
-            if fields.seconds in wanted:
-                frames.append(fields)
+        model, visited = chain.model("fine"), [runs.FLOOD_FRAMES]
+        if design == "existing":
+            visited.append(runs.BURST_FRAMES)
+        wanted = runs.FLOOD_FRAMES if event == "flood" else runs.BURST_FRAMES
+        frames = [f for f in chain.flood(model, np.unique(np.concatenate(visited))) if f.seconds in wanted]
     xy = chain.mesh(which).xy
     write_run(path, model, chain.place.bed(xy), frames, _story(design, name, int(model.state[5])))
     _say(design, f"{path.name} written, {path.stat().st_size / 1e6:.2f} MB")

@@ -11,6 +11,7 @@ from functools import cached_property, lru_cache
 
 import numpy as np
 import shapely
+from numpy.typing import ArrayLike
 from scipy.ndimage import gaussian_filter1d
 from scipy.spatial import cKDTree
 from shapely.geometry import LineString, Polygon
@@ -45,7 +46,7 @@ class Pier:
     hole: bool  # False: resistance inside the outline
 
 
-def _bump(s: np.ndarray, middle: float, half: float) -> np.ndarray:
+def _bump(s: np.ndarray | float, middle: float, half: float) -> np.ndarray:
     """1 at the middle, smoothly 0 beyond ``half`` either side."""
     x = np.clip(np.abs(np.asarray(s, float) - middle) / half, 0, 1)
     return (1 - x * x) ** 2
@@ -78,14 +79,14 @@ class Course:
         rel, t = xy - self.xy[k], self.tangent[k]
         return self.s[k] + np.sum(rel * t, axis=1), t[:, 0] * rel[:, 1] - t[:, 1] * rel[:, 0]
 
-    def at(self, s: np.ndarray | float, n: np.ndarray | float = 0.0) -> np.ndarray:
+    def at(self, s: ArrayLike, n: ArrayLike = 0.0) -> np.ndarray:
         """Local points (k, 2) at chainage and offset."""
         s, n = np.broadcast_arrays(np.atleast_1d(np.asarray(s, float)), np.asarray(n, float))
         x, y = (np.interp(s, self.s, self.xy[:, k]) for k in (0, 1))
         t = self.direction(s)
         return np.column_stack([x - n * t[:, 1], y + n * t[:, 0]])
 
-    def direction(self, s: np.ndarray | float) -> np.ndarray:
+    def direction(self, s: ArrayLike) -> np.ndarray:
         """Unit vectors (k, 2) downstream."""
         s = np.atleast_1d(np.asarray(s, float))
         t = np.column_stack([np.interp(s, self.s, self.tangent[:, k]) for k in (0, 1)])
@@ -98,12 +99,12 @@ def course() -> Course:
     return Course()
 
 
-def half_bottom(s: np.ndarray) -> np.ndarray:
+def half_bottom(s: np.ndarray | float) -> np.ndarray:
     """Half the width of the bottom; the river is wider at the bridge and in the bend."""
     return 16.0 + 2.2 * _bump(s, BRIDGE, 90) + 1.0 * _bump(s, 305, 90)
 
 
-def mean_bed(s: np.ndarray) -> np.ndarray:
+def mean_bed(s: np.ndarray | float) -> np.ndarray:
     """Level of the toe of the banks."""
     return BED_AT_START - SLOPE * np.asarray(s, float)
 
@@ -120,7 +121,7 @@ def _tapered(length: float, width: float) -> np.ndarray:
     head = np.column_stack([-length / 2 + r + r * np.cos(nose), r * np.sin(nose)])
     tail_length = 2.2 * width
     x = np.linspace(0, 1, 15)
-    flank = r * (1 - x**2) + 0.13 * x**2
+    flank = r * (1 - x**2) + 0.20 * x**2  # a blunt tip, so that it does not set the time step
     lower = np.column_stack([length / 2 - tail_length + tail_length * x, -flank])
     return np.vstack([head, lower, lower[::-1] * [1, -1]])
 

@@ -8,7 +8,7 @@ import numpy as np
 from numba import njit
 
 from . import flow
-from .flow import G, RIVER, TRIBUTARY
+from .flow import RIVER, TRIBUTARY, G
 
 
 @njit(cache=True)
@@ -50,13 +50,15 @@ def culvert_discharge(h, bed, link, area, loss):
 
 
 @njit(cache=True, error_model="numpy")
-def march(h, hu, hv, bed, roughness, alpha, courant, mesh, link, link_area, link_loss, drive, outlet, state, t_end, work, sums):
+def march(
+    h, hu, hv, bed, roughness, alpha, courant, mesh, link, link_area, link_loss, drive, outlet, state, t_end, work, sums
+):
     """Advance the state from ``state[0]`` to ``t_end`` exactly.
 
     ``mesh``: tuple of arrays (see solver.Model.mesh); ``drive``: times and the two inflows; ``outlet``:
     discharges and levels of the rating. ``state``: time, relaxed outflow, volume in, volume out, volume
-    added by clipping, steps, last step, culvert discharge. ``sums``: depth x dt, edge discharge x dt,
-    culvert volume; and the last step's edge discharge. Returns 0, or 1 when the step collapsed.
+    added by clipping, steps, longest step allowed, culvert discharge, culvert volume. ``sums``: depth x dt,
+    edge discharge x dt, and the last step's edge discharge. Returns 0, or 1 when the step collapsed.
     """
     start, near, wx, wy, arm, kind, left, right, normal, length, middle, centre, area, cell_edge, cell_side = mesh
     value, slope, nu, flux, pace, inflow, h1, hu1, hv1, h2, hu2, hv2, first_flux = work
@@ -74,6 +76,7 @@ def march(h, hu, hv, bed, roughness, alpha, courant, mesh, link, link_area, link
         dt = flow.time_step(area, cell_edge, length, pace, courant)
         if not dt > 1e-7:
             return 1
+        state[6] = dt
         dt = min(dt, t_end - state[0])
         if link[0] >= 0:
             pipe = min(pipe, 0.2 * h[link[0]] * area[link[0]] / dt)
@@ -92,7 +95,6 @@ def march(h, hu, hv, bed, roughness, alpha, courant, mesh, link, link_area, link
         state[1] += (out - state[1]) * min(dt / 20.0, 1.0)
         state[4] += added
         state[5] += 1
-        state[6] = dt
         state[7] = pipe
         state[8] += pipe * dt
     return 0

@@ -14,6 +14,7 @@ import shapely
 from scipy.ndimage import map_coordinates
 from scipy.spatial import Delaunay, cKDTree
 from shapely.geometry import LineString, Polygon, box
+from shapely.geometry.base import BaseGeometry
 
 from . import geometry as geo
 from .kernels import hilbert_key, thin_seeds
@@ -63,7 +64,7 @@ class SizeField:
 
     def __init__(self, place: geo.Place, sizes: Sizes) -> None:
         self.sizes = sizes
-        self.fine: list[tuple[object, float]] = []
+        self.fine: list[tuple[BaseGeometry, float]] = []
         for pier in place.piers:
             if pier.hole:
                 self.fine += [(pier.outline, 1.25 * sizes.finest), (wake_box(pier), sizes.finest)]

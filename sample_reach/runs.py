@@ -10,14 +10,16 @@ from collections.abc import Callable, Iterator
 from dataclasses import dataclass
 from functools import cached_property
 from pathlib import Path
+from typing import Any
 
 import numpy as np
 import shapely
+from numpy.typing import ArrayLike
 
 from . import geometry as geo
 from .flow import INTERIOR, OUTFLOW, PIER, RIVER, TRIBUTARY, WALL
 from .mesher import SIZES, Triangles, make_mesh
-from .solver import Drive, Model, carry, cell_flow, topology
+from .solver import Drive, Model, Topology, carry, cell_flow, topology
 
 ALPHA = 0.15  # eddy viscosity nu = ALPHA h u*
 LOW, BANKFULL, FLOOD_START = (6.0, 0.6), (104.0, 8.0), (38.0, 3.5)  # river and tributary, m3/s
@@ -63,26 +65,26 @@ class Chain:
         mesh = self.mesh(which)
         t = topology(mesh.xy, mesh.cells)
         bed = self.place.bed(mesh.xy)[mesh.cells].mean(axis=1)
-        link = tuple(int(np.hypot(*(t.centre - geo.course().at(s, n)[0]).T).argmin()) for s, n in geo.CULVERT)
+        inlet, outlet = (holder(mesh, geo.course().at(s, n)[0]) for s, n in geo.CULVERT)
         area = np.pi * geo.CULVERT_DIAMETER**2 / 4
         return Model(
-            t, bed, self.place.roughness(t.centre), edge_kinds(self.place, t), ALPHA, link=link, link_area=area,
+            t, bed, self.place.roughness(t.centre), edge_kinds(self.place, t), ALPHA, link=(inlet, outlet), link_area=area,
             link_loss=geo.CULVERT_LOSS,
         )
 
     @cached_property
     def rating(self) -> tuple[np.ndarray, np.ndarray]:
         """Discharge against level at the outlet: uniform flow at the reach's slope, by strips (Manning)."""
-        n = np.linspace(-1, 1, 401) * (geo.half_bottom(geo.LENGTH) + geo.BANK_WIDTH)
+        n = np.linspace(-1, 1, 401) * float(geo.half_bottom(geo.LENGTH) + geo.BANK_WIDTH)
         xy = geo.course().at(np.full(len(n), geo.LENGTH), n)
         bed, rough = self.place.bed(xy), self.place.roughness(xy)
         level = np.linspace(bed.min() + 0.02, bed.min() + 3.2, 120)
         depth = np.maximum(level[:, None] - bed, 0)
         return np.sum(depth ** (5 / 3) / rough, axis=1) * np.sqrt(geo.SLOPE) * (n[1] - n[0]), level
 
-    def drive(self, river, tributary, times=(0.0,)) -> Drive:
-        series = (np.atleast_1d(np.asarray(a, float)) for a in (times, river, tributary))
-        return Drive(*series, *self.rating)
+    def drive(self, river: ArrayLike, tributary: ArrayLike, times: ArrayLike = (0.0,)) -> Drive:
+        t, main, side = (np.atleast_1d(np.asarray(a, float)) for a in (times, river, tributary))
+        return Drive(t, main, side, *self.rating)
 
     def spun_up(self, event: str) -> Model:
         """The coarse model after its spin-up at low flow, bankfull, or the flow that the flood begins with."""
@@ -96,7 +98,7 @@ class Chain:
                 model.clear_sums()
                 model.state[2:4] = 0
                 model.advance(until, self.drive(*flows))
-                self.say(f"spin-up {event}: {until:.0f} of {end:.0f} s, outflow {model.state[3] / 100:.2f} m3/s, step {model.state[6]:.4f} s")
+                self.say(f"spin-up {event}: {until:.0f} of {end:.0f} s, outflow {model.state[3] / 100:.2f} m3/s")
             _keep(path, model)
         return model
 
@@ -132,7 +134,8 @@ class Chain:
             self._stretch(model, SETTLE[event] + MEAN[event], self.drive(*flows), f"{event}, {which}, mean")
             span = MEAN[event]
             storage = (model.volume - begin) / span
-            self.say(f"{event}, {which}: in {model.state[2] / span:.3f}, out {model.state[3] / span:.3f}, storage {storage:.3f} m3/s")
+            flows_said = f"in {model.state[2] / span:.3f}, out {model.state[3] / span:.3f}, storage {storage:.3f} m3/s"
+            self.say(f"{event}, {which}: {flows_said}, added {model.state[4]:.2g} m3, {model.state[5]:.0f} steps")
             sums = model.sums
             _save(path, depth=sums[0] / span, edge=sums[1] / span, culvert=model.state[8] / span, steps=model.state[5])
         with np.load(path) as f:
@@ -149,9 +152,8 @@ class Chain:
             rate = (model.state[5] - steps) * len(model.h) / (time.time() - clock) / 1e6
             self.say(f"{words}: {model.time:.0f} of {until:.0f} s, {rate:.1f} million cell steps a second")
 
-    def flood(self, frames: np.ndarray) -> Iterator[tuple[Model, Fields]]:
+    def flood(self, model: Model, frames: np.ndarray) -> Iterator[Fields]:
         """Instants of the flood at the times given, in order; those already in the folder are read back."""
-        model = self.model("fine")
         design, started = self.place.design, False
         times, river, side = FLOOD.T
         for t in frames:
@@ -164,7 +166,7 @@ class Chain:
                 _keep(path, model, edge=model.sums[2].astype(np.float32), culvert=model.state[7])
             with np.load(path) as f:
                 edge = f["edge"].astype(float)
-                yield model, Fields(t, f["h"], cell_flow(model.topology, edge), edge, float(f["culvert"]), 0.0)
+                yield Fields(t, f["h"], cell_flow(model.topology, edge), edge, float(f["culvert"]), 0.0)
 
     def _flood_start(self, model: Model, until: float) -> None:
         """The state of the latest frame kept before ``until``, or the settled start of the flood."""
@@ -179,7 +181,15 @@ class Chain:
         self._stretch(model, 0.0, self.drive(river, side, times), "flood, settling")
 
 
-def edge_kinds(place: geo.Place, t) -> np.ndarray:
+def holder(mesh: Triangles, point: np.ndarray) -> int:
+    """The triangle that holds a point."""
+    p = mesh.xy[mesh.cells] - point
+    q = np.roll(p, -1, axis=1)
+    inside = np.all(p[..., 0] * q[..., 1] - p[..., 1] * q[..., 0] >= 0, axis=1)
+    return int(np.flatnonzero(inside)[0])
+
+
+def edge_kinds(place: geo.Place, t: Topology) -> np.ndarray:
     """Code of every edge: interior, wall, river, tributary, outflow, or wall of a pier."""
     kind = np.where(t.right < 0, WALL, INTERIOR).astype(np.int32)
     outside = np.flatnonzero(t.right < 0)
@@ -195,14 +205,14 @@ def edge_kinds(place: geo.Place, t) -> np.ndarray:
     return kind
 
 
-def _save(path: Path, **arrays) -> None:
+def _save(path: Path, **arrays: Any) -> None:
     """Whole or not at all: written beside, then renamed."""
     beside = path.with_suffix(".part.npz")
     np.savez(beside, **arrays)
     beside.replace(path)
 
 
-def _keep(path: Path, model: Model, **more) -> None:
+def _keep(path: Path, model: Model, **more: Any) -> None:
     _save(path, h=model.h, hu=model.hu, hv=model.hv, state=model.state, **more)
 
 

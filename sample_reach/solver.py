@@ -65,12 +65,11 @@ def _stencil(t: Topology) -> tuple[np.ndarray, ...]:
     order = np.argsort(t.cells.ravel(), kind="stable")
     node_start = np.searchsorted(t.cells.ravel()[order], np.arange(len(t.xy) + 1))
     node_cells = order // 3
-    start, near = [0], []
+    lists = []
     for i, nodes in enumerate(t.cells):
         around = np.unique(np.concatenate([node_cells[node_start[n] : node_start[n + 1]] for n in nodes]))
-        near.append(around[around != i])
-        start.append(start[-1] + len(around) - 1)
-    start, near = np.array(start), np.concatenate(near)
+        lists.append(around[around != i])
+    start, near = np.concatenate([[0], np.cumsum([len(a) for a in lists])]), np.concatenate(lists)
     d = t.centre[near] - np.repeat(t.centre, np.diff(start), axis=0)
     w = 1 / np.sum(d * d, axis=1)
     xx, xy, yy = (np.add.reduceat(w * p, start[:-1]) for p in (d[:, 0] ** 2, d[:, 0] * d[:, 1], d[:, 1] ** 2))

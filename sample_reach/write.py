@@ -116,7 +116,7 @@ def _static(f, model: Model, node_bed: np.ndarray) -> None:
 
     bed = {"standard_name": "ground_level_altitude", "units": "m", "long_name": "bed level", "vertical_datum": geo.DATUM}
     _variable(f, "node_bed", ("mesh2d_node",), node_bed, bed | at("node"), np.float32)
-    _variable(f, "face_bed", ("mesh2d_face",), model.bed, bed | at("face") | {"cell_methods": "mesh2d_face: mean"}, np.float32)
+    _variable(f, "face_bed", ("mesh2d_face",), model.bed, bed | at("face") | {"cell_methods": "area: mean"}, np.float32)
     _variable(f, "roughness", ("mesh2d_face",), model.roughness, {
         "long_name": "Manning's n", "units": "s m-1/3"} | at("face"), np.float32)
     _variable(f, "boundary", ("mesh2d_edge",), model.kind, {
@@ -126,7 +126,7 @@ def _static(f, model: Model, node_bed: np.ndarray) -> None:
 
 def _frames(f, model: Model, frames: list[Fields], story: Story) -> None:
     mean = frames[0].interval > 0
-    method = {"cell_methods": "time: mean mesh2d_face: mean" if mean else "time: point mesh2d_face: mean"}
+    method = {"cell_methods": "time: mean area: mean" if mean else "time: point area: mean"}
     f.dimensions["time"] = len(frames)
     clock = {"standard_name": "time", "units": EPOCH, "calendar": "standard", "axis": "T"}
     seconds = np.array([x.seconds for x in frames])
