@@ -155,7 +155,7 @@ class Reading:
             for i in sorted({0, run.n_frames // 4, run.n_frames // 2, 3 * run.n_frames // 4, run.n_frames - 1}):
                 frame = self.frame(run_id, i)
                 value = (frame.speed if shade == "speed" else frame.depth)[frame.wet_nodes]
-                highest.append(float(np.percentile(value, 99)) if value.size else 0.0)
+                highest.append(float(np.percentile(value, 97)) if value.size else 0.0)
             return _round_up(max(highest))
 
         return self.results.get(("top", run_id, shade), make, label="Reading the range of speeds.")

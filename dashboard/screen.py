@@ -58,6 +58,9 @@ class Screen:
         due, self.only = self.only, None
         self.said, self.failed = "", page.trouble
         question, desk = page.question, page.desk()
+        if self._dressed != desk.look:
+            page.map.dress(desk.look)
+            self._dressed = desk.look
         self._part("map", due, lambda: self._map(page))
         desk = page.desk(self._view(page))
         self._part("answer", due, lambda: self._put("answer", question.sentence(desk)))
@@ -115,9 +118,6 @@ class Screen:
     def _draw_map(self, page: Page, view: View) -> None:
         desk = page.desk(view)
         question, look = page.question, desk.look
-        if self._dressed != look:
-            page.map.dress(look)
-            self._dressed = look
         page.map.turn_to(view)
         scene = question.scene(desk)
         self._scene = scene
@@ -175,7 +175,7 @@ class Screen:
         else:
             self._put("status", frame_words.working(self.said) if self.said else "")
         if "answer" not in self.slots or self.waits.get("answer"):
-            self.slots.setdefault("answer", text.safe(self.said or "Nothing to show."))
+            self.slots.setdefault("answer", text.safe(self.said or "These results cannot be shown."))
         self._put("cautions", frame_words.cautions(question.cautions(desk), short=desk.look.hall))
         try:
             matter = page.reading.matter()

@@ -58,16 +58,10 @@ class Units:
         """A sensitivity as "440 to 474"; empty where there is none."""
         if low is None or high is None or not (math.isfinite(low) and math.isfinite(high)):
             return ""
-        digits = _shared_digits(low * self.factor(unit), high * self.factor(unit))
-        return f"{self.number(low, unit, digits=digits)} to {self.number(high, unit, digits=digits)}"
-
-
-def _shared_digits(low: float, high: float) -> int:
-    """Digits that let both ends be told apart: 3, more where the range is narrow, at most 5."""
-    size, spread = max(abs(low), abs(high)), abs(high - low)
-    if not spread > 0 or not size > 0:
-        return 3
-    return min(max(3, math.ceil(math.log10(size / spread)) + 2), 5)
+        ends = [self.number(v, unit) for v in (low, high)]
+        if ends[0] == ends[1]:
+            ends = [self.number(v, unit, digits=4) for v in (low, high)]
+        return " to ".join(ends)
 
 
 def round_step(target: float, steps: tuple[float, ...] = (1, 2, 5)) -> float:

@@ -10,6 +10,7 @@ import shapely
 
 from hydro.eddies import Zone
 from hydro.ledger import FrameLedger
+from hydro.reach import Structure
 
 from .. import text
 from ..reading import Story
@@ -17,10 +18,26 @@ from ..views import ribbon, section
 from ..views.scene import Name, StructureMark
 from .base import Desk
 
+_REACH = 150.0  # m to each side of the centre line that a first section may go
+_PIER = 12.0  # m of dry ground that a section steps over
+_BANK = 2.0  # m that it goes up each bank
+
 
 def structures(desk: Desk) -> tuple[StructureMark, ...]:
     """The structures of the chosen run's design."""
-    return tuple(StructureMark(s.name, s.kind, s.geometry) for s in desk.reading.reach(desk.run_id).structures)
+    return tuple(
+        StructureMark(_labelled(s), s.kind, s.geometry, s.represented_as in ("hole", "dry"))
+        for s in desk.reading.reach(desk.run_id).structures
+    )
+
+
+def _labelled(structure: Structure) -> str:
+    """Its name; a deck stands above the water, and a pier that water passes through says how it is modelled."""
+    if structure.kind == "deck":
+        return f"{structure.name}, above" if "above" not in structure.name else structure.name
+    if structure.kind == "pier" and structure.represented_as not in ("hole", "dry"):
+        return f"{structure.name}, as {structure.represented_as}"
+    return structure.name
 
 
 def names(desk: Desk) -> tuple[Name, ...]:
@@ -53,7 +70,7 @@ def view_of(desk: Desk, bounds, ends) -> tuple[float, float, float]:
     east, north = boxes[:, 2:].max(axis=0)
     columns, rows = desk.sizes.map
     thing = max(bounds[2] - bounds[0], bounds[3] - bounds[1])
-    width = max(1.3 * (east - west), 1.3 * (north - south) * columns / rows, 4.0 * thing, 40.0)
+    width = max(1.5 * (east - west), 1.5 * (north - south) * columns / rows, 4.0 * thing, 40.0)
     return float((west + east) / 2), float((south + north) / 2), float(width)
 
 
@@ -101,25 +118,26 @@ def section_ends(desk: Desk, zone: Zone | None) -> tuple[tuple[float, float], tu
     if centre is None:
         return None
     at = np.asarray(zone.centre) if zone is not None else centre.at(np.array([centre.length / 2]))[0]
-    chainage = float(centre.locate(at)[0][0])
-    return across(desk, chainage)
+    chainage, offset = (float(v[0]) for v in centre.locate(at))
+    return across(desk, chainage, offset)
 
 
-def across(desk: Desk, chainage: float, reach_m: float = 150.0) -> tuple[tuple[float, float], tuple[float, float]]:
-    """A line square to the centre line from bank to bank, cut where it leaves the model."""
+def across(desk: Desk, chainage: float, offset: float = 0.0) -> tuple[tuple[float, float], tuple[float, float]]:
+    """A line square to the centre line through the water round an offset, from bank to bank."""
     centre, mesh = desk.reading.reach(desk.run_id).centre_line, desk.run.mesh
     assert centre is not None  # one is proposed where the review has none
-    offsets = np.arange(reach_m, -reach_m - 0.5, -0.5)
+    frame = desk.reading.frame(desk.run_id, desk.index)
+    offsets = np.arange(_REACH, -_REACH - 0.5, -0.5)
     points = np.vstack([centre.at(np.array([chainage]), float(o)) for o in offsets])
-    inside = mesh.find(points) >= 0
-    middle = len(offsets) // 2
-    if not inside[middle]:
+    found = mesh.find(points)
+    wet = (found >= 0) & frame.wet_triangles[np.maximum(found, 0)]
+    at = offsets[wet]
+    if not at.size:
         ends = points[[0, -1]]
     else:
-        gap = np.flatnonzero(~inside)
-        left = gap[gap < middle].max(initial=-1) + 1
-        right = gap[gap > middle].min(initial=len(offsets)) - 1
-        ends = points[[left, right]]
+        groups = np.split(at, np.flatnonzero(-np.diff(at) > _PIER) + 1)
+        chosen = min(groups, key=lambda g: max(g[-1] - offset, offset - g[0], 0.0))
+        ends = np.vstack([centre.at(np.array([chainage]), float(o)) for o in (chosen[0] + _BANK, chosen[-1] - _BANK)])
     return (float(ends[0, 0]), float(ends[0, 1])), (float(ends[1, 0]), float(ends[1, 1]))
 
 

@@ -38,8 +38,9 @@ class Eddies(Question):
         zones = ledger.zones.zones
         if not zones:
             return "none in this frame"
-        largest = max(z.area_m2 for z in zones)
-        return f"{len(zones)} {'eddy' if len(zones) == 1 else 'eddies'}, largest {desk.units.quantity(largest, 'm2')}"
+        largest = max(zones, key=lambda z: z.area_m2)
+        area = desk.units.quantity(largest.area_m2, "m2", *_span(largest, "area_m2"))
+        return f"{len(zones)} {'eddy' if len(zones) == 1 else 'eddies'}, largest {area}"
 
     def sentence(self, desk: Desk) -> str:
         ledger = self.ledger(desk)
@@ -53,8 +54,10 @@ class Eddies(Question):
             return f"No eddy turns {here}.{more}"
         largest = zone.area_m2 == max(z.area_m2 for z in zones)
         u, ids = desk.units, self.cautions(desk)
-        first = f"{text.count(len(zones), 'eddy', 'eddies')} {'turns' if len(zones) == 1 else 'turn'} {here}."
-        who = "It" if len(zones) == 1 else "The largest," if largest else "Of these,"
+        who = f'<em class="subject">{text.safe(zone.id)}</em> {_where(zone)}'
+        first = f"{text.count(len(zones), 'eddy', 'eddies')} turn {here}. {'The largest' if largest else 'Of these'}, {who},"
+        if len(zones) == 1:
+            first = f"One eddy turns {here}: {who}. It"
         area = u.quantity(zone.area_m2, "m2", *_span(zone, "area_m2"))
         flow = u.quantity(
             zone.recirculating_discharge_m3_s, "m3/s", *_span(zone, "recirculating_discharge_m3_s")
@@ -63,9 +66,8 @@ class Eddies(Question):
         river = f", {text.percent(share)} of the river" if share is not None else ""
         if desk.look.hall and share is not None:
             flow, river = text.percent(share), " of the river"
-        name = "" if len(zones) == 1 else f' <em class="subject">{text.safe(zone.id)}</em> {_where(zone)},'
         return (
-            f"{first} {who}{name} covers <b>{area}</b>{footnote(ids, 'sensitivity')} and "
+            f"{first} covers <b>{area}</b>{footnote(ids, 'sensitivity')} and "
             f"takes <b>{flow}</b>{river + ' round with it' if desk.look.hall else ' round with it' + river}."
         )
 
@@ -240,7 +242,7 @@ def _line(zone: Zone, subject: bool, desk: Desk, ids: tuple[str, ...]) -> table.
     few = desk.look.hall or desk.sizes.narrow
     return table.Line(
         (
-            (f"{marks.turning(zone.rotation)} {text.safe(zone.id)}", ""), (text.safe(zone.name or zone.kind) + coarse, ""),
+            (f"{marks.turning(zone.rotation)} {text.safe(zone.id)}", ""), (text.safe(zone.name or zone.kind).replace(" m", "\u00a0m") + coarse, ""),
             cell("area_m2", "m2"),
             *(() if few else (cell("recirculating_discharge_m3_s", "m3/s"), cell("rotation_time_s", "s"))),
         ),

@@ -31,6 +31,7 @@ class _Draughtsman:
         self.extent = view.widened(0.25).extent
         self.sheet = Sheet()
         self.avoid: list[tuple[float, float, float, float]] = []
+        self.zone_boxes: list[int] = []
 
     def draw(self, scene: Scene) -> Sheet:
         if scene.water is not None:
@@ -114,6 +115,7 @@ class _Draughtsman:
         for at, filled in ((zone.separation, True), (zone.reattachment, False)):
             if at is not None and size > 0.8 * radius:
                 self.contact(at, zone, filled, colour)
+        self.zone_boxes.append(len(self.avoid))
         self.box(zone.outline)
 
     def contact(self, at: np.ndarray, zone: ZoneMark, filled: bool, colour: str) -> None:
@@ -132,18 +134,27 @@ class _Draughtsman:
     # ---- built things, lines and points -----------------------------------------------------------
 
     def structure(self, mark: StructureMark) -> None:
-        shape = mark.shape
-        if mark.kind == "deck":
-            for ring in _lines_of(shape):
-                for line in self.seen([ring]):
-                    self.sheet.line(line, self.p.ink, 1.2 * self.weight, dash="10 6")
-            return
-        if shape.geom_type in ("Polygon", "MultiPolygon") and mark.kind not in ("ramp", "opening"):
-            self.sheet.area(shape, fill=self.p.ink, alpha=1.0, line=self.p.ink, width=1.0)
-            self.box(shape)
+        """Solid ink where no water passes; else an outline, so that the water in it is seen."""
+        area = mark.shape.geom_type in ("Polygon", "MultiPolygon")
+        lines = self.seen(_lines_of(mark.shape))
+        if area and mark.solid:
+            self.sheet.area(mark.shape, fill=self.p.ink, alpha=1.0, line=self.p.ink, width=1.0)
+            self.box(mark.shape)
+        elif area and mark.kind == "pier":
+            self.sheet.area(
+                mark.shape, fill=self.p.paper, alpha=0.6, hatch="x", hatch_colour=self.p.ink, hatch_scale=6 * self.weight,
+                hatch_weight=self.weight, line=self.p.ink, width=1.8 * self.weight,
+            )
+            self.box(mark.shape)
+        elif mark.kind in ("deck", "culvert"):
+            for line in lines:
+                self.sheet.line(line, self.p.ink, 1.2 * self.weight, dash="10 6")
+        elif area:
+            for line in lines:
+                self.sheet.line(line, self.p.ink, 0.9 * self.weight, alpha=0.7)
         else:
-            for line in self.seen(_lines_of(shape)):
-                self.cased(line, self.p.ink, 2.6 if mark.kind not in ("ramp", "opening") else 1.0)
+            for line in lines:
+                self.cased(line, self.p.ink, 2.6)
 
     def line(self, mark: LineMark) -> None:
         width, dash = _LINE_STYLES[mark.kind]
@@ -206,22 +217,25 @@ class _Draughtsman:
             for x, y in strokes.along(line, 12 * self.px)[0]:
                 self.avoid.append((x - 3 * self.px, y - 3 * self.px, x + 3 * self.px, y + 3 * self.px))
         # Text on the map: eddies' tags first, the subject's before all, then what is built.
-        wanted = [(Tag(z.tag, tuple(z.centre), z.subject, z.coarse), self.room(z), True) for z in scene.zones]
-        wanted += [(t, 0.0, True) for t in scene.tags]
+        wanted = [
+            (Tag(z.tag, tuple(z.centre), z.subject, z.coarse), self.room(z), True, box)
+            for z, box in zip(scene.zones, self.zone_boxes)
+        ]
+        wanted += [(t, 0.0, True, -1) for t in scene.tags]
         named = [s for s in scene.structures if s.name]
-        wanted += [(Tag(s.name, tuple(shapely.get_coordinates(s.shape.centroid)[0])), 0.0, False) for s in named]
+        wanted += [(Tag(s.name, tuple(shapely.get_coordinates(s.shape.centroid)[0])), 0.0, False, -1) for s in named]
         wanted.sort(key=lambda w: (not w[0].subject, not w[2]))
         west, south, east, north = self.view.extent
         wanted = [w for w in wanted if w[0].text and west < w[0].at[0] < east and south < w[0].at[1] < north]
         if not wanted:
             return
-        sizes = np.array([[(len(t.text) * 0.6 * size + 12) * self.px, (size * 1.25 + 8) * self.px] for t, _, _ in wanted])
-        anchors = np.array([t.at for t, _, _ in wanted])
-        room = [r for _, r, _ in wanted]
-        own = np.array(self.avoid).reshape(-1, 4)
-        free = [boxed for _, _, boxed in wanted]
-        spots = tags.place(anchors, sizes, own, self.view.extent, inside=room, leaders=free)
-        for (tag, _, boxed), spot in zip(wanted, spots):
+        sizes = np.array([[(len(t.text) * 0.6 * size + 12) * self.px, (size * 1.25 + 8) * self.px] for t, *_ in wanted])
+        anchors = np.array([t.at for t, *_ in wanted])
+        room = [r for _, r, _, _ in wanted]
+        clear = np.array(self.avoid).reshape(-1, 4)
+        free, own = [boxed for _, _, boxed, _ in wanted], [box for *_, box in wanted]
+        spots = tags.place(anchors, sizes, clear, self.view.extent, inside=room, leaders=free, own=own)
+        for (tag, _, boxed, _), spot in zip(wanted, spots):
             if not spot.shown:
                 self.sheet.hidden += boxed
             elif boxed:

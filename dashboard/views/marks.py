@@ -27,7 +27,7 @@ def north() -> str:
     """A plain arrow with its letter; the map's y axis is north."""
     return (
         '<svg class="north" viewBox="0 0 20 48" role="img" aria-label="North is up"><text x="10" y="12">N</text>'
-        '<path d="M10 46 L10 17 M5.5 24 L10 17 L14.5 24"/></svg>'
+        '<path class="casing" d="M10 46 L10 17 M5.5 24 L10 17 L14.5 24"/><path d="M10 46 L10 17 M5.5 24 L10 17 L14.5 24"/></svg>'
     )
 
 
@@ -51,7 +51,7 @@ def ramp_key(title: str, top: float, unit: str, units: Units) -> str:
     """The ramp with its numbers, as HTML."""
     stops = ", ".join(f"var(--water-{i}) {25 * i}%" for i in range(5))
     end = top * units.factor(unit)
-    numbers = "".join(f"<span>{end * k / 2:.3g}</span>" for k in range(3))
+    numbers = "".join(f"<span>{end * k / 2:.3g}{'+' if k == 2 else ''}</span>" for k in range(3))
     return (
         f'<div class="ramp"><span>{title}, {units.label(unit)}</span><div class="bar" style="background:linear-gradient(to right, '
         f'{stops})"></div><div class="numbers">{numbers}</div></div>'

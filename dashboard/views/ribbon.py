@@ -89,6 +89,8 @@ def places(course: Course, box: Box) -> np.ndarray:
 
 def draw(course: Course, box: Box, units: Units) -> str:
     """The ribbon as SVG text; colours come from the page's custom properties."""
+    if len(course.seconds) == 1:
+        return _one_frame(course, box, units)
     x = places(course, box)
     axis = box.base + 0.9 * box.label + len(course.rows) * box.row
     height = axis + 2.1 * box.label
@@ -97,6 +99,15 @@ def draw(course: Course, box: Box, units: Units) -> str:
     return (
         f'<svg class="ribbon" viewBox="0 0 {box.width:.0f} {height:.0f}" width="{box.width:.0f}" height="{height:.0f}" '
         f'aria-hidden="true" font-size="{box.label:.1f}">{"".join(parts)}</svg>'
+    )
+
+
+def _one_frame(course: Course, box: Box, units: Units) -> str:
+    """A run of one frame has no course of time to show."""
+    return (
+        f'<svg class="ribbon" viewBox="0 0 {box.width:.0f} {2 * box.label:.0f}" width="{box.width:.0f}" '
+        f'height="{2 * box.label:.0f}" aria-hidden="true" font-size="{box.label:.1f}"><text class="second" x="0" '
+        f'y="{1.3 * box.label:.1f}">This run holds one frame: {words(course, units)}.</text></svg>'
     )
 
 

@@ -79,11 +79,12 @@ class AreaMark:
 
 @dataclass(frozen=True, eq=False)
 class StructureMark:
-    """A structure in ink with its name beside."""
+    """A structure in ink with its name beside; ``solid`` where the model lets no water through."""
 
     name: str
     kind: str
     shape: BaseGeometry
+    solid: bool = True
 
 
 @dataclass(frozen=True, slots=True)

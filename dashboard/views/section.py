@@ -194,7 +194,7 @@ def _speed_lines(s: _Scale, units: Units) -> str:
 
 def _axis(s: _Scale, units: Units) -> str:
     box, f = s.box, units.factor("m")
-    step = round_step(s.length * f / (box.right / (4.2 * box.label)))
+    step = round_step(2.5 * s.length * f / (box.right / (3.2 * box.label)))
     out = [f'<line class="hair" x1="0" x2="{box.right:.1f}" y1="{box.foot}" y2="{box.foot}"/>']
     for k in range(int(s.length * f / step + 1e-9) + 1):
         x = k * step / f / s.length * box.right

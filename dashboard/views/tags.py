@@ -23,7 +23,8 @@ class Placed:
 
 def place(
     anchors: np.ndarray, sizes: np.ndarray, avoid: np.ndarray, extent: tuple[float, float, float, float], *,
-    inside: Sequence[float] = (), leaders: Sequence[bool] = (), limit: float = 0.35,
+    inside: Sequence[float] = (), leaders: Sequence[bool] = (), own: Sequence[int] = (),
+    limit: float = 0.35,
 ) -> list[Placed]:
     """Places for labels, most important first.
 
@@ -41,6 +42,8 @@ def place(
         Room round each anchor, m; where it is larger than the label, it stands there without a leader.
     leaders : sequence of bool, optional
         Whether a label may stand away from its anchor on a leader; others stay close.
+    own : sequence of int, optional
+        Which box of ``avoid`` is the label's own thing (-1: none); it may stand inside that one.
     limit : float
         Share of a label that may lie on something; above, it is not shown.
     """
@@ -49,7 +52,10 @@ def place(
     for i, (anchor, size) in enumerate(zip(anchors, sizes)):
         room = inside[i] if len(inside) else 0.0
         distances = _DISTANCES if not len(leaders) or leaders[i] else _DISTANCES[:1]
-        best = _best(anchor, size, np.array(taken).reshape(-1, 4), extent, room, distances)
+        clear = np.array(taken).reshape(-1, 4)
+        if len(own) and own[i] >= 0:
+            clear[own[i]] = np.nan
+        best = _best(anchor, size, clear, extent, room, distances)
         cost, x, y, leader = best
         shown = cost <= limit
         if shown:
@@ -60,7 +66,9 @@ def place(
 
 def _best(anchor, size, taken, extent, room, distances) -> tuple[float, float, float, bool]:
     gap = 0.5 * np.hypot(*size) + 0.6 * size[1]
-    near = [(anchor[0] + 1.5 * size[1], anchor[1], False)] if room > 0.75 * size[0] + size[1] else []
+    aside, above = 0.5 * size[0] + 0.7 * size[1], 1.3 * size[1]
+    near = [(anchor[0] + dx, anchor[1] + dy, False) for dx, dy in ((aside, 0), (-aside, 0), (0, above), (0, -above))]
+    near = near if room > 0.8 * size[0] + size[1] else []
     far = [
         (anchor[0] + d * gap * np.cos(a), anchor[1] + d * gap * np.sin(a), True) for d in distances for a in _DIRECTIONS
     ]
@@ -70,7 +78,7 @@ def _best(anchor, size, taken, extent, room, distances) -> tuple[float, float, f
         cost += 0.002 * rank
         if cost < best[0]:
             best = (cost, float(x), float(y), leader)
-        if leader is False and cost < 0.05:
+        if not leader and cost < 0.05:
             break
     return best
 
@@ -84,7 +92,7 @@ def _overlap(box, taken: np.ndarray) -> float:
         return 0.0
     wide = np.minimum(box[2], taken[:, 2]) - np.maximum(box[0], taken[:, 0])
     high = np.minimum(box[3], taken[:, 3]) - np.maximum(box[1], taken[:, 1])
-    return float(np.sum(np.maximum(wide, 0) * np.maximum(high, 0)))
+    return float(np.nansum(np.maximum(wide, 0) * np.maximum(high, 0)))
 
 
 def _outside(box, extent) -> float:
