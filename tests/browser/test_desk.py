@@ -1,0 +1,192 @@
+"""The first screen in a real browser: it answers, its parts move together, and a link opens the same view."""
+
+from __future__ import annotations
+
+import re
+
+import pytest
+from playwright.sync_api import Browser, Page, expect
+
+from .conftest import Server, Watch
+from .desk import FLOOD, answer, colours, faults, open_desk, plain, settled
+
+pytestmark = pytest.mark.browser
+
+
+def test_the_sample_opens_with_a_sentence_a_map_and_a_ledger(page: Page, server: Server):
+    open_desk(page, server.address)
+    assert re.search(r"edd(y|ies) turns? in this (mean flow|frame)", answer(page))
+    assert re.search(r"covers [\d.,]+ m\u00b2", answer(page))
+    assert colours(page) > 60
+    assert page.locator("table tbody tr").count() >= 1
+    assert "depth-averaged" in page.inner_text("footer.cautions")
+    assert page.locator("nav button").count() >= 7
+
+
+def test_the_page_title_and_the_one_heading_of_first_rank(page: Page, server: Server):
+    open_desk(page, server.address)
+    assert page.title() == "Eddies \u00b7 Leewater"
+    assert page.locator("h1").count() == 1
+
+
+def test_time_moves_the_map_the_sentence_and_the_address(page: Page, server: Server):
+    open_desk(page, server.address, FLOOD)
+    before, words = answer(page), page.get_attribute("#time", "aria-valuetext")
+    page.focus("#time")
+    page.keyboard.press("Home")
+    expect(page.locator("#time")).not_to_have_attribute("aria-valuetext", words or "")
+    settled(page)
+    assert answer(page) != before
+    assert "seconds=0" in page.url
+    assert plain(page.inner_text(".side")).count("m\u00b3/s") >= 2
+
+
+def test_a_press_on_the_ribbon_takes_the_cursor_there(page: Page, server: Server):
+    open_desk(page, server.address, f"{FLOOD}&seconds=0")
+    box = page.locator("#ribbon svg").bounding_box()
+    assert box is not None
+    page.mouse.click(box["x"] + 0.6 * box["width"], box["y"] + 0.4 * box["height"])
+    expect(page.locator("#time")).not_to_have_js_property("value", "0")
+    settled(page)
+    assert re.search(r"seconds=[1-9]", page.url)
+
+
+def test_a_row_of_the_ledger_takes_the_map_there(page: Page, server: Server):
+    open_desk(page, server.address)
+    row = page.locator("table tbody tr:not(.subject) button.row").first
+    name = plain(row.inner_text())
+    row.click()
+    expect(page.locator("tr.subject button.row")).to_have_text(re.compile(name))
+    settled(page)
+    assert name in answer(page)
+    assert f"subject={name}" in page.url
+    assert "view=" in page.url
+
+
+def test_a_link_opens_the_same_view(page: Page, server: Server, browser: Browser):
+    open_desk(page, server.address, FLOOD)
+    page.click("button[data-do=zoom][data-value=nearer]")
+    page.select_option("#choose-tubes", "44")
+    expect(page.locator("figcaption")).to_contain_text("44 tubes")
+    settled(page)
+    there = browser.new_context(viewport={"width": 1440, "height": 900}).new_page()
+    open_desk(there, page.url.replace("/?", "?").split("?")[0].rstrip("/"), page.url.split("?", 1)[1])
+    assert answer(there) == answer(page)
+    assert there.input_value("#choose-tubes") == "44"
+    assert there.url == page.url
+    there.context.close()
+
+
+def test_back_undoes_and_forward_does_it_again(page: Page, server: Server):
+    open_desk(page, server.address)
+    page.select_option("#choose-shade", "depth")
+    expect(page.locator(".key")).to_contain_text("Depth")
+    page.click("button[data-do=undo]")
+    expect(page.locator(".key")).to_contain_text("Speed")
+    page.keyboard.press("Control+Shift+Z")
+    expect(page.locator(".key")).to_contain_text("Depth")
+    page.go_back()
+    expect(page.locator(".key")).to_contain_text("Speed")
+
+
+def test_a_dragged_section_reads_anew(page: Page, server: Server):
+    open_desk(page, server.address)
+    before = plain(page.inner_text(".figures"))
+    box = page.locator("#end-left").bounding_box()
+    assert box is not None
+    x, y = box["x"] + box["width"] / 2, box["y"] + box["height"] / 2
+    page.mouse.move(x, y)
+    page.mouse.down()
+    page.mouse.move(x + 40, y + 60, steps=5)
+    page.mouse.up()
+    expect(page.locator(".figures")).not_to_have_text(before)
+    assert "section=" in page.url
+
+
+def test_the_section_ends_move_by_keys(page: Page, server: Server):
+    open_desk(page, server.address)
+    url = page.url
+    page.focus("#end-right")
+    for _ in range(3):
+        page.keyboard.press("Shift+ArrowLeft")
+    page.wait_for_function("url => location.href !== url", arg=url)
+    assert "section=" in page.url
+
+
+def test_units_change_everywhere_at_once(page: Page, server: Server):
+    open_desk(page, server.address)
+    page.select_option("#units", "US survey feet")
+    expect(page.locator("#answer")).to_contain_text("US ft")
+    text = plain(page.inner_text("main"))
+    assert not re.search(r"\d (m|m\u00b2|m\u00b3/s|m/s)\b", text), text
+
+
+@pytest.mark.parametrize("query", ["", "mode=night", "hall=yes", "mode=night&hall=yes"], ids=["day", "night", "hall", "hall night"])
+@pytest.mark.parametrize("width", [1440, 1024, 390])
+def test_axe_finds_nothing(page: Page, server: Server, query: str, width: int):
+    page.set_viewport_size({"width": width, "height": 900})
+    open_desk(page, server.address, query)
+    assert faults(page) == []
+
+
+@pytest.mark.parametrize("width", [1280, 1024, 390])
+def test_the_page_reflows_without_scrolling_sideways(page: Page, server: Server, width: int):
+    page.set_viewport_size({"width": width, "height": 844})
+    open_desk(page, server.address)
+    assert page.evaluate("document.documentElement.scrollWidth") <= width
+
+
+def test_every_control_is_reached_by_tab_and_shows_its_focus(page: Page, server: Server):
+    """Tab from the top meets each button, list and slider once; each has an outline while it is there."""
+    open_desk(page, server.address)
+    wanted = page.evaluate(
+        """() => [...document.querySelectorAll('button, select, input, #map, a[href]')]
+            .filter((e) => !e.disabled && e.getClientRects().length && getComputedStyle(e).visibility === 'visible').length"""
+    )
+    met = set()
+    page.evaluate("document.activeElement.blur()")
+    for _ in range(wanted + 15):
+        page.keyboard.press("Tab")
+        where = page.evaluate(
+            """() => {
+                const e = document.activeElement;
+                if (e === document.body) return null;
+                window.walked = window.walked || new Map();
+                if (!window.walked.has(e)) window.walked.set(e, window.walked.size);
+                const ring = [e, e.querySelector('span'), e.closest('#ribbon')].some(
+                    (x) => x && getComputedStyle(x).outlineStyle !== 'none' && parseFloat(getComputedStyle(x).outlineWidth) >= 2);
+                return [window.walked.get(e), ring, e.outerHTML.slice(0, 120)];
+            }"""
+        )
+        if where is None:
+            continue
+        met.add(where[0])
+        assert where[1], f"no focus ring on {where[2]}"
+    assert len(met) >= wanted
+
+
+def test_every_question_says_something_without_an_error(page: Page, server: Server):
+    open_desk(page, server.address)
+    for key in ("arrival", "drift", "passage", "sections", "change", "record", "eddies"):
+        page.click(f"nav button[data-value={key}]:visible")
+        expect(page.locator("nav li button[aria-current=page]")).to_have_attribute("data-value", key)
+        settled(page)
+        assert len(answer(page)) > 15
+        assert faults(page) == []
+
+
+def test_an_address_that_cannot_be_read_is_told_and_the_page_still_opens(page: Page, server: Server):
+    open_desk(page, server.address, "view=here")
+    assert "cannot be read" in page.inner_text(".status")
+    assert colours(page) > 60
+
+
+def test_two_browsers_keep_their_own_state(page: Page, server: Server, browser: Browser, watch: Watch):
+    open_desk(page, server.address)
+    other = browser.new_context(viewport={"width": 1440, "height": 900}).new_page()
+    watch.follow(other)
+    open_desk(other, server.address)
+    page.select_option("#choose-shade", "depth")
+    expect(page.locator(".key")).to_contain_text("Depth")
+    assert "Speed" in other.inner_text(".key")
+    other.context.close()

@@ -1,0 +1,102 @@
+"""The desk is installable, says at once when its server has stopped, and comes back by itself."""
+
+from __future__ import annotations
+
+import contextlib
+import subprocess
+import sys
+from collections.abc import Iterator
+from pathlib import Path
+
+import pytest
+from playwright.sync_api import BrowserContext, expect, sync_playwright
+
+from .conftest import ROOT, Server, Watch, _wait_for_answer, end, free_port, launch_options
+from .desk import PATIENCE, open_desk
+
+pytestmark = pytest.mark.browser
+
+
+class Desk:
+    """A dashboard on one port that a test can stop and start again."""
+
+    def __init__(self, log: Path) -> None:
+        self.port, self.log = free_port(), log
+        self.address = f"http://127.0.0.1:{self.port}"
+        self.process: subprocess.Popen[bytes] | None = None
+
+    def start(self) -> None:
+        command = [sys.executable, "-c", "import sys; from dashboard.cli import main; sys.exit(main())",
+                   "open", "sample_reach", "--port", str(self.port), "--no-browser"]
+        with self.log.open("ab") as out:
+            self.process = subprocess.Popen(command, cwd=ROOT, stdout=out, stderr=subprocess.STDOUT, stdin=subprocess.DEVNULL)
+        _wait_for_answer(Server(self.address, self.log), self.process)
+
+    def stop(self) -> None:
+        if self.process is not None:
+            end(self.process)
+            self.process = None
+
+
+@pytest.fixture
+def desk(tmp_path: Path) -> Iterator[Desk]:
+    running = Desk(tmp_path / "log.txt")
+    running.start()
+    yield running
+    running.stop()
+
+
+@pytest.fixture
+def installed(chromium_path: str, tmp_path: Path) -> Iterator[BrowserContext]:
+    """A browser with a profile of its own, where service workers live."""
+    with sync_playwright() as playwright, contextlib.closing(
+        playwright.chromium.launch_persistent_context(str(tmp_path / "profile"), **launch_options(chromium_path))
+    ) as context:
+        yield context
+
+
+def test_chromium_finds_no_reason_against_installing(desk: Desk, installed: BrowserContext, watch: Watch):
+    page = installed.pages[0]
+    watch.follow(page)
+    open_desk(page, desk.address)
+    page.evaluate("navigator.serviceWorker.ready.then(() => true)")
+    devtools = installed.new_cdp_session(page)
+    assert devtools.send("Page.getInstallabilityErrors")["installabilityErrors"] == []
+    assert devtools.send("Page.getAppManifest")["errors"] == []
+    assert watch.outside == [] and watch.errors == []
+
+
+def test_when_the_desk_stops_the_page_says_so_and_comes_back(desk: Desk, installed: BrowserContext):
+    page = installed.pages[0]
+    open_desk(page, desk.address)
+    page.evaluate("navigator.serviceWorker.ready.then(() => true)")
+    desk.stop()
+    expect(page.locator("#lost")).to_be_visible(timeout=20_000)
+    page.reload()
+    expect(page.locator("h1")).to_have_text("The desk has stopped.", timeout=20_000)
+    desk.start()
+    page.wait_for_selector("html[data-ready=yes]", state="attached", timeout=PATIENCE)
+    expect(page.locator("#answer")).to_contain_text("edd", timeout=PATIENCE)
+
+
+def test_an_open_page_of_a_stopped_desk_draws_itself_anew_when_it_is_back(desk: Desk, installed: BrowserContext):
+    page = installed.pages[0]
+    open_desk(page, desk.address)
+    desk.stop()
+    expect(page.locator("#lost")).to_be_visible(timeout=20_000)
+    desk.start()
+    expect(page.locator("#lost")).to_be_hidden(timeout=20_000)
+    page.wait_for_selector("html[data-working=no]", state="attached", timeout=PATIENCE)
+
+
+def test_panels_own_page_is_never_stored(desk: Desk, installed: BrowserContext):
+    page = installed.pages[0]
+    open_desk(page, desk.address)
+    page.evaluate("navigator.serviceWorker.ready.then(() => true)")
+    page.reload()
+    stored = page.evaluate(
+        "async () => (await Promise.all((await caches.keys()).map(async (n) => (await (await caches.open(n)).keys())"
+        ".map((r) => new URL(r.url).pathname)))).flat()"
+    )
+    assert "/web/offline.html" in stored
+    assert "/" not in stored
