@@ -169,15 +169,26 @@ def automatic_sections(centre_line: CentreLine, xy: np.ndarray, spacing_m: float
     list of (chainage, (2, 2) local points from left bank to right bank)
         None within half a spacing of the mesh's ends, where a section would leave the model.
     """
-    s, n = centre_line.locate(xy)
+    s, _ = centre_line.locate(xy)
     low, high = max(0.0, float(s.min())), min(centre_line.length, float(s.max()))
     out = []
     for chainage in np.arange(low + spacing_m / 2, high - spacing_m / 2, spacing_m):
-        near = np.abs(s - chainage) <= spacing_m / 2
-        if near.any():
-            left, right = float(n[near].max()) + 1.0, float(n[near].min()) - 1.0
-            out.append((float(chainage), centre_line.at(np.array([chainage] * 2), np.array([left, right]))))
+        line = section_at(centre_line, xy, float(chainage), spacing_m / 2)
+        if line is not None:
+            out.append((float(chainage), line))
     return out
+
+
+def section_at(centre_line: CentreLine, xy: np.ndarray, chainage: float, near_m: float) -> np.ndarray | None:
+    """Line (2, 2) square to the centre line at a chainage, left bank first, over the width of the mesh.
+
+    Nodes ``xy`` (n, 2) within ``near_m`` of the chainage set its ends; None where there are none.
+    """
+    s, n = centre_line.locate(xy)
+    near = np.abs(s - chainage) <= near_m
+    if not near.any():
+        return None
+    return centre_line.at(np.array([chainage] * 2), np.array([float(n[near].max()) + 1.0, float(n[near].min()) - 1.0]))
 
 
 def proposed_centre_line(xy: np.ndarray, axis: np.ndarray) -> CentreLine:

@@ -79,7 +79,7 @@ def section_figures(section: Section, *, sf: StreamFunction | None = None, setti
     """
     g = (settings or Settings())["gravity_m_s2"]
     s, wet = section, section.wet & (section.depth.max(axis=1) > 0)
-    width, depth, flow = s.widths[wet], s.depth[wet], s.flow[wet]
+    width, depth = s.widths[wet], s.depth[wet]
     discharge = float(s.face_flow @ s.widths)
     mid, mean = velocity_area(*verticals(section))
     top, area = float(width.sum()), float(width @ depth.mean(axis=1))

@@ -1,0 +1,131 @@
+"""leewater section: cross-sections and profiles of a run."""
+
+from __future__ import annotations
+
+import argparse
+import json
+import sys
+from pathlib import Path
+
+HELP = "a cross-section or a profile: discharge three ways, area, levels, head"
+
+
+def arguments(parser: argparse.ArgumentParser) -> None:
+    parser.add_argument("file", metavar="FILE", help="results file; one that a review lists is read with the review's lines")
+    parser.add_argument(
+        "--line", action="append", metavar='NAME|"X1,Y1 X2,Y2 ..."',
+        help="a section of the review by name, or world coordinates in m; may be repeated (default: the review's sections)",
+    )
+    which = parser.add_mutually_exclusive_group()
+    which.add_argument("--frame", type=int, metavar="N", help="frame N, counted from 0 (default: the last)")
+    which.add_argument("--time", metavar="T", help="the frame nearest to T: seconds from the start, or an ISO date and time")
+    which.add_argument("--all", action="store_true", help="every frame")
+    parser.add_argument("--profile", action="store_true", help="take the lines as profiles along the flow")
+    parser.add_argument("--json", metavar="FILE", help="write the figures as JSON (- for standard output)")
+    parser.add_argument("--out", metavar="DIR", help="write sections.csv (or profile-NAME.csv) here")
+
+
+def run(args: argparse.Namespace) -> int:
+    from hydro.ledger.report import source_of
+    from hydro.review import open_any, write_whole
+    from hydro.section.table import section_table
+
+    from . import frame_index
+
+    review, run_ = open_any(args.file)
+    if run_ is None:
+        raise ValueError(f"{args.file} is a review; give one of its results files: {', '.join(f for e in review.runs for f in e.files)}.")
+    lines = _lines(args.line, review, run_)
+    if args.profile:
+        return _profiles(args, run_, lines)
+    centre = review.reach.centre_line if review else None
+    frames = range(run_.n_frames) if args.all else [frame_index(run_, args)]
+    table = section_table(run_, lines, frames, centre_line=centre, psi_of=_psi_of(run_, review))
+    if args.out:
+        folder = Path(args.out)
+        folder.mkdir(parents=True, exist_ok=True)
+        write_whole(folder / "sections.csv", table.to_csv(index=False))
+    if args.json:
+        rows = json.loads(table.to_json(orient="records", double_precision=15))
+        content = {"schema": "leewater/sections/1", "source": source_of(run_), "settings": dict(run_.settings), "sections": rows}
+        text = json.dumps(content, indent=1, allow_nan=False)
+        if args.json == "-":
+            print(text)
+            return 0
+        write_whole(Path(args.json), text + "\n")
+    _print(table)
+    return 0
+
+
+def _lines(given, review, run_):
+    import numpy as np
+
+    if not given:
+        if review is None or not review.reach.layer("sections"):
+            raise ValueError('no section was named; give --line "x1,y1 x2,y2" in world coordinates.')
+        return [(s.name, np.asarray(s.geometry.coords)[:, :2]) for s in review.reach.layer("sections")]
+    out = []
+    for text in given:
+        if "," in text:
+            try:
+                points = np.array([[float(v) for v in pair.split(",")] for pair in text.split()])
+            except ValueError as error:
+                raise ValueError(f'--line {text!r} is no list of points; write it as "x1,y1 x2,y2".') from error
+            out.append((text, run_.mesh.to_local(points.reshape(-1, 2))))
+        elif review is None:
+            raise ValueError(f"section {text!r}: {run_.name} stands in no review; give coordinates.")
+        else:
+            out.append((text, np.asarray(review.reach.find("sections", text).geometry.coords)[:, :2]))
+    return out
+
+
+def _psi_of(run_, review):
+    from hydro.ledger.frames import depth_rate, plan_for
+    from hydro.streamfunction import stream_function
+
+    plans = []
+
+    def psi(index):
+        frame = run_.frame(index)
+        if not plans:
+            plans.append(plan_for(run_, frame, review.reach if review else None))
+        return stream_function(frame, plan=plans[0], depth_rate=depth_rate(run_, frame.index, frame))
+
+    return None if "maximum" in run_.times.kinds else psi
+
+
+def _profiles(args, run_, lines) -> int:
+    import pandas as pd
+    from hydro.review import write_whole
+    from hydro.section.profile import profile
+
+    from . import frame_index
+
+    frame = run_.frame(frame_index(run_, args))
+    for name, points in lines:
+        p = profile(frame, points, settings=run_.settings)
+        loss = p.loss()
+        print(f"{name}: {p.distance[-1]:.1f} m, head lost {'n/a' if loss is None else f'{loss:.3f} m'}, jumps at {[round(j, 1) for j in p.jumps]}")
+        if args.out:
+            columns = ("distance", "bed", "depth", "level", "critical_level", "head", "speed", "froude")
+            table = pd.DataFrame({f"{c}_m" if c not in ("speed", "froude") else c: getattr(p, c) for c in columns})
+            folder = Path(args.out)
+            folder.mkdir(parents=True, exist_ok=True)
+            write_whole(folder / f"profile-{name.replace(' ', '-')}.csv", table.to_csv(index=False))
+    return 0
+
+
+def _print(table) -> None:
+    from hydro.cautions import caution
+    from hydro.figure import printed
+
+    shown = {
+        "discharge_m3_s": "Q m3/s", "discharge_psi_m3_s": "by psi", "discharge_mid_section_m3_s": "mid-section", "area_m2": "area m2",
+        "width_m": "width m", "mean_velocity_m_s": "mean m/s", "froude": "Froude", "mean_level_m": "level m", "head_m": "head m",
+    }
+    print("".join(f"{h:>14}" for h in ("section", "time", *shown.values())))
+    for row in table.to_dict("records"):
+        when = (row["time"] or f"{row['seconds']:g} s")[-9:]
+        levels = {k: f"{row[k]:.3f}" if row[k] == row[k] and row[k] is not None else "n/a" for k in ("mean_level_m", "head_m")}
+        print("".join(f"{v:>14}" for v in (str(row["section"])[:13], when, *(levels.get(k) or printed(row[k]) for k in shown))))
+    print(f"  {caution('section-discharge').text}", file=sys.stdout)
