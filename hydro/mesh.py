@@ -241,7 +241,7 @@ def _padded(face_nodes, n_nodes: int) -> tuple[np.ndarray, np.ndarray]:
 
 
 def _refuse_flat(areas, xy, faces, count, world) -> None:
-    span = np.ptp(xy, axis=0).max()
+    span = np.ptp(xy[faces[faces >= 0]], axis=0).max()
     flat = np.flatnonzero(np.abs(areas) <= 1e-14 * span * span)
     if flat.size:
         x, y = world[faces[flat[0], : count[flat[0]]]].mean(axis=0)
@@ -251,8 +251,7 @@ def _refuse_flat(areas, xy, faces, count, world) -> None:
 
 
 def _corner_means(xy: np.ndarray, faces: np.ndarray, count: np.ndarray) -> np.ndarray:
-    weight = (faces >= 0)[..., None]
-    return (xy[faces] * weight).sum(axis=1) / count[:, None]
+    return np.where((faces >= 0)[..., None], xy[faces], 0.0).sum(axis=1) / count[:, None]
 
 
 def _number_nodes(faces: np.ndarray, n_nodes: int) -> tuple[np.ndarray, np.ndarray]:

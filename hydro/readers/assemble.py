@@ -59,7 +59,7 @@ def make_run(parts: Parts) -> Run:
     """
     node_bed, face_bed = _bed(parts)
     frames = _Frames(parts, node_bed, face_bed)
-    parts.notes.extend(frames.notes)
+    parts.notes.extend(_derivations(parts))
     first = frames(0)
     parts.notes.extend(faults.check_frame(parts.file, parts.mesh, first, parts.settings["wet_depth_m"]))
     return Run(
@@ -69,115 +69,139 @@ def make_run(parts: Parts) -> Run:
     )
 
 
+@dataclass(frozen=True, eq=False)
+class _Flow:
+    """The components of the flow (none: edge discharges alone) and whether they are velocities."""
+
+    components: tuple[Field, ...]
+    of_velocity: bool
+
+    @property
+    def stored_on(self) -> str:
+        return self.components[0].location if self.components else "edge"
+
+    @property
+    def place(self) -> str:
+        """Where depth must stand with it."""
+        return "node" if self.stored_on == "node" else "face"
+
+
+def _flow(parts: Parts) -> _Flow:
+    """Unit discharge before velocity before edge discharge alone."""
+    for kind in ("unit_discharge", "velocity"):
+        x, y = (parts.fields.get(f"{kind}_{axis}") for axis in "xy")
+        if x is not None and y is not None:
+            if x.location != y.location or x.location == "edge":
+                raise ValueError(
+                    f"{parts.file}: {x.name} stands on {x.location}s and {y.name} on {y.location}s; export both components "
+                    "on faces (or both on nodes)."
+                )
+            return _Flow((x, y), kind == "velocity")
+        one = x or y
+        if one is not None:
+            there, lacking = "xy" if x is not None else "yx"
+            raise ValueError(
+                f"{parts.file}: {kind.replace('_', ' ')} has its {there} component ({one.name}) but not {lacking}; export "
+                f"both, or name it with mapping.{kind}_{lacking}.variable."
+            )
+    if "edge_discharge" in parts.fields:
+        return _Flow((), False)
+    raise ValueError(
+        f"{parts.file} has no velocity, unit discharge or edge discharge that can be recognised; export one, or name it "
+        "with mapping.velocity_x.variable and mapping.velocity_y.variable."
+    )
+
+
+def _water(parts: Parts, flow: _Flow) -> Field:
+    """The field that depth comes from: depth itself, else level."""
+    source = parts.fields.get("depth") or parts.fields.get("level")
+    if source is None:
+        what = "velocity" if flow.of_velocity else "discharge"
+        raise ValueError(
+            f"{parts.file} has {what} but neither depth nor water level that can be recognised; export one, or name it with "
+            "mapping.depth.variable or mapping.level.variable."
+        )
+    if source.location == "edge":
+        raise ValueError(f"{parts.file}: {source.name} stands on edges; export depth or level on faces or nodes.")
+    return source
+
+
 class _Frames:
     """Raw frames of a run, one at a time."""
 
     def __init__(self, parts: Parts, node_bed: np.ndarray, face_bed: np.ndarray) -> None:
-        self._file, self._mesh, self._fields = parts.file, parts.mesh, parts.fields
+        self._file, self._mesh = parts.file, parts.mesh
         self._bed = {"node": node_bed, "face": face_bed}
         self._wet = parts.settings["wet_depth_m"]
-        self.notes: list[Note] = []
-        self._flow = self._flow_fields()
-        self.stored_on = self._flow[0].location if self._flow else "edge"
-        self._place = "node" if self.stored_on == "node" else "face"
-        self._say_derivations()
+        self._flow = _flow(parts)
+        self._water = _water(parts, self._flow)
+        self._from_level = "depth" not in parts.fields
+        self._edge = parts.fields.get("edge_discharge")
 
     def __call__(self, index: int) -> RawFrame:
         depth = self._depth(index)
         edge = self._edge_discharge(index)
-        if not self._flow:
-            return RawFrame("edge", depth, None, edge)
-        flow = np.column_stack([self._read(f, index) for f in self._flow])
-        if self._of_velocity:
-            faults.check_velocity(self._file, self._flow[0].name, index, flow, depth, self._wet)
+        stored_on, components = self._flow.stored_on, self._flow.components
+        if not components:
+            return RawFrame(stored_on, depth, None, edge)
+        flow = np.column_stack([self._read(f, index) for f in components])
+        if self._flow.of_velocity:
+            faults.check_velocity(self._file, components[0].name, index, flow, depth, self._wet)
             flow *= depth[:, None]
-            flow[depth == 0] = 0.0
-        return RawFrame(self.stored_on, depth, flow, edge)
-
-    def _flow_fields(self) -> tuple[Field, ...]:
-        fields = self._fields
-        for kind in ("unit_discharge", "velocity"):
-            pair = [fields.get(f"{kind}_{axis}") for axis in "xy"]
-            if any(pair) and not all(pair):
-                there, lacking = ("x", "y") if pair[0] else ("y", "x")
-                raise ValueError(
-                    f"{self._file}: {kind.replace('_', ' ')} has its {there} component ({(pair[0] or pair[1]).name}) but not "
-                    f"{lacking}; export both, or name it with mapping.{kind}_{lacking}.variable."
-                )
-            if all(pair):
-                if pair[0].location != pair[1].location or pair[0].location == "edge":
-                    raise ValueError(
-                        f"{self._file}: {pair[0].name} stands on {pair[0].location}s and {pair[1].name} on "
-                        f"{pair[1].location}s; export both components on faces (or both on nodes)."
-                    )
-                self._of_velocity = kind == "velocity"
-                return tuple(pair)
-        self._of_velocity = False
-        if "edge_discharge" in fields:
-            return ()
-        raise ValueError(
-            f"{self._file} has no velocity, unit discharge or edge discharge that can be recognised; export one, or name "
-            "it with mapping.velocity_x.variable and velocity_y."
-        )
-
-    def _say_derivations(self) -> None:
-        depth, level = self._fields.get("depth"), self._fields.get("level")
-        say = lambda text, name="": self.notes.append(Note(text, name))  # noqa: E731
-        if depth is None and level is None:
-            what = "velocity" if self._of_velocity else "discharge"
-            raise ValueError(
-                f"{self._file} has {what} but neither depth nor water level that can be recognised; export one, or name it "
-                "with mapping.depth.variable or mapping.level.variable."
-            )
-        source = depth or level
-        if source.location == "edge":
-            raise ValueError(f"{self._file}: {source.name} stands on edges; export depth or level on faces or nodes.")
-        if depth is None:
-            say("depth = level - bed, 0 where negative or missing", level.name)
-        elif level is None:
-            say("level = bed + depth", depth.name)
-        else:
-            say(f"level = bed + depth; the file's own level {level.name} is not used", depth.name)
-        if source.location != self._place:
-            rule = "the area mean of nodes" if self._place == "face" else "carried from faces exactly for linear fields"
-            say(f"{source.name} stands on {source.location}s and the flow on {self.stored_on}s: depth is {rule}", source.name)
-        if self._of_velocity:
-            say("unit discharge = depth x velocity", self._flow[0].name)
-        elif not self._flow:
-            say("unit discharge of faces from the discharges of their edges", self._fields["edge_discharge"].name)
-        else:
-            say("velocity = unit discharge / depth", self._flow[0].name)
-        if "edge_discharge" in self._fields:
-            say(
-                "edge discharge counts positive from left to right of an edge, walking from its first node to its second",
-                self._fields["edge_discharge"].name,
-            )
+        flow[depth == 0] = 0.0
+        return RawFrame(stored_on, depth, flow, edge)
 
     def _read(self, f: Field, index: int) -> np.ndarray:
         return f.read(index)[_order(self._mesh, f.location)]
 
     def _depth(self, index: int) -> np.ndarray:
         """Depth where the flow stands, m; 0 where it is missing or negative."""
-        source = self._fields.get("depth") or self._fields["level"]
+        source = self._water
         values = self._read(source, index)
-        if "depth" not in self._fields:
-            values = values - self._bed[source.location]
-        # fmax takes the number where the other is missing.
-        depth = np.fmax(values, 0.0)
-        if source.location == self._place:
+        if self._from_level:
+            values -= self._bed[source.location]
+        depth = np.fmax(values, 0.0)  # fmax takes the number where the other is missing
+        if source.location == self._flow.place:
             return depth
-        if self._place == "face":
+        if source.location == "node":
             return self._mesh.triangle_to_face(depth[self._mesh.triangles].mean(axis=1))
         level = (depth + self._bed["face"])[:, None]
         at_nodes = to_nodes(self._mesh, level, depth > self._wet)[:, 0] - self._bed["node"]
         return np.fmax(at_nodes, 0.0)
 
     def _edge_discharge(self, index: int) -> np.ndarray | None:
-        f = self._fields.get("edge_discharge")
-        if f is None:
+        if self._edge is None:
             return None
-        values = np.nan_to_num(self._read(f, index))
-        return values * self._mesh.edge_length if f.per_length else values
+        values = np.nan_to_num(self._read(self._edge, index))
+        return values * self._mesh.edge_length if self._edge.per_length else values
+
+
+def _derivations(parts: Parts) -> list[Note]:
+    """What is derived and by which rule, for the reader of the figures."""
+    flow = _flow(parts)
+    source, level = _water(parts, flow), parts.fields.get("level")
+    notes = []
+    if "depth" not in parts.fields:
+        notes.append(Note("depth = level - bed, 0 where negative or missing", source.name))
+    elif level is None:
+        notes.append(Note("level = bed + depth", source.name))
+    else:
+        notes.append(Note(f"level = bed + depth; the file's own level {level.name} is not used", source.name))
+    if source.location != flow.place:
+        rule = "the area mean of nodes" if flow.place == "face" else "carried from faces exactly for linear fields"
+        text = f"{source.name} stands on {source.location}s and the flow on {flow.stored_on}s: depth is {rule}"
+        notes.append(Note(text, source.name))
+    edge = parts.fields.get("edge_discharge")
+    if flow.of_velocity:
+        notes.append(Note("unit discharge = depth x velocity", flow.components[0].name))
+    elif flow.components:
+        notes.append(Note("velocity = unit discharge / depth", flow.components[0].name))
+    elif edge is not None:
+        notes.append(Note("unit discharge of faces from the discharges of their edges", edge.name))
+    if edge is not None:
+        text = "edge discharge counts positive from left to right of an edge, walking from its first node to its second"
+        notes.append(Note(text, edge.name))
+    return notes
 
 
 def _order(mesh: Mesh, location: str) -> np.ndarray:
@@ -187,13 +211,13 @@ def _order(mesh: Mesh, location: str) -> np.ndarray:
 def _bed(parts: Parts) -> tuple[np.ndarray, np.ndarray]:
     """Node and face bed, m; from level and depth where the file has no bed."""
     mesh, fields = parts.mesh, parts.fields
-    given: dict[str, np.ndarray | None] = {"node": None, "face": None}
-    for location in given:
+    given: dict[str, np.ndarray] = {}
+    for location in ("node", "face"):
         f = fields.get(f"{location} bed")
         if f is not None:
             given[location] = f.read(0)[_order(mesh, location)]
             faults.check_bed(parts.file, f.name, location, given[location], mesh)
-    if given["node"] is None and given["face"] is None:
+    if not given:
         depth, level = fields.get("depth"), fields.get("level")
         if depth is None or level is None or depth.location != level.location or depth.location == "edge":
             raise ValueError(
@@ -204,12 +228,11 @@ def _bed(parts: Parts) -> tuple[np.ndarray, np.ndarray]:
         faults.check_bed(parts.file, f"{level.name} - {depth.name}", depth.location, derived, mesh)
         given[depth.location] = derived
         parts.notes.append(Note("bed = level - depth of the first frame", level.name))
-    made = {"node": "face", "face": "node"}
-    for location, other in made.items():
-        if given[location] is None:
+    for location, other in (("node", "face"), ("face", "node")):
+        if location not in given:
             rule = "the area mean of its nodes" if location == "face" else "carried from faces exactly for linear fields"
             parts.notes.append(Note(f"{location} bed is made from the {other} bed: {rule}", ""))
-    return face_bed_and_node_bed(mesh, given["node"], given["face"])
+    return face_bed_and_node_bed(mesh, given.get("node"), given.get("face"))
 
 
 def _roughness(parts: Parts) -> np.ndarray | None:

@@ -43,9 +43,11 @@ def ground_of(store: Store, x: Stored, y: Stored, using: list[Stored], said: Sai
             )
     variable = _grid_mapping(store, [x, y, *using])
     system = _system(store, variable, said)
+    if system is not None:
+        _refuse_degrees(system, store.path.name)
     units = [said.unit(axis) or c.text("units") for axis, c in (("x", x), ("y", y))]
     factor = _factor(units, x, system)
-    return ground(system, factor, _datum(variable, using, said), x.name, f"{store.path.name}")
+    return ground(system, factor, _datum(variable, using, said), x.name, store.path.name)
 
 
 def ground(system: pyproj.CRS | None, factor: float, datum: str, variable: str, file: str) -> Ground:
@@ -56,16 +58,21 @@ def ground(system: pyproj.CRS | None, factor: float, datum: str, variable: str, 
     if system is None:
         text = "the file names no coordinate system: its coordinates are taken as local metres, and exports carry none"
         return Ground(None, factor, datum, (Note(text, variable), *_converted(factor, variable)))
+    _refuse_degrees(system, file)
     flat, vertical = _parts(system)
+    notes = _converted(factor, variable)
+    if factor != 1.0:
+        flat = _in_metres(flat)
+    return Ground(flat.to_wkt("WKT2_2019"), factor, datum or vertical, notes)
+
+
+def _refuse_degrees(system: pyproj.CRS, file: str) -> None:
+    flat, _ = _parts(system)
     if not flat.is_projected and not flat.is_engineering:
         raise ValueError(
             f"{file}: its coordinate system {flat.name!r} is in degrees, not metres; project the mesh (to the national "
             "grid or a UTM zone) and export again."
         )
-    notes = _converted(factor, variable)
-    if factor != 1.0:
-        flat = _in_metres(flat)
-    return Ground(flat.to_wkt("WKT2_2019"), factor, datum or vertical, notes)
 
 
 def read_system(text: str, where: str) -> pyproj.CRS:
@@ -82,18 +89,18 @@ def system_factor(system: pyproj.CRS) -> float:
     return float(flat.axis_info[0].unit_conversion_factor) if flat.axis_info else 1.0
 
 
-def convergence_deg(crs: str, xy: tuple[float, float]) -> float:
+def convergence_deg(crs: str, x: float, y: float) -> float:
     """Angle from grid north to true north at a place, degrees, clockwise; 0 where it cannot be had."""
     system = pyproj.CRS.from_wkt(crs)
     try:
         to_degrees = pyproj.Transformer.from_crs(system, system.geodetic_crs, always_xy=True)
-        return -float(pyproj.Proj(system).get_factors(*to_degrees.transform(*xy)).meridian_convergence)
+        return -float(pyproj.Proj(system).get_factors(*to_degrees.transform(x, y)).meridian_convergence)
     except (ProjError, AttributeError):
         return 0.0
 
 
 def _grid_mapping(store: Store, variables: list[Stored]) -> Stored | None:
-    names = {}
+    names: dict[str, Stored] = {}
     for variable in variables:
         text = variable.text("grid_mapping")
         if text:
@@ -135,13 +142,13 @@ def _factor(units: list[str], x: Stored, system: pyproj.CRS | None) -> float:
     stated = {factor_to_si(u, "x") for u in units if u}
     if len(stated) > 1:
         raise ValueError(f"{x} and y are in different units ({units[0]} and {units[1]}); export both in metres.")
-    of_system = None if system is None else system_factor(system)
+    of_system = system_factor(system) if system is not None and system.is_projected else None
     if not stated:
         if of_system is None:
             raise ValueError(f'{x} has no units and the file no coordinate system; say mapping.x.unit = "m" if it is in metres.')
         return of_system
     factor = stated.pop()
-    if of_system is not None and abs(factor / of_system - 1) > 1e-9 and system.is_projected:
+    if of_system is not None and abs(factor / of_system - 1) > 1e-9:
         raise ValueError(
             f"{x} is in {units[0]}, but its coordinate system counts {_named(of_system)}; correct the one that is wrong."
         )

@@ -117,12 +117,12 @@ def _in_order(pieces: list[Piece], kind: str | None) -> tuple[list[Piece], np.nd
         raise ValueError(f"{lacking} has undated times and another file of the run dated ones; export all of them alike.")
     if len(pieces) > 1 and not all(dated) and len({p.times.zero for p in pieces}) > 1:
         raise ValueError("the files of the run count time from different starts; export all of them alike.")
-    base = pieces[0].times.instants[0] if dated[0] else None
+    all_instants = [p.times.instants for p in pieces if p.times.instants is not None]
 
     def starts(p: Piece) -> float:
-        if base is None:
+        if p.times.instants is None:
             return float(p.times.seconds[0])
-        return float((p.times.instants[0] - base) / np.timedelta64(1, "ns")) * 1e-9
+        return float((p.times.instants[0] - all_instants[0][0]) / np.timedelta64(1, "ns")) * 1e-9
 
     pieces = sorted(pieces, key=starts)
     notes: list[Note] = []
@@ -135,9 +135,9 @@ def _in_order(pieces: list[Piece], kind: str | None) -> tuple[list[Piece], np.nd
     counts = [len(s) for s in seconds]
     first = np.concatenate([[0], np.cumsum(counts)[:-1]]).astype(int)
     joined = np.concatenate(seconds)
-    instants = None
-    if base is not None:
-        instants = np.concatenate([p.times.instants[: len(s)] for p, s in zip(pieces, seconds, strict=True)])
+    held = [(p.times.instants, len(s)) for p, s in zip(pieces, seconds, strict=True)]
+    dates = [instants[:n] for instants, n in held if instants is not None]
+    instants = np.concatenate(dates) if dates else None
     intervals = np.concatenate([p.times.intervals_s[: len(s)] for p, s in zip(pieces, seconds, strict=True)])
     intervals[np.array(kinds) == "instant"] = np.nan
     _note_gaps(pieces, joined, first, notes)
@@ -188,7 +188,7 @@ def _of_velocity_and_bed(piece: Piece, ground: Ground, mesh: Mesh) -> list[Note]
     notes = []
     velocity = piece.choices.get("velocity_x")
     if velocity is not None and "eastward" in velocity.variable.text("standard_name"):
-        turn = 0.0 if ground.crs is None else convergence_deg(ground.crs, mesh.to_world(mesh.node_xy.mean(axis=0)))
+        turn = 0.0 if ground.crs is None else convergence_deg(ground.crs, *mesh.to_world(mesh.node_xy.mean(axis=0)))
         text = f"eastward velocity is taken along grid east; true north lies {turn:.2f} degrees clockwise of grid north: ask"
         notes.append(Note(text, velocity.variable.name))
     for location in ("node", "face"):
@@ -203,12 +203,14 @@ def _of_velocity_and_bed(piece: Piece, ground: Ground, mesh: Mesh) -> list[Note]
 
 def _depth_is(piece: Piece, said: Said, notes: list[Note]) -> str:
     source = piece.choices.get("depth") or piece.choices.get("level")
-    stated = said.get("depth", "is") or (source and depth_is(source.variable))
+    if said.get("depth", "is") or source is None:
+        return said.get("depth", "is", "mean")
+    stated = depth_is(source.variable, source.placed.dimensions)
     if stated:
         return stated
-    assumed = "point" if source is not None and source.location == "node" else "mean"
+    assumed = "point" if source.location == "node" else "mean"
     words = {"point": "point values at nodes", "mean": "means over faces"}[assumed]
-    notes.append(Note(f"the file does not say what depth is within a face; taken as {words}", source.variable.name if source else ""))
+    notes.append(Note(f"the file does not say what depth is within a face; taken as {words}", source.variable.name))
     return assumed
 
 

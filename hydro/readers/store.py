@@ -48,16 +48,22 @@ class Store:
                     yield file
             else:
                 with netcdf_file(str(self.path), "r", mmap=True) as file:
-                    yield {name: variable.data for name, variable in file.variables.items()}
+                    arrays = {name: variable.data for name, variable in file.variables.items()}
+                    try:
+                        yield arrays
+                    finally:
+                        arrays.clear()  # a map on disk can only be closed when no array refers to it
         except OSError as error:
-            raise ValueError(f"{self.path.name}: a part cannot be read ({_first_line(error)}); copy the file again.") from error
+            raise ValueError(
+                f"{self.path.name}: a part cannot be read ({_first_line(error)}); copy or export the file again."
+            ) from error
 
 
 @dataclass(frozen=True, eq=False)
 class Stored:
     """A variable in a file: what the header says, and its values on request."""
 
-    store: Store | None
+    store: Store
     name: str
     dimensions: tuple[str, ...]
     shape: tuple[int, ...]
@@ -73,7 +79,7 @@ class Stored:
     @property
     def file(self) -> str:
         """Name of the file, for messages."""
-        return self.store.path.name if self.store else ""
+        return self.store.path.name
 
     def text(self, attribute: str) -> str:
         """An attribute as text; empty where it is missing."""
@@ -221,7 +227,7 @@ def _open_hdf5(path: Path) -> Store:
 def _open_classic(path: Path) -> Store:
     with netcdf_file(str(path), "r", mmap=True) as file:
         header = [
-            (name, tuple(v.dimensions), tuple(v.shape), v.data.dtype.newbyteorder("="), _attributes(v._attributes), None)
+            (name, tuple(v.dimensions), tuple(v.shape), v.data.dtype.newbyteorder("="), _attributes(v._attributes), ())
             for name, v in file.variables.items()
         ]
         attributes = _attributes(file._attributes)
@@ -232,7 +238,7 @@ def _store(path, attributes, header, groups, hdf5) -> Store:
     variables: dict[str, Stored] = {}
     store = Store(path, attributes, variables, groups, hdf5, _stamp(path))
     for name, dimensions, shape, dtype, own, chunks in header:
-        variables[name] = Stored(store, name, dimensions, shape, np.dtype(dtype), own, chunks)
+        variables[name] = Stored(store, name, dimensions, shape, np.dtype(dtype), own, chunks or None)
     return store
 
 

@@ -19,15 +19,24 @@ _REFERENCE = re.compile(
     r"\s*(?P<zone>[A-Za-z]+)?\s*(?P<offset>[+-]?\d{1,2}:\d{2}|[+-]\d{1,4}|\d{3,4})?$"
 )
 _UNDATED = ("none", "tai")
-_METHOD = re.compile(r"\b(\w+)(?:\s*:\s*\w+)*\s*:\s*(point|mean|maximum|max)\b", re.IGNORECASE)
+_METHOD = re.compile(r"((?:\w+\s*:\s*)+)(point|mean|maximum|max)\b", re.IGNORECASE)
+
+
+@dataclass(frozen=True, slots=True)
+class Reference:
+    """What times are counted from: a CF unit without zone, minutes east of UTC, and the calendar."""
+
+    unit: str
+    offset_minutes: int
+    calendar: str
 
 
 @dataclass(frozen=True, eq=False)
 class FileTimes:
     """Times of one file's frames.
 
-    ``seconds`` count from the file's own zero; ``reference`` is the UTC instant of that zero (None:
-    undated). ``intervals_s`` are NaN where the file has no bounds.
+    ``seconds`` count from the file's own zero, which ``zero`` names; ``instants`` are None where the file
+    has no dates. ``intervals_s`` are NaN where the file has no bounds.
     """
 
     dimension: str | None
@@ -85,26 +94,30 @@ def read_times(store: Store, dimension: str | None, said: Said) -> FileTimes:
     factor, reference, notes = _unit_and_reference(variable, unit)
     seconds = values * factor
     intervals = _intervals(store, variable, len(values), factor)
-    instants, zero = None, ""
+    instants = None
     if reference is not None:
-        instants, zero, more = _instants(variable, values, unit, reference)
+        instants, more = _instants(variable, values, reference)
         notes += more
-    return FileTimes(dimension, seconds, instants, intervals, zero, tuple(notes))
+    return FileTimes(dimension, seconds, instants, intervals, "" if reference is None else str(reference), tuple(notes))
 
 
 def kind_of(variable: Stored, dimension: str | None) -> str | None:
     """Kind of frame that a variable's cell_methods name for time: instant, mean, maximum; None if not said."""
-    for method in re.finditer(r"((?:\w+\s*:\s*)+)(point|mean|maximum|max)\b", variable.text("cell_methods"), re.I):
-        names = {n.strip() for n in method[1].split(":")}
-        if names & {"time", dimension or "time"}:
-            return {"point": "instant", "mean": "mean"}.get(method[2].lower(), "maximum")
-    return None
+    method = _method(variable, {"time", dimension or "time"})
+    return "instant" if method == "point" else method
 
 
-def depth_is(variable: Stored) -> str | None:
+def depth_is(variable: Stored, dimensions: tuple[str, ...]) -> str | None:
     """What a depth is within a face by its cell_methods: point, mean, maximum; None if not said."""
-    found = re.search(r"\barea\s*:\s*(point|mean|maximum|max)\b", variable.text("cell_methods"), re.I)
-    return None if found is None else found[1].lower().replace("max", "maximum").replace("imumimum", "imum")
+    return _method(variable, {"area", *dimensions})
+
+
+def _method(variable: Stored, over: set[str]) -> str | None:
+    """The first of point, mean and maximum that cell_methods give for any of these names."""
+    for method in _METHOD.finditer(variable.text("cell_methods")):
+        if over & {name.strip() for name in method[1].split(":")}:
+            return {"max": "maximum"}.get(method[2].lower(), method[2].lower())
+    return None
 
 
 def _is_time(store: Store, dimension: str, said: Said) -> bool:
@@ -171,49 +184,48 @@ def _check_order(variable: Stored, values: np.ndarray) -> None:
         )
 
 
-def _unit_and_reference(variable: Stored, unit: str) -> tuple[float, str | None, list[Note]]:
+def _unit_and_reference(variable: Stored, unit: str) -> tuple[float, Reference | None, list[Note]]:
     since = _SINCE.match(unit)
+    name = since["unit"] if since else unit
     try:
-        factor = factor_to_si(since["unit"] if since else unit, "time")
+        factor = factor_to_si(name, "time")
     except ValueError as error:
         raise ValueError(
             f"{variable}: {error}; give times in seconds, minutes, hours or days (months and years have no fixed length)."
         ) from None
     if since is None:
         return factor, None, [Note("times are undated: seconds from the start of the run", variable.name)]
-    if variable.text("calendar").lower() in _UNDATED:
-        calendar = variable.text("calendar")
+    calendar = variable.text("calendar").lower() or "standard"
+    if calendar in _UNDATED:
         return factor, None, [Note(f"calendar {calendar!r} gives no UTC instants; times are undated", variable.name)]
-    if not _REFERENCE.match(since["reference"]):
-        return factor, None, [
-            Note(f"{since['reference']!r} is no date that can be read; times are undated seconds", variable.name)
-        ]
-    return factor, since["reference"], []
-
-
-def _instants(variable: Stored, values: np.ndarray, unit: str, reference: str):
-    """Dated UTC instants (datetime64), the zero in words, and notes; undated where the calendar has other days."""
-    part = _REFERENCE.match(reference)
+    part = _REFERENCE.match(since["reference"])
+    if part is None:
+        text = f"{since['reference']!r} is no date that can be read; times are undated seconds"
+        return factor, None, [Note(text, variable.name)]
     notes = []
     if part["zone"] and part["zone"].upper() != "Z":
-        notes.append(
-            Note(f"zone name {part['zone']!r} in the time's unit is not of the standard; it is read as UTC", variable.name)
-        )
-    shift = np.timedelta64(_offset_minutes(part["offset"]), "m")
-    calendar = variable.text("calendar").lower() or "standard"
-    calendar = "proleptic_gregorian" if calendar == "utc" else calendar
-    clean = f"{_SINCE.match(unit)['unit']} since {part['date']} {part['clock'] or '00:00:00'}"
+        text = f"zone name {part['zone']!r} in the time's unit is not of the standard; it is read as UTC"
+        notes.append(Note(text, variable.name))
+    clean = f"{name} since {part['date']} {part['clock'] or '00:00:00'}"
+    return factor, Reference(clean, _offset_minutes(part["offset"]), "proleptic_gregorian" if calendar == "utc" else calendar), notes
+
+
+def _instants(variable: Stored, values: np.ndarray, reference: Reference) -> tuple[np.ndarray | None, list[Note]]:
+    """Dated UTC instants (datetime64), and notes; undated where the calendar has other days."""
+    calendar = reference.calendar
     try:
-        dates = cftime.num2date(values, clean, calendar, only_use_cftime_datetimes=True)
+        dates = cftime.num2date(values, reference.unit, calendar, only_use_cftime_datetimes=True)
     except (ValueError, OverflowError) as error:
         raise ValueError(f"{variable}: its times cannot be read ({error}); correct units or calendar.") from None
     try:
-        instants = np.array([np.datetime64(_iso(d), "us") for d in np.atleast_1d(dates)]) - shift
+        local = np.array([np.datetime64(_iso(d), "us") for d in np.atleast_1d(dates)])
     except ValueError:
-        return None, "", [*notes, Note(f"calendar {calendar!r} has days that UTC lacks; times are undated", variable.name)]
+        return None, [Note(f"calendar {calendar!r} has days that UTC lacks; times are undated", variable.name)]
+    shift = np.timedelta64(60 * reference.offset_minutes, "s")
+    notes = []
     if calendar not in ("standard", "gregorian", "proleptic_gregorian"):
         notes.append(Note(f"dates are of the calendar {calendar!r}", variable.name))
-    return instants.astype("datetime64[ns]"), f"{part['date']} {part['clock'] or ''} {part['offset'] or ''} {calendar}", notes
+    return (local - shift).astype("datetime64[ns]"), notes
 
 
 def _iso(date) -> str:

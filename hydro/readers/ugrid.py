@@ -65,12 +65,16 @@ def placed_variables(topology: Topology, store: Store) -> tuple[list[Placed], li
 
     Variables without mesh and location are placed by their dimensions, and that is noted.
     """
-    out, notes, elsewhere = [], [], Counter()
+    out: list[Placed] = []
+    notes: list[Note] = []
+    elsewhere: Counter[str] = Counter()
     mesh = topology.store.variables[topology.name]
     own = {topology.name, *(n for value in mesh.attributes.values() if isinstance(value, str) for n in value.split())}
     by_dimension = {d: location for location, d in topology.dimensions.items()}
     for variable in store.variables.values():
-        if variable.name in own or variable.text("cf_role") or variable.name in store_dimensions(store):
+        if variable.name in own or variable.text("cf_role") or variable.name in variable.dimensions:
+            continue
+        if is_index_set(topology, variable):
             continue
         placed = _placed(topology, variable, by_dimension, notes, elsewhere)
         if placed is not None:
@@ -80,9 +84,14 @@ def placed_variables(topology: Topology, store: Store) -> tuple[list[Placed], li
     return out, notes
 
 
-def store_dimensions(store: Store) -> set[str]:
-    """Names of all dimensions that variables of a file use."""
-    return {d for v in store.variables.values() for d in v.dimensions}
+def is_index_set(topology: Topology, variable: Stored) -> bool:
+    """Whether a variable lists numbers of places: by its role, or as integers on no dimension of the mesh."""
+    return variable.text("cf_role") == "location_index_set" or (
+        variable.dtype.kind in "iu"
+        and len(variable.shape) == 1
+        and variable.text("location") in topology.sizes
+        and variable.dimensions[0] not in topology.dimensions.values()
+    )
 
 
 def _pick(store: Store, mesh: str | None) -> Stored:
@@ -230,7 +239,7 @@ def _placed(topology: Topology, variable: Stored, by_dimension, notes, elsewhere
 def _on_index_set(topology: Topology, variable: Stored, notes: list[Note]) -> Placed | None:
     """A variable on part of a location, through its index set (U11)."""
     store, name = variable.store, variable.text("location_index_set")
-    if store is None or name not in store.variables:
+    if name not in store.variables:
         raise ValueError(f"{variable}: location_index_set names {name!r}, which is not in the file; export it.")
     index = store.variables[name]
     if index.text("mesh") != topology.name or index.text("location") not in topology.sizes:

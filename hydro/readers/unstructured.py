@@ -13,7 +13,7 @@ from .mapping import Said
 from .names import Placed
 from .netcdf import join, read_piece
 from .store import Store, Stored
-from .ugrid import Topology, mesh_names, placed_variables, read_index_set, read_topology
+from .ugrid import Topology, is_index_set, mesh_names, placed_variables, read_index_set, read_topology
 
 
 def open_ugrid(
@@ -65,7 +65,7 @@ def _same_mesh(first: Topology, other: Topology) -> None:
         and np.array_equal(first.x.values(), other.x.values(), equal_nan=True)
         and np.array_equal(first.y.values(), other.y.values(), equal_nan=True)
         and (first.edges is None) == (other.edges is None)
-        and (first.edges is None or np.array_equal(first.edges, other.edges))
+        and (first.edges is None or other.edges is None or np.array_equal(first.edges, other.edges))
     )
     if not same:
         raise ValueError(
@@ -107,19 +107,13 @@ def _boundary_sets(topology: Topology, placed: list[Placed], mesh: Mesh, notes: 
             for meaning, chosen in _flagged(p.variable, flags):
                 _add(sets, meaning.replace("_", " "), boundary[chosen[file_edge]])
     for variable in topology.store.variables.values():
-        if variable.text("mesh") == topology.name and variable.text("location") == "edge" and _is_index_set(topology, variable):
+        if variable.text("mesh") == topology.name and variable.text("location") == "edge" and is_index_set(topology, variable):
             chosen = np.zeros(topology.sizes["edge"], bool)
             chosen[read_index_set(variable, topology.sizes["edge"])] = True
             _add(sets, variable.text("long_name") or variable.name, boundary[chosen[file_edge]])
     if sets:
         notes.append(Note(f"boundary stretches named by the file: {', '.join(sets)}", "", len(sets)))
     return sets
-
-
-def _is_index_set(topology: Topology, variable: Stored) -> bool:
-    return variable.text("cf_role") == "location_index_set" or (
-        variable.dtype.kind in "iu" and len(variable.shape) == 1 and variable.dimensions[0] not in topology.dimensions.values()
-    )
 
 
 def _flagged(variable: Stored, flags: np.ndarray) -> list[tuple[str, np.ndarray]]:
