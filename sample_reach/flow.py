@@ -33,7 +33,9 @@ def gradients(h, hu, hv, bed, start, near, wx, wy, cell_edge_arm, value, slope):
         slope[i] = 0.0
         flat = h[i] < DRY
         for k in range(start[i], start[i + 1]):
-            flat = flat or h[near[k]] < DRY
+            if h[near[k]] < DRY:
+                flat = True
+                break
         if flat:
             continue
         low0 = high0 = value[i, 0]
@@ -109,6 +111,10 @@ def edge_fluxes(value, slope, nu, kind, left, right, normal, length, middle, cen
     """
     for e in range(len(left)):
         i, nx, ny = left[e], normal[e, 0], normal[e, 1]
+        if value[i, 1] == 0.0 and (kind[e] == WALL or (kind[e] == INTERIOR and value[right[e], 1] == 0.0)):
+            flux[e] = 0.0
+            pace[e] = 0.0
+            continue
         ax, ay = middle[e, 0] - centre[i, 0], middle[e, 1] - centre[i, 1]
         el = value[i, 0] + slope[i, 0, 0] * ax + slope[i, 0, 1] * ay
         hl = max(value[i, 1] + slope[i, 1, 0] * ax + slope[i, 1, 1] * ay, 0.0)

@@ -169,8 +169,8 @@ class Place:
         return shapely.difference(water, shapely.union_all(solid))
 
     def crest(self, n: np.ndarray) -> np.ndarray:
-        """Level of the weir crest: rising to the right, notched by the ramp."""
-        level = float(mean_bed(WEIR)) + 0.85 + 0.10 * np.clip((8.0 - n) / 24.0, 0, 1)
+        """Level of the weir crest: rising to the right, higher still at its right end, notched by the ramp."""
+        level = float(mean_bed(WEIR)) + 0.85 + 0.10 * np.clip((8.0 - n) / 24.0, 0, 1) + 0.12 * _ramp((-5.0 - n) / 2.0)
         first, last, drop = self.ramp_span
         inside = _ramp((n - first) / 1.0) * _ramp((last - n) / 1.0)
         return level - drop * inside

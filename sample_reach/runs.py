@@ -24,11 +24,11 @@ from .solver import Drive, Model, Topology, carry, cell_flow, topology
 ALPHA = 0.15  # eddy viscosity nu = ALPHA h u*
 LOW, BANKFULL, FLOOD_START = (6.0, 0.6), (104.0, 8.0), (38.0, 3.5)  # river and tributary, m3/s
 # Short and gate-like: river and tributary against seconds. The peak stands long enough for six shedding periods.
-FLOOD = np.array([[0, 38, 3.5], [60, 38, 3.5], [240, 124, 9.5], [390, 124, 9.5], [560, 62, 6.0], [720, 38, 3.5]], float)
-FLOOD_FRAMES = np.arange(0.0, 720.1, 12.0)
-BURST_FRAMES = np.arange(280.0, 380.01, 1.25)
-SETTLE, MEAN = {"low": 240.0, "bankfull": 60.0}, {"low": 200.0, "bankfull": 100.0}
-SPIN_UP = {"low": 1500.0, "bankfull": 700.0, "flood": 600.0}
+FLOOD = np.array([[0, 38, 3.5], [30, 38, 3.5], [170, 124, 9.5], [300, 124, 9.5], [450, 62, 6.0], [600, 38, 3.5]], float)
+FLOOD_FRAMES = np.arange(0.0, 600.1, 10.0)
+BURST_FRAMES = np.arange(200.0, 300.01, 1.25)
+SETTLE, MEAN = {"low": 180.0, "bankfull": 140.0}, {"low": 120.0, "bankfull": 90.0}
+SPIN_UP = {"low": 1200.0, "bankfull": 600.0, "flood": 400.0}
 
 
 @dataclass(frozen=True)
@@ -106,7 +106,7 @@ class Chain:
         """Uniform depth below the weir; above it at least the weir's head over the crest."""
         s, _ = geo.course().locate(model.topology.centre)
         uniform = np.interp(discharge, *self.rating) - float(geo.mean_bed(geo.LENGTH))
-        head = (discharge / (1.7 * 34)) ** (2 / 3) + float(geo.mean_bed(geo.WEIR)) + 0.8
+        head = (discharge / (1.7 * 34)) ** (2 / 3) + float(geo.mean_bed(geo.WEIR)) + 0.88
         level = geo.mean_bed(s) + uniform
         level = np.where(s < geo.WEIR, np.maximum(level, head), level)
         model.h[:] = np.maximum(level - model.bed, 0)

@@ -5,7 +5,7 @@ import pytest
 from scipy.optimize import brentq
 from scipy.spatial import Delaunay
 
-from sample_reach.flow import G, OUTFLOW, RIVER
+from sample_reach.flow import OUTFLOW, RIVER, G
 from sample_reach.solver import Drive, Model, topology
 
 
@@ -88,10 +88,11 @@ def test_a_dam_break_follows_the_closed_form_and_the_error_falls_with_the_mesh(e
     """Sources: Stoker 1957; Ritter 1892.
 
     Tolerance: a second-order scheme is of order one in L1 at a shock and at a kink (LeVeque 2002,
-    Finite Volume Methods, section 8.7); order 0.6 leaves room for the coarse meshes that keep this quick.
+    Finite Volume Methods, section 8.7); measured here 1.0 (Stoker) and 0.8 (Ritter, whose front is a thin film). The limits on the errors are 0.6 %
+    and 0.15 % of the 2 m dam.
     """
     errors = []
-    for spacing in (1.0, 0.5):
+    for spacing in (1.0, 0.5, 0.25):
         t = _grid(100, 3, spacing)
         m = _model(t, np.zeros(len(t.xy)))
         x = t.centre[:, 0] - 50
@@ -99,7 +100,8 @@ def test_a_dam_break_follows_the_closed_form_and_the_error_falls_with_the_mesh(e
         m.advance(5.0)
         errors.append(np.sum(t.area * np.abs(m.h - exact(x, m.time))) / t.area.sum())
     assert errors[0] < most
-    assert np.log2(errors[0] / errors[1]) > 0.6
+    assert errors[2] < 0.003
+    assert np.log2(errors[0] / errors[2]) / 2 > 0.7
 
 
 def test_a_long_slope_comes_to_the_depth_of_manning():
@@ -148,9 +150,9 @@ def test_the_culvert_moves_water_and_makes_none():
     upper = t.centre[:, 0] < 10
     m.h[:] = np.maximum(np.where(upper, 1.5, 0.5) - m.bed, 0)
     before, high = m.volume, np.sum((m.h * t.area)[upper])
-    m.advance(0.5)
+    m.advance(0.002)
+    # Full pipe: Q = A sqrt(2 g fall / loss), with the fall of 1 m that the cells' levels still have.
+    assert m.state[8] / 0.002 == pytest.approx(0.28 * np.sqrt(2 * G * 1.0 / 1.8), rel=0.01)
+    m.advance(3.0)
     assert m.volume == pytest.approx(before, rel=1e-13)
     assert high - np.sum((m.h * t.area)[upper]) == pytest.approx(m.state[8], rel=1e-9)
-    # Full pipe: Q = A sqrt(2 g fall / loss). In half a second the two cells' levels, and so the fall of
-    # 1 m, change by some centimetres; 6 % of discharge stands for 12 % of fall.
-    assert m.state[8] / 0.5 == pytest.approx(0.28 * np.sqrt(2 * G * 1.0 / 1.8), rel=0.06)
