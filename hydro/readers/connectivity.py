@@ -96,7 +96,7 @@ def _start(variable: Stored, numbers: np.ndarray, pads: np.ndarray, n: int, note
     except (TypeError, ValueError):
         start = -1
     if start not in (0, 1):
-        raise ValueError(f"{variable}: start_index is {stated!r}; it must be 0 or 1: correct it and export again.")
+        raise ValueError(f"{variable}: start_index is {stated}; it must be 0 or 1: correct it and export again.")
     used = numbers[~pads]
     if not used.size:
         return start

@@ -6,8 +6,10 @@ is read from it, so nothing is left locked and any number of files may make up a
 
 from __future__ import annotations
 
+import gc
 import os
 import threading
+import warnings
 from collections.abc import Iterator, Mapping
 from contextlib import contextmanager
 from dataclasses import dataclass, field
@@ -182,12 +184,15 @@ def open_store(path: Path) -> Store:
     kind = sniff(path)
     if kind not in ("hdf5", "classic"):
         raise ValueError(f"{path.name} is not a NetCDF file; export the results as NetCDF with a UGRID mesh.")
-    try:
-        return _open_hdf5(path) if kind == "hdf5" else _open_classic(path)
-    except (OSError, KeyError, RuntimeError, TypeError, IndexError, ValueError, AttributeError) as error:
-        raise ValueError(
-            f"{path.name} is cut short or damaged ({_first_line(error)}); copy or export the file again."
-        ) from error
+    # What scipy leaves half open when a header is damaged warns as it is cleared away.
+    with warnings.catch_warnings():
+        warnings.simplefilter("ignore")
+        try:
+            return _open_hdf5(path) if kind == "hdf5" else _open_classic(path)
+        except (OSError, KeyError, RuntimeError, TypeError, IndexError, ValueError, AttributeError) as error:
+            reason = _first_line(error)
+        gc.collect()
+    raise ValueError(f"{path.name} is cut short or damaged ({reason}); copy or export the file again.")
 
 
 def sniff(path: Path) -> str:
