@@ -11,7 +11,7 @@ import os
 import tempfile
 import tomllib
 from collections.abc import Callable
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
 from datetime import UTC, datetime
 from functools import cached_property
 from pathlib import Path
@@ -204,6 +204,15 @@ class Review:
         """Centre line, structures and lines; empty where the review has no lines yet."""
         path = self.folder / self.contents.lines
         return read_lines(path, self.origin) if path.is_file() else Reach(self.origin)
+
+    def entry_of(self, run: Run) -> RunEntry | None:
+        """The entry whose files a run was read from; None for a run from elsewhere."""
+        return next((e for e in self.runs if tuple(self.paths(e)) == tuple(p.resolve() for p in run.files)), None)
+
+    def reach_for(self, run: Run) -> Reach:
+        """The review's lines with only the structures of the run's design."""
+        entry = self.entry_of(run)
+        return replace(self.reach, structures=self.reach.structures_of((entry and entry.design) or None))
 
     def edit(self, change: Callable[[Any], None], *, who: str, what: str) -> Review:
         """Change review.toml through its document, keeping comments, and log it.

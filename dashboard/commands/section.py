@@ -96,6 +96,7 @@ def _psi_of(run_, review):
 
 def _profiles(args, run_, lines) -> int:
     import pandas as pd
+
     from hydro.review import write_whole
     from hydro.section.profile import profile
 

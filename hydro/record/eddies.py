@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
-from dataclasses import dataclass, replace
+from dataclasses import dataclass
 
 import numpy as np
 
@@ -40,14 +40,8 @@ def read(review: Review, entry: RunEntry, run: Run) -> Reading:
 
     The peak is the frame that holds the most water.
     """
-    reach = reach_of(review, entry)
+    reach = review.reach_for(run)
     return Reading(entry, run, reach, frame_ledger(run, peak_frame(run), reach=reach))
-
-
-def reach_of(review: Review, entry: RunEntry) -> Reach:
-    """The review's lines with the structures of the run's design only."""
-    reach = review.reach
-    return replace(reach, structures=reach.structures_of(entry.design or None))
 
 
 def peak_frame(run: Run) -> int:

@@ -1,0 +1,84 @@
+"""leewater change: what differs between two runs, on one mesh or two."""
+
+from __future__ import annotations
+
+import argparse
+import json
+import sys
+from pathlib import Path
+
+HELP = "what changes from one run to another: levels, eddies, openings, wet ground"
+
+
+def arguments(parser: argparse.ArgumentParser) -> None:
+    parser.add_argument("run_a", metavar="RUN_A", help="results file of the first run (before)")
+    parser.add_argument("run_b", metavar="RUN_B", help="results file of the second run (after)")
+    parser.add_argument("--pair", choices=("time", "discharge", "order"), default="time", help="which frames stand beside each other")
+    parser.add_argument("--frame", type=int, metavar="N", help="compare frame N of RUN_A with its partner (default: the last pair)")
+    parser.add_argument("--spacing", type=float, default=20.0, metavar="M", help="distance between level sections, m (default 20)")
+    parser.add_argument("--above", type=float, default=0.01, metavar="M", help="report how far a rise above this value reaches, m (default 0.01)")
+    parser.add_argument("--quiet", nargs=2, type=float, metavar=("S1", "S2"), help="chainages between which no change is expected, for the noise")
+    parser.add_argument("--json", metavar="FILE", help="write the comparison as JSON (- for standard output)")
+    parser.add_argument("--out", metavar="DIR", help="write levels.csv and change.gpkg here")
+
+
+def run(args: argparse.Namespace) -> int:
+    from hydro.change import compare, pair_frames
+    from hydro.change.export import change_json, write_change
+    from hydro.review import write_whole
+
+    (a, reach_a), (b, reach_b) = _opened(args.run_a), _opened(args.run_b)
+    pairs = pair_frames(a, b, args.pair, **(_inflows(a, b, reach_a, reach_b) if args.pair == "discharge" else {}))
+    chosen = [p for p in pairs if args.frame is None or p.a == args.frame]
+    if not chosen:
+        raise ValueError(f"frame {args.frame} of {a.name} has no partner; paired are {', '.join(str(p.a) for p in pairs)}.")
+    change = compare(
+        a, b, chosen[-1], reach_a=reach_a, reach_b=reach_b, spacing_m=args.spacing, above_m=args.above,
+        quiet=tuple(args.quiet) if args.quiet else None,
+    )
+    if args.out:
+        write_change(Path(args.out), change)
+    if args.json:
+        text = json.dumps(change_json(change), indent=1, allow_nan=False)
+        if args.json == "-":
+            print(text)
+            return 0
+        write_whole(Path(args.json), text + "\n")
+    _print(change)
+    return 0
+
+
+def _opened(path: str):
+    from hydro.reach import Reach
+    from hydro.review import open_any
+
+    review, run = open_any(path)
+    if run is None:
+        raise ValueError(f"{path} is a review; give the results files of two runs.")
+    if review is None:
+        return run, Reach(run.mesh.origin)
+    return run, review.reach_for(run)
+
+
+def _inflows(a, b, reach_a, reach_b):
+    import numpy as np
+    from hydro.ledger import frame_ledger
+
+    def of(run, reach):
+        return np.array([frame_ledger(run, i, reach=reach).sf.through_discharge_m3_s for i in range(run.n_frames)])
+
+    return {"inflow_a": of(a, reach_a), "inflow_b": of(b, reach_b)}
+
+
+def _print(change) -> None:
+    from hydro.cautions import caution
+
+    print("Outside the works these differ before the water is looked at:" if change.setup else "Outside the works nothing differs.")
+    for difference in change.setup:
+        print(f"  {difference.sentence}")
+    print("What changes:")
+    for finding in change.findings:
+        print(f"  {finding.sentence}")
+    owed = dict.fromkeys(c for f in change.findings for c in f.cautions)
+    for id_ in owed:
+        print(f"  {caution(id_).text}", file=sys.stdout)
