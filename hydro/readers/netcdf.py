@@ -122,7 +122,7 @@ def _in_order(pieces: list[Piece], kind: str | None) -> tuple[list[Piece], np.nd
     def starts(p: Piece) -> float:
         if p.times.instants is None:
             return float(p.times.seconds[0])
-        return float((p.times.instants[0] - all_instants[0][0]) / np.timedelta64(1, "ns")) * 1e-9
+        return float((p.times.instants[0] - all_instants[0][0]) / np.timedelta64(1, "us")) / 1e6
 
     pieces = sorted(pieces, key=starts)
     notes: list[Note] = []
@@ -149,7 +149,7 @@ def _trimmed(pieces: list[Piece], seconds: list[np.ndarray], notes: list[Note]) 
     for i in range(len(pieces) - 1):
         ours, theirs = pieces[i].store.path.name, pieces[i + 1].store.path.name
         end, start = seconds[i][-1], seconds[i + 1][0]
-        if end == start and len(seconds[i]) > 1:
+        if abs(end - start) < 1e-6 and len(seconds[i]) > 1:
             seconds[i] = seconds[i][:-1]
             notes.append(Note(f"the last frame of {ours} is repeated by {theirs}; it is used once", ""))
         elif end >= start:

@@ -225,7 +225,7 @@ def _instants(variable: Stored, values: np.ndarray, reference: Reference) -> tup
     notes = []
     if calendar not in ("standard", "gregorian", "proleptic_gregorian"):
         notes.append(Note(f"dates are of the calendar {calendar!r}", variable.name))
-    return (local - shift).astype("datetime64[ns]"), notes
+    return local - shift, notes
 
 
 def _iso(date) -> str:

@@ -53,9 +53,10 @@ def _has_flow(placed: list[Placed]) -> bool:
 
 
 def _with_constants(placed: list[Placed], everything: list[Placed]) -> list[Placed]:
-    """A file's own variables, and those of the files before it (a bed, say) that it does not repeat."""
+    """A file's own variables, and the constant ones of the files before it (a bed, say) that it does not repeat."""
     own = {p.variable.name for p in placed}
-    return [*placed, *(p for p in everything if p.variable.name not in own)]
+    constant = (p for p in everything if len(p.variable.shape) == 1 and p.subset is None)
+    return [*placed, *(p for p in constant if p.variable.name not in own)]
 
 
 def _same_mesh(first: Topology, other: Topology) -> None:
