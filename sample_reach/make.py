@@ -14,8 +14,8 @@ from .write import Story, write_run
 HERE = Path(__file__).resolve().parent
 RESULTS = HERE / "results"
 NAMES = {
-    "existing": ("bankfull_coarse", "low", "bankfull", "flood", "burst"),
-    "proposed": ("low", "bankfull", "flood"),
+    "existing": ("bankfull", "bankfull_coarse", "low", "flood", "burst"),
+    "proposed": ("bankfull", "low", "flood"),
 }
 
 

@@ -26,8 +26,8 @@ LOW, BANKFULL, FLOOD_START = (6.0, 0.6), (104.0, 8.0), (38.0, 3.5)  # river and 
 # Short and gate-like: river and tributary against seconds. The peak stands long enough for six shedding periods.
 FLOOD = np.array([[0, 38, 3.5], [30, 38, 3.5], [170, 124, 9.5], [300, 124, 9.5], [450, 62, 6.0], [600, 38, 3.5]], float)
 FLOOD_FRAMES = np.arange(0.0, 600.1, 10.0)
-BURST_FRAMES = np.arange(200.0, 300.01, 1.25)
-SETTLE, MEAN = {"low": 180.0, "bankfull": 140.0}, {"low": 120.0, "bankfull": 90.0}
+BURST_FRAMES = np.arange(205.0, 290.01, 1.0)
+SETTLE, MEAN = {"low": 540.0, "bankfull": 240.0}, {"low": 120.0, "bankfull": 90.0}
 SPIN_UP = {"low": 1200.0, "bankfull": 600.0, "flood": 400.0}
 
 
@@ -125,9 +125,9 @@ class Chain:
             carry(self.spun_up(event), model)
             model.state[0] = 0.0
             settled = self.folder / f"{self.place.design}_{event}_{which}_settled.npz"
-            if not _restore(settled, model):
-                self._stretch(model, SETTLE[event], self.drive(*flows), f"{event}, {which}, settling")
-                _keep(settled, model)
+            _restore(settled, model)
+            self._stretch(model, SETTLE[event], self.drive(*flows), f"{event}, {which}, settling")
+            _keep(settled, model)
             model.clear_sums()
             model.state[2:6] = 0
             begin = model.volume
