@@ -5,7 +5,7 @@ Every method either answers at once or raises ``Working`` and has the answer mad
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from functools import partial
 from pathlib import Path
 from typing import Any
@@ -13,13 +13,12 @@ from typing import Any
 import numpy as np
 
 from hydro.contours import contour_lines, tube_levels
+from hydro.eddies import Zone
 from hydro.frame import Frame
-from hydro.ledger import FrameLedger, frame_ledger
-from hydro.ledger.frames import plan_for
+from hydro.ledger import FrameLedger, FrameReader, Life, follow, lumped_area
 from hydro.reach import CentreLine, Reach, proposed_centre_line
 from hydro.review import Review, open_any
 from hydro.run import Run
-from hydro.streamfunction import Plan
 
 from .raster import Canvas, IndexRaster, View, canvas
 from .results import AHEAD, NOW, Results, Working
@@ -63,7 +62,15 @@ class Beat:
 
     seconds: float
     discharge_m3_s: float
-    areas: dict[str, float]  # m2 by the zones' ids
+    zones: tuple[Zone, ...]
+
+
+@dataclass(frozen=True, eq=False)
+class Followed:
+    """The eddies of a run followed through time: their lives, and each frame's zones with lasting ids."""
+
+    lives: tuple[Life, ...]
+    zones: dict[int, tuple[Zone, ...]]
 
 
 @dataclass(frozen=True, eq=False)
@@ -72,6 +79,7 @@ class Story:
 
     beats: tuple[Beat | None, ...]
     done: int
+    followed: Followed | None = None
 
     @property
     def whole(self) -> bool:
@@ -84,7 +92,7 @@ class Reading:
     def __init__(self, path: Path | str, results: Results | None = None) -> None:
         self.path = Path(path)
         self.results = results or Results()
-        self._plans: dict[str, Plan] = {}
+        self._readers: dict[str, FrameReader] = {}
 
     def matter(self) -> Matter:
         """The review or the file; raises what opening it raised."""
@@ -111,14 +119,30 @@ class Reading:
         run = self.run(run_id)
         return self.results.get(("frame", run_id, index), lambda: run.frame(index), label="Reading the frame.", heavy=True)
 
-    def ledger(self, run_id: str, index: int, *, rank: int = NOW) -> FrameLedger:
-        """Stream function and eddies of one frame."""
+    def ledger(self, run_id: str, index: int) -> FrameLedger:
+        """Stream function and eddies of one frame.
+
+        Eddies have lasting ids (E1, E2 ...) once they were followed through the run; until then they are
+        numbered within the frame (1, 2 ...).
+        """
+        entry = self.entry(run_id, index)
+        if self.run(run_id).n_frames == 1:
+            return entry
+        followed = self.results.peek(("followed", run_id))
+        if followed is not None and index in followed.zones:
+            zones = followed.zones[index]
+        else:
+            zones = tuple(replace(z, id=str(k + 1)) for k, z in enumerate(entry.zones.zones))
+        return replace(entry, zones=replace(entry.zones, zones=zones))
+
+    def entry(self, run_id: str, index: int, *, rank: int = NOW) -> FrameLedger:
+        """Stream function and eddies of one frame, numbered within it."""
         run = self.run(run_id)
 
         def make() -> FrameLedger:
-            if run_id not in self._plans:
-                self._plans[run_id] = plan_for(run, self.frame(run_id, index), self.reach(run_id))
-            return frame_ledger(run, index, reach=self.reach(run_id), plan=self._plans[run_id])
+            if run_id not in self._readers:
+                self._readers[run_id] = FrameReader(run, reach=self.reach(run_id))
+            return self._readers[run_id].frame(index)
 
         return self.results.get(
             ("ledger", run_id, index), make, label="Finding the stream function and its eddies.", rank=rank, heavy=True,
@@ -128,7 +152,7 @@ class Reading:
         """The waterline, with the water on the left of its lines."""
 
         def make() -> tuple[np.ndarray, ...]:
-            boundaries = self.ledger(run_id, index).sf.open_boundaries if self._has_psi(run_id, index) else ()
+            boundaries = self.entry(run_id, index).sf.open_boundaries if self._has_psi(run_id, index) else ()
             edges = [b.edges for b in boundaries]
             return tuple(shoreline(self.frame(run_id, index), np.concatenate(edges) if edges else None))
 
@@ -136,7 +160,7 @@ class Reading:
 
     def tubes(self, run_id: str, index: int, count: int) -> tuple[tuple[np.ndarray, ...], float]:
         """Lines between the stream tubes of one frame, and the discharge of one tube, m3/s."""
-        ledger = self.ledger(run_id, index)
+        ledger = self.entry(run_id, index)
 
         def make() -> tuple[tuple[np.ndarray, ...], float]:
             sf, mesh = ledger.sf, ledger.frame.mesh
@@ -186,16 +210,28 @@ class Reading:
                 self.results.ahead(key, partial(self._beat, run_id, i), label="Following the eddies.", group=STORY)
             beats.append(self.results.peek(key))
         done = sum(self.results.have(("beat", run_id, i)) for i in range(run.n_frames))
-        return Story(tuple(beats), done)
+        followed = None
+        if done == run.n_frames:
+            self.results.ahead(("followed", run_id), partial(self._follow, run_id), label="Following the eddies.", group=STORY)
+            followed = self.results.peek(("followed", run_id))
+        return Story(tuple(beats), done, followed)
 
     def known(self, key: Any) -> Any:
         """A result that is ready, else None; starts nothing."""
         return self.results.peek(key)
 
     def _beat(self, run_id: str, index: int) -> Beat:
-        ledger = self.ledger(run_id, index, rank=AHEAD)
-        areas = {z.id: z.area_m2 for z in ledger.zones.zones}
-        return Beat(ledger.frame.seconds, ledger.sf.through_discharge_m3_s, areas)
+        entry = self.entry(run_id, index, rank=AHEAD)
+        return Beat(entry.frame.seconds, entry.sf.through_discharge_m3_s, entry.zones.zones)
+
+    def _follow(self, run_id: str) -> Followed:
+        run = self.run(run_id)
+        beats = {i: self.results.peek(("beat", run_id, i)) for i in range(run.n_frames)}
+        known = [i for i, beat in beats.items() if beat is not None]
+        lives, zones = follow(
+            [beats[i].zones for i in known], run.times.seconds[known], lumped_area(run.mesh), run.settings, known,
+        )
+        return Followed(tuple(lives), dict(zip(known, zones)))
 
     def _has_psi(self, run_id: str, index: int) -> bool:
         return self.run(run_id).times.kinds[index] != "maximum"

@@ -193,6 +193,9 @@ class Screen:
             story = page.reading.story(desk.run_id) if page.question.has_time else None
         except (Working, ValueError, OSError):
             story = None
+        if story is not None and len(story.beats) > 1 and story.followed is None:
+            for part in ("map", "answer", "side", "ribbon"):  # tags take their lasting names then
+                self.waits.setdefault(part, set()).add(("followed", desk.run_id))
         if story is None or story.whole:
             self._put("progress", "")
             return
@@ -215,7 +218,7 @@ class Screen:
             "working": "yes" if self.said else "no", "ends": None, "time": None,
             "arrangement": "map" if page.question.has_map else "words",
         }
-        if "map" not in self.waits:
+        if not self.waits.get("map", set()) - {("followed", desk.run_id)}:
             state["seen"] = page.sent
         try:
             ends = page.question.section_ends(desk) if page.question.has_map else None

@@ -62,6 +62,7 @@ def _opened(path: str):
 
 def _inflows(a, b, reach_a, reach_b):
     import numpy as np
+
     from hydro.ledger import frame_ledger
 
     def of(run, reach):

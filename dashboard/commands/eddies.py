@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import argparse
 import json
+import os
 import sys
 from pathlib import Path
 
@@ -15,49 +16,94 @@ def arguments(parser: argparse.ArgumentParser) -> None:
     which = parser.add_mutually_exclusive_group()
     which.add_argument("--frame", type=int, metavar="N", help="frame N, counted from 0 (default: the last)")
     which.add_argument("--time", metavar="T", help="the frame nearest to T: seconds from the start, or an ISO date and time")
+    which.add_argument("--all", action="store_true", help="every frame, with the eddies followed in time; Ctrl-C keeps what is done")
     which.add_argument("--mean", nargs=2, type=float, metavar=("T1", "T2"), help="the mean flow between two times, s from the start")
     parser.add_argument("--small", action="store_true", help="list also what is under the floor")
+    parser.add_argument("--workers", type=int, default=os.cpu_count() or 1, metavar="N", help="processes for --all and --mean (default: all cores)")
+    parser.add_argument("--scheduler", metavar="ADDRESS", help="a Dask scheduler whose workers read the frames of --all and --mean")
     parser.add_argument("--json", metavar="FILE", help="write the ledger as JSON (- for standard output)")
-    parser.add_argument("--out", metavar="DIR", help="write eddies.gpkg and eddies.csv here")
+    parser.add_argument("--out", metavar="DIR", help="write eddies.gpkg, eddies.csv and eddies.html here")
 
 
 def run(args: argparse.Namespace) -> int:
-    from hydro.ledger import frame_ledger, ledger_json, mean_ledger, write_tables
-    from hydro.review import open_any, write_whole
+    from hydro.ledger import FrameReader, reach_of
+    from hydro.review import open_any
 
     review, run = open_any(args.file)
     if run is None:
-        raise ValueError(f"{args.file} is a review; give one of its results files: {', '.join(_files(review))}.")
-    reach = _reach(review, run)
+        files = [f for entry in review.runs for f in entry.files]
+        raise ValueError(f"{args.file} is a review; give one of its results files: {', '.join(files) or 'it lists none yet'}.")
+    reach = reach_of(review, run)
+    if args.all:
+        return _all(args, run, reach)
+    reader = FrameReader(run, reach=reach)
     if args.mean:
-        ledger = mean_ledger(run, *args.mean, reach=reach)
-    else:
-        ledger = frame_ledger(run, _index(run, args), reach=reach)
-    if args.out:
-        write_tables(Path(args.out), run, [ledger])
-    text = json.dumps(ledger_json(run, [ledger]), indent=1, allow_nan=False) if args.json else ""
-    if args.json == "-":
-        print(text)
-        return 0
-    if args.json:
-        write_whole(Path(args.json), text + "\n")
-    _table(ledger, args.small, sys.stdout)
+        return _mean(args, reader)
+    entry = reader.frame(_index(run, args))
+    _write(args, run, [entry])
+    _frame_table(entry, args)
     return 0
 
 
-def _files(review) -> list[str]:
-    return [f for entry in review.runs for f in entry.files]
+def _all(args: argparse.Namespace, run, reach) -> int:
+    from hydro.ledger import follow, lumped_area
+
+    done, stopped = _read(args, run, reach, range(run.n_frames), sensitivity=True)
+    if not done:
+        raise ValueError(f"{run.name} has no frame with a stream function: all hold maxima.")
+    import numpy as np
+
+    lives, zones = follow(
+        [s.zones for s in done], np.array([s.seconds for s in done]), lumped_area(run.mesh), run.settings,
+        [s.index for s in done],
+    )
+    done = [s.with_zones(z) for s, z in zip(done, zones, strict=True)]
+    _write(args, run, done, lives=lives, stopped_after=len(done) if stopped else None)
+    _life_table(lives, done, args)
+    if stopped:
+        print(f"leewater: stopped; {len(done)} of {run.n_frames} frames are written.", file=sys.stderr)
+        return 2
+    return 0
 
 
-def _reach(review, run):
-    """The review's lines for the design that this run belongs to."""
-    if review is None:
-        return None
-    from dataclasses import replace
+def _mean(args: argparse.Namespace, reader) -> int:
+    from hydro.ledger import instants_of
 
-    designs = {e.design for e in review.runs if any(p in run.files for p in review.paths(e))}
-    reach = review.reach
-    return replace(reach, structures=reach.structures_of(next(iter(designs), None) or None))
+    run = reader.run
+    entry = reader.mean(*args.mean)
+    window, _ = run.window(*args.mean)
+    instants = None
+    if len(window) > 1:
+        done, stopped = _read(args, run, reader.reach, [int(i) for i in window], sensitivity=False)
+        instants = None if stopped else instants_of(reader, entry, done)
+    _write(args, run, [entry], instants=instants)
+    _frame_table(entry, args)
+    _instants_table(entry, instants, args)
+    return 0
+
+
+def _read(args: argparse.Namespace, run, reach, indices, *, sensitivity: bool):
+    """Summaries of frames, and whether the user stopped the work before its end."""
+    from hydro.ledger import Job, read_all
+
+    job = Job(Path(args.file).resolve(), sensitivity=sensitivity)
+    workers = args.workers if len(indices) > 4 else 1
+    done, stopped = [], False
+    try:
+        for summary in read_all(
+            run, indices, reach=reach, job=job, workers=workers, scheduler=args.scheduler, sensitivity=sensitivity,
+            progress=_progress,
+        ):
+            done.append(summary)
+    except KeyboardInterrupt:
+        stopped = True
+    return done, stopped
+
+
+def _progress(done: int, whole: int) -> None:
+    if sys.stderr.isatty() or done in (0, whole) or done % max(1, whole // 10) == 0:
+        end = "\n" if done == whole or not sys.stderr.isatty() else "\r"
+        print(f"leewater: frame {done} of {whole}", end=end, file=sys.stderr, flush=True)
 
 
 def _index(run, args: argparse.Namespace) -> int:
@@ -79,32 +125,94 @@ def _index(run, args: argparse.Namespace) -> int:
     return int(np.abs(gap).argmin())
 
 
-def _table(ledger, small: bool, out) -> None:
-    from hydro.cautions import caution
+def _write(args: argparse.Namespace, run, frames, **more) -> None:
+    from hydro.ledger import ledger_json, write_tables
+    from hydro.review import write_whole
+
+    if args.out:
+        write_tables(Path(args.out), run, frames, lives=more.get("lives", ()), instants=more.get("instants"))
+    if not args.json:
+        return
+    text = json.dumps(ledger_json(run, frames, **more), indent=1, allow_nan=False)
+    if args.json == "-":
+        print(text)
+    else:
+        write_whole(Path(args.json), text + "\n")
+
+
+def _out(args: argparse.Namespace):
+    """Tables for people go to the error stream where the JSON has the other."""
+    return sys.stderr if args.json == "-" else sys.stdout
+
+
+def _frame_table(entry, args: argparse.Namespace) -> None:
     from hydro.figure import printed
     from hydro.ledger.report import time_text
 
-    sf, frame = ledger.sf, ledger.frame
+    out, sf, frame = _out(args), entry.sf, entry.frame
     when = time_text(frame.time) or f"{frame.seconds:g} s"
     print(f"{frame.kind} at {when}: {printed(sf.through_discharge_m3_s)} m3/s through, "
           f"misfit {100 * sf.misfit.total:.2g} %, unexplained {100 * sf.misfit.unexplained:.2g} %", file=out)
     for b in sf.open_boundaries:
         print(f"  {b.name}: {printed(b.discharge_m3_s)} m3/s in", file=out)
-    for note in ledger.zones.notes:
+    for note in entry.zones.notes:
         print(f"  {note}", file=out)
-    print(f"{'id':4} {'zone':38} {'turns':13} {'area m2':>9} {'length m':>9} {'circulates m3/s':>15}  flags", file=out)
-    for z in ledger.zones.zones:
-        def show(name: str, z=z) -> str:
-            return printed(getattr(z, name), *z.sensitivity.get(name, (None, None)))
-
-        print(f"{z.id:4} {z.name[:38]:38} {z.rotation:13} {show('area_m2'):>9} {show('length_m'):>9} "
-              f"{show('recirculating_discharge_m3_s'):>15}  {', '.join(z.flags)}", file=out)
-    hidden, cut = ledger.zones.small, ledger.zones.open_to_boundary
+    _zone_rows(entry.zones.zones, out)
+    hidden, cut = entry.zones.small, entry.zones.open_to_boundary
     print(f"under the floor: {len(hidden)}; open to the boundary: {len(cut)}", file=out)
-    if small:
-        for s in (*hidden, *cut):
-            x, y = frame.mesh.to_world(s.centre)
-            print(f"  {x:.2f} E, {y:.2f} N  {s.rotation:13} {printed(s.recirculating_discharge_m3_s)} m3/s  {s.why}", file=out)
-    used = dict.fromkeys(c for z in ledger.zones.zones for c in z.cautions)
-    for id_ in used:
+    for s in (*hidden, *cut) if args.small else ():
+        x, y = frame.mesh.to_world(s.centre)
+        print(f"  {x:.2f} E, {y:.2f} N  {s.rotation:13} {printed(s.recirculating_discharge_m3_s)} m3/s  {s.why}", file=out)
+    _cautions(entry.zones.zones, out)
+
+
+def _zone_rows(zones, out) -> None:
+    from hydro.figure import printed
+
+    print(f"{'id':4} {'zone':38} {'turns':13} {'area m2':>9} {'length m':>9} {'circulates m3/s':>15}  flags", file=out)
+    for z in zones:
+        cells = [
+            printed(getattr(z, name), *z.sensitivity.get(name, (None, None)))
+            for name in ("area_m2", "length_m", "recirculating_discharge_m3_s")
+        ]
+        print(f"{z.id:4} {z.name[:38]:38} {z.rotation:13} {cells[0]:>9} {cells[1]:>9} {cells[2]:>15}  {', '.join(z.flags)}", file=out)
+
+
+def _life_table(lives, done, args: argparse.Namespace) -> None:
+    from hydro.figure import printed
+
+    out = _out(args)
+    print(f"{len(done)} frames, {done[0].seconds:g} to {done[-1].seconds:g} s; {len(lives)} eddies", file=out)
+    print(f"{'id':5} {'eddy':38} {'from s':>8} {'to s':>8} {'time':>5} {'area m2':>15} {'circulates m3/s':>17}  remarks", file=out)
+    for life in sorted(lives, key=lambda v: -v.share_of_time):
+        area = " to ".join(printed(v) for v in life.ranges["area_m2"])
+        flow = " to ".join(printed(v) for v in life.ranges["recirculating_discharge_m3_s"])
+        remarks = [] if life.followed else [f"not followed: {life.why}"]
+        remarks += ["unsteady"] if life.unsteady else []
+        remarks += [f"split from {life.parent}"] if life.parent else []
+        remarks += [f"merged into {life.merged_into}"] if life.merged_into else []
+        print(f"{life.id:5} {life.name[:38]:38} {life.first_s:8g} {life.last_s:8g} {100 * life.share_of_time:4.0f}% "
+              f"{area:>15} {flow:>17}  {', '.join(remarks)}", file=out)
+    _cautions([z for s in done for z in s.zones], out)
+
+
+def _instants_table(entry, instants, args: argparse.Namespace) -> None:
+    from hydro.figure import printed
+
+    out = _out(args)
+    for zone in entry.zones.zones if instants else ():
+        i = instants[zone.id]
+        text = f"{zone.id}: in {i.seen} of {i.frames} instants ({100 * i.share_of_time:.0f} % of the time)"
+        if i.ranges:
+            text += ", area " + " to ".join(printed(v) for v in i.ranges["area_m2"]) + " m2"
+        if i.periods is not None:
+            how = "measured" if i.measured_period_s else "expected"
+            text += f"; {i.periods:.1f} periods of {printed(i.measured_period_s or i.expected_period_s)} s ({how})"
+        print(text, file=out)
+
+
+def _cautions(zones, out) -> None:
+    from hydro.cautions import caution
+
+    for id_ in dict.fromkeys(c for z in zones for c in z.cautions):
         print(f"  {caution(id_).text}", file=out)

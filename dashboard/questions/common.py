@@ -11,12 +11,15 @@ import shapely
 from hydro.eddies import Zone
 from hydro.ledger import FrameLedger
 from hydro.reach import Structure
+from hydro.section import Section, cut, section_figures
+from hydro.section.cut import runs_right_to_left
+from hydro.transfer import barycentric
 
 from .. import text
 from ..reading import Story
 from ..views import ribbon, section
 from ..views.scene import Name, StructureMark
-from .base import Desk
+from .base import Desk, footnote
 
 _REACH = 150.0  # m to each side of the centre line that a first section may go
 _PIER = 12.0  # m of dry ground that a section steps over
@@ -107,16 +110,17 @@ def natural(name: str) -> tuple:
     return tuple(int(p) if p.isdigit() else p for p in re.split(r"(\d+)", name))
 
 
-def section_ends(desk: Desk, zone: Zone | None) -> tuple[tuple[float, float], tuple[float, float]] | None:
+def section_ends(desk: Desk, zone: Zone | None) -> tuple[tuple[float, float], tuple[float, float]]:
     """Left and right end of the section, local m: the reader's, else across the river at the subject."""
-    mesh = desk.run.mesh
+    mesh, centre = desk.run.mesh, desk.reading.reach(desk.run_id).centre_line
+    assert centre is not None  # one is proposed where the review has none
     if desk.choices.section is not None:
         x1, y1, x2, y2 = desk.choices.section
         a, b = mesh.to_local(np.array([[x1, y1], [x2, y2]]))
-        return (float(a[0]), float(a[1])), (float(b[0]), float(b[1]))
-    centre = desk.reading.reach(desk.run_id).centre_line
-    if centre is None:
-        return None
+        line = np.array([a, b])
+        if runs_right_to_left(line, centre):
+            line = line[::-1]
+        return (float(line[0, 0]), float(line[0, 1])), (float(line[1, 0]), float(line[1, 1]))
     at = np.asarray(zone.centre) if zone is not None else centre.at(np.array([centre.length / 2]))[0]
     chainage, offset = (float(v[0]) for v in centre.locate(at))
     return across(desk, chainage, offset)
@@ -141,66 +145,47 @@ def across(desk: Desk, chainage: float, offset: float = 0.0) -> tuple[tuple[floa
     return (float(ends[0, 0]), float(ends[0, 1])), (float(ends[1, 0]), float(ends[1, 1]))
 
 
-def section_html(desk: Desk, ends, ledger: FrameLedger) -> str:
+def section_html(desk: Desk, ends, ledger: FrameLedger, subject: shapely.Geometry | None, ids: tuple[str, ...]) -> str:
     """The section beside the map, with its discharge by the field and by psi."""
     if ends is None:
         return ""
-    u = desk.units
-    profile, figures = profile_of(ledger, ends)
+    u, title = desk.units, '<h2>Section <span class="beside">looking downstream; hanging bars: back upstream</span></h2>'
+    if desk.look.hall:
+        title = '<h2>Section <span class="beside">looking downstream</span></h2>'
+    try:
+        line = cut(ledger.frame, np.array(ends), centre_line=desk.reading.reach(desk.run_id).centre_line)
+    except ValueError as error:
+        return f'{title}<p class="figures">{text.safe(error)}</p>'
+    figures = section_figures(line, sf=ledger.sf, settings=desk.run.settings)
+    tube = desk.reading.known(("tubes", desk.run_id, desk.index, desk.choices.tubes))
+    profile = profile_of(line, ledger, tube[1] if tube else 0.0, subject)
     box = section.Box(max(desk.sizes.section, 260), desk.look.label_px, 0.72 if desk.look.hall else 1.0)
-    words = "hanging bars: back upstream" if not desk.look.hall else "hanging: upstream"
-    by_psi = f", <b>{u.quantity(figures['psi'], 'm3/s')}</b> by psi" if figures["psi"] is not None else ""
-    area, mean = u.quantity(figures["area"], "m2"), u.quantity(figures["mean"], "m/s")
+    passes = f"Passes <b>{u.quantity(figures.discharge_m3_s, 'm3/s')}</b> by the field"
+    if figures.discharge_psi_m3_s is not None:
+        passes += f", <b>{u.quantity(figures.discharge_psi_m3_s, 'm3/s')}</b> by psi"
+    mean = f" at a mean of {u.quantity(figures.mean_velocity_m_s, 'm/s')}" if figures.mean_velocity_m_s is not None else ""
+    flags = f" {text.safe('; '.join(figures.flags)).capitalize()}." if figures.flags else ""
     return (
-        f'<h2>Section <span class="beside">looking downstream; {words}</span></h2>{section.draw(profile, box, u)}'
-        f'<p class="figures">Passes <b>{u.quantity(figures["field"], "m3/s")}</b> by the field{by_psi}; '
-        f"{area} of water at a mean of {mean}.</p>"
+        f'{title}{section.draw(profile, box, u)}<p class="figures">{passes}{footnote(ids, "section-discharge")}; '
+        f"{u.quantity(figures.area_m2, 'm2')} of water{mean}.{flags}</p>"
     )
 
 
-def profile_of(ledger: FrameLedger, ends, count: int = 400) -> tuple[section.Profile, dict[str, float | None]]:
-    """What the section line reads from a frame, and its discharge."""
-    frame, mesh = ledger.frame, ledger.frame.mesh
-    a, b = (np.asarray(e, float) for e in ends)
-    t = np.linspace(0, 1, count)
-    points = a + t[:, None] * (b - a)
-    length = float(np.hypot(*(b - a)))
-    found = mesh.find(points)
-    nodes = mesh.triangles[np.maximum(found, 0)]
-    p = mesh.node_xy[nodes]
-    area = (p[:, 1, 0] - p[:, 0, 0]) * (p[:, 2, 1] - p[:, 0, 1]) - (p[:, 2, 0] - p[:, 0, 0]) * (p[:, 1, 1] - p[:, 0, 1])
-    w = np.empty((count, 3))
-    for k in range(3):
-        i, j = (k + 1) % 3, (k + 2) % 3
-        w[:, k] = (
-            (p[:, i, 0] - points[:, 0]) * (p[:, j, 1] - points[:, 1])
-            - (p[:, j, 0] - points[:, 0]) * (p[:, i, 1] - points[:, 1])
-        ) / area
-    off = found < 0
+def profile_of(line: Section, ledger: FrameLedger, tube: float, subject: shapely.Geometry | None) -> section.Profile:
+    """A cut as the drawing wants it: one station after the other, with gaps where the line leaves the mesh."""
+    corners = line.frame.mesh.triangles[line.triangle]
+    weight = barycentric(line.frame.mesh.node_xy, np.repeat(corners, 2, axis=0), line.xy.reshape(-1, 2))
+    psi = (weight * ledger.sf.psi[np.repeat(corners, 2, axis=0)]).sum(axis=1).reshape(-1, 2)
+    wet = line.wet[:, None] & (line.depth > line.frame.wet_depth_m)
+    speed = np.where(wet, line.flow / np.where(wet, line.depth, 1.0), np.nan)
+    after = np.flatnonzero(line.distance[1:, 0] - line.distance[:-1, 1] > 1e-6) + 1
 
-    def along(values: np.ndarray) -> np.ndarray:
-        read = np.einsum("ij,ij...->i...", w, values[nodes])
-        read[off] = np.nan
-        return read
+    def stations(values: np.ndarray, gap: float | np.ndarray = np.nan) -> np.ndarray:
+        return np.insert(values.ravel(), 2 * after, gap)
 
-    depth = along(frame.depth)
-    bed = along(frame.bed)
-    wet = depth > frame.wet_depth_m
-    direction = (b - a) / max(length, 1e-12)
-    normal = np.array([direction[1], -direction[0]]) * -1.0  # from left to right bank, downstream is to the left of travel
-    q = along(frame.unit_discharge) @ normal
-    speed = np.where(wet, q / np.where(wet, depth, 1.0), np.nan)
-    psi = along(ledger.sf.psi)
-    step = length / (count - 1)
-    flow = float(np.nansum(np.where(wet, q, 0.0)) * step)
-    water = float(np.nansum(np.where(wet, depth, 0.0)) * step)
-    known = psi[np.isfinite(psi)]
-    by_psi = float(known[0] - known[-1]) if known.size else None
-    levels = np.where(wet, bed + depth, np.nan)
-    lines = ledger.sf.through_discharge_m3_s / 22 if ledger.sf.through_discharge_m3_s else 0.0
-    return (
-        section.Profile(t * length, bed, levels, speed, psi, lines),
-        {"field": flow, "psi": by_psi, "area": water, "mean": flow / water if water > 0 else None},
+    return section.Profile(
+        stations(line.distance, line.distance[after, 0]), stations(line.bed), stations(np.where(wet, line.level, np.nan)), stations(speed),
+        stations(psi), tube, crossing(line.points, subject) if subject is not None else None, line.length,
     )
 
 

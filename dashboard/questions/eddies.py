@@ -135,9 +135,9 @@ class Eddies(Question):
         """What the ribbon shows: discharge and the largest eddies, with the subject among them."""
         run, story = desk.run, desk.reading.story(desk.run_id)
         areas: dict[str, np.ndarray] = {}
-        for i, beat in enumerate(story.beats):
-            for id_, area in (beat.areas if beat else {}).items():
-                areas.setdefault(id_, np.full(run.n_frames, np.nan))[i] = area
+        for i, zones in (story.followed.zones if story.followed else {}).items():
+            for zone in zones:
+                areas.setdefault(zone.id, np.full(run.n_frames, np.nan))[i] = zone.area_m2
         subject = self.subject(desk)
         chosen = subject.id if subject else ""
         order = sorted(areas, key=lambda k: (k != chosen, -float(np.nanmax(areas[k]))))
@@ -155,7 +155,10 @@ class Eddies(Question):
         return found
 
     def side(self, desk: Desk) -> dict[str, str]:
-        return {"section": common.section_html(desk, self.section_ends(desk), self.ledger(desk)), "table": self.table(desk)}
+        subject = self.subject(desk)
+        outline = subject.contour if subject is not None else None
+        section = common.section_html(desk, self.section_ends(desk), self.ledger(desk), outline, self.cautions(desk))
+        return {"section": section, "table": self.table(desk)}
 
     def table(self, desk: Desk) -> str:
         ledger, u, ids = self.ledger(desk), desk.units, self.cautions(desk)
@@ -180,7 +183,7 @@ class Eddies(Question):
         ))
 
     def cautions(self, desk: Desk) -> tuple[str, ...]:
-        return ("sensitivity", "wake-detail", "rotation-time", "no-roller")
+        return ("sensitivity", "wake-detail", "rotation-time", "section-discharge", "no-roller")
 
     def section_ends(self, desk: Desk):
         return common.section_ends(desk, self.subject(desk))
@@ -238,11 +241,13 @@ def _line(zone: Zone, subject: bool, desk: Desk, ids: tuple[str, ...]) -> table.
         span = _span(zone, figure)
         return u.number(getattr(zone, figure), unit, *span), u.span(*span, unit)
 
+    place, _, chainage = (zone.name or zone.kind).partition(", chainage")
+    chainage = f"chainage{chainage}" if chainage else ""
     coarse = footnote(ids, "wake-detail") if _UNDER_RESOLVED in zone.flags else ""
     few = desk.look.hall or desk.sizes.narrow
     return table.Line(
         (
-            (f"{marks.turning(zone.rotation)} {text.safe(zone.id)}", ""), (text.safe(zone.name or zone.kind).replace(" m", "\u00a0m") + coarse, ""),
+            (f"{marks.turning(zone.rotation)} {text.safe(zone.id)}", ""), (text.safe(place) + coarse, text.safe(chainage).replace(" m", "\u00a0m")),
             cell("area_m2", "m2"),
             *(() if few else (cell("recirculating_discharge_m3_s", "m3/s"), cell("rotation_time_s", "s"))),
         ),

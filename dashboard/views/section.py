@@ -27,8 +27,10 @@ class Profile:
         m3/s; NaN outside the domain.
     tube_m3_s : float
         Discharge of one tube; 0: the water is not cut into tubes.
-    subject : (2,) float64 or None
+    subject : pair of floats or None
         From and to, m, of the subject zone.
+    length : float
+        Of the whole line, m; 0: as long as its stations reach.
     """
 
     distance: np.ndarray
@@ -38,6 +40,7 @@ class Profile:
     psi: np.ndarray | None = None
     tube_m3_s: float = 0.0
     subject: tuple[float, float] | None = None
+    length: float = 0.0
 
 
 @dataclass(frozen=True, slots=True)
@@ -91,8 +94,8 @@ class _Scale:
     def __init__(self, profile: Profile, box: Box) -> None:
         self.profile, self.box = profile, box
         d = profile.distance
-        self.length = float(d[-1] - d[0])
-        self.x = (d - d[0]) / self.length * box.right
+        self.length = profile.length or float(d[-1])
+        self.x = d / self.length * box.right
         wet = np.isfinite(profile.level)
         self.level = float(np.nanmedian(profile.level[wet]))
         deepest = float(np.nanmax(self.level - profile.bed)) if np.isfinite(profile.bed).any() else 1.0
@@ -154,20 +157,21 @@ def _bars(s: _Scale) -> str:
     spacing = max(7.0, 0.55 * box.label)
     at = np.arange(spacing / 2, box.right, spacing)
     speed = np.interp(at, s.x, np.nan_to_num(p.speed))
-    near = np.clip(np.searchsorted(s.x, at), 0, len(s.x) - 1)
-    wet = np.isfinite(p.speed[near])
+    base = np.interp(at, s.x, s.y(np.where(np.isfinite(p.level), p.level, s.level)))
+    after = np.clip(np.searchsorted(s.x, at), 1, len(s.x) - 1)
+    wet = np.isfinite(p.speed[after]) & np.isfinite(p.speed[after - 1])
     out = []
-    for x, v, ok in zip(at, speed, wet):
+    for x, v, low, ok in zip(at, speed, base, wet):
         if not ok or abs(v) * s.per_speed < 0.6:
             continue
         metres = x / box.right * s.length
         inside = p.subject is not None and p.subject[0] <= metres <= p.subject[1]
         kind = "bar subject" if inside else "bar"
         if v >= 0:
-            out.append(f'<line class="{kind}" x1="{x:.1f}" x2="{x:.1f}" y1="{box.surface}" y2="{box.surface - v * s.per_speed:.1f}"/>')
+            out.append(f'<line class="{kind}" x1="{x:.1f}" x2="{x:.1f}" y1="{low:.1f}" y2="{low - v * s.per_speed:.1f}"/>')
         else:
-            end = min(box.surface - v * s.per_speed, box.foot)
-            line = f'x1="{x:.1f}" x2="{x:.1f}" y1="{box.surface}" y2="{end:.1f}"'
+            end = min(low - v * s.per_speed, box.foot)
+            line = f'x1="{x:.1f}" x2="{x:.1f}" y1="{low:.1f}" y2="{end:.1f}"'
             out.append(f'<line class="case" {line}/><line class="{kind} back" {line}/>')
     return "".join(out)
 
@@ -198,7 +202,7 @@ def _axis(s: _Scale, units: Units) -> str:
     out = [f'<line class="hair" x1="0" x2="{box.right:.1f}" y1="{box.foot}" y2="{box.foot}"/>']
     for k in range(int(s.length * f / step + 1e-9) + 1):
         x = k * step / f / s.length * box.right
-        label = f"{k * step:g}"
+        label = f"{k * step:g}" if x < box.right - 1.2 * box.label else ""
         anchor = ' class="mid"' if k else ""
         out.append(
             f'<line class="hair2" x1="{x:.1f}" x2="{x:.1f}" y1="{box.foot}" y2="{box.foot + 5:.1f}"/>'
