@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Iterable, Mapping
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
 from functools import cached_property
 from pathlib import Path
 
@@ -114,6 +114,16 @@ class Reach:
     def structures_of(self, design: str | None) -> tuple[Structure, ...]:
         """Structures that stand in this design (all where ``design`` is None)."""
         return tuple(s for s in self.structures if design is None or s.design in ("both", design))
+
+    def of_design(self, design: str | None) -> Reach:
+        """The reach as it is in one design: structures and features of the other designs left out."""
+        if not design:
+            return self
+        kept = {
+            name: tuple(i for i in items if i.attributes.get("design", "both") in ("both", design))
+            for name, items in self.layers.items()
+        }
+        return replace(self, structures=self.structures_of(design), layers=kept)
 
     def layer(self, name: str) -> tuple[NamedLine, ...]:
         """The features of a layer, empty where the review has none."""

@@ -11,7 +11,7 @@ import os
 import tempfile
 import tomllib
 from collections.abc import Callable
-from dataclasses import dataclass, field, replace
+from dataclasses import dataclass, field
 from datetime import UTC, datetime
 from functools import cached_property
 from pathlib import Path
@@ -210,9 +210,9 @@ class Review:
         return next((e for e in self.runs if tuple(self.paths(e)) == tuple(p.resolve() for p in run.files)), None)
 
     def reach_for(self, run: Run) -> Reach:
-        """The review's lines with only the structures of the run's design."""
+        """The review's lines with only what belongs to the run's design."""
         entry = self.entry_of(run)
-        return replace(self.reach, structures=self.reach.structures_of((entry and entry.design) or None))
+        return self.reach.of_design(entry.design if entry else None)
 
     def edit(self, change: Callable[[Any], None], *, who: str, what: str) -> Review:
         """Change review.toml through its document, keeping comments, and log it.
