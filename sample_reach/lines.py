@@ -10,6 +10,7 @@ from pathlib import Path
 
 import geopandas
 import numpy as np
+import pyogrio
 import shapely
 from shapely.geometry import LineString, Polygon
 
@@ -162,6 +163,8 @@ def write_lines(path: Path) -> None:
         "abutments": _abutments(), "sections": _sections(), "releases": _releases(), "fish": _fish(),
         "receptors": _receptors(),
     }
+    # A fixed date inside the file: written twice, it is the same.
+    pyogrio.set_gdal_config_options({"OGR_CURRENT_DATE": "2031-03-09T00:00:00.000Z"})
     beside = path.with_suffix(".part.gpkg")
     beside.unlink(missing_ok=True)
     crs = crs_wkt()
@@ -174,4 +177,5 @@ def write_lines(path: Path) -> None:
             table["discharge_variable"] = None
         table.geometry = shapely.transform(table.geometry.values, lambda xy: np.round(xy + geo.ORIGIN, 4))
         table.to_file(beside, layer=name, driver="GPKG")
+    pyogrio.set_gdal_config_options({"OGR_CURRENT_DATE": None})
     beside.replace(path)
