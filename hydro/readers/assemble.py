@@ -14,6 +14,18 @@ from ..run import Note, Run, TimeAxis
 from ..settings import Settings
 from . import faults
 from .crs import Ground
+from .mapping import Said
+
+
+@dataclass(frozen=True, slots=True)
+class Asked:
+    """What the caller asked every door for: mapping, settings, local origin, kind of frame, label."""
+
+    said: Said
+    settings: Settings
+    origin: tuple[float, float] | None = None
+    kind: str | None = None
+    name: str | None = None
 
 
 @dataclass(frozen=True, eq=False)

@@ -8,8 +8,7 @@ import numpy as np
 
 from ..mesh import Mesh
 from ..run import Note, Run, TimeAxis
-from ..settings import Settings
-from .assemble import Field, Parts, check_edge_sense, make_run
+from .assemble import Asked, Field, Parts, check_edge_sense, make_run
 from .crs import Ground, convergence_deg
 from .mapping import Said
 from .names import Choice, Placed, choose
@@ -49,40 +48,45 @@ def read_piece(store: Store, placed: list[Placed], said: Said) -> tuple[Piece, l
 
 
 def join(
-    pieces: list[Piece], mesh: Mesh, ground: Ground, *, said: Said, settings: Settings, kind: str | None, name: str | None,
-    notes: list[Note], boundary_sets: dict[str, np.ndarray] | None = None,
+    pieces: list[Piece], mesh: Mesh, ground: Ground, asked: Asked, *, notes: list[Note],
+    boundary_sets: dict[str, np.ndarray] | None = None, keep: dict[str, np.ndarray] | None = None,
 ) -> Run:
-    """One run of all pieces, in order of time.
+    """One run of all pieces, in order of time. ``keep``: by location, the places that the mesh was made of.
 
     Raises ``ValueError`` when pieces do not hold the same quantities, overlap in time, or date their
     frames differently.
     """
-    pieces, first_frames, axis, more = _in_order(pieces, kind)
+    pieces, first_frames, axis, more = _in_order(pieces, asked.kind)
     notes = [*notes, *more, *(n for p in pieces for n in p.times.notes)]
     _same_quantities(pieces)
     fields = {
-        quantity: _field([p.choices[quantity] for p in pieces], first_frames, [p.times.dimension for p in pieces])
+        quantity: _field([p.choices[quantity] for p in pieces], first_frames, [p.times.dimension for p in pieces], keep or {})
         for quantity in pieces[0].choices
     }
     notes += _of_velocity_and_bed(pieces[0], ground, mesh)
     files = tuple(p.store.path for p in pieces)
     attributes = pieces[0].store.attributes
     parts = Parts(
-        name or str(attributes.get("title", "")).strip() or files[0].stem, files, mesh, fields, axis, ground, settings,
-        _depth_is(pieces[0], said, notes), _once(notes), boundary_sets or {}, {k: str(v) for k, v in attributes.items()},
+        asked.name or str(attributes.get("title", "")).strip() or files[0].stem, files, mesh, fields, axis, ground, asked.settings,
+        _depth_is(pieces[0], asked.said, notes), _once(notes), boundary_sets or {}, {k: str(v) for k, v in attributes.items()},
     )
     run = make_run(parts)
     return replace(run, notes=(*run.notes, *check_edge_sense(parts, run)))
 
 
-def _field(choices: list[Choice], first_frames: np.ndarray, dimensions: list[str | None]) -> Field:
+def _field(
+    choices: list[Choice], first_frames: np.ndarray, dimensions: list[str | None], keep: dict[str, np.ndarray]
+) -> Field:
     """A field over all pieces: frame i is found in the piece that holds it."""
+
+    first = choices[0]
+    kept = keep.get(first.location)
 
     def read(index: int) -> np.ndarray:
         piece = int(np.searchsorted(first_frames, index, side="right")) - 1
-        return read_places(choices[piece], dimensions[piece], index - int(first_frames[piece]))
+        values = read_places(choices[piece], dimensions[piece], index - int(first_frames[piece]))
+        return values if kept is None else values[kept]
 
-    first = choices[0]
     return Field(first.variable.name, first.location, read, first.per_length)
 
 

@@ -6,20 +6,16 @@ import numpy as np
 
 from ..mesh import Mesh, build_mesh
 from ..run import Note, Run
-from ..settings import Settings
 from . import faults
+from .assemble import Asked
 from .crs import Ground, ground_of
-from .mapping import Said
 from .names import Placed
 from .netcdf import join, read_piece
 from .store import Store, Stored
 from .ugrid import Topology, is_index_set, mesh_names, placed_variables, read_index_set, read_topology
 
 
-def open_ugrid(
-    stores: list[Store], *, mesh: str | None, said: Said, settings: Settings, origin: tuple[float, float] | None,
-    kind: str | None, name: str | None,
-) -> Run:
+def open_ugrid(stores: list[Store], asked: Asked, *, mesh: str | None = None) -> Run:
     """A run from UGRID files; files without a mesh of their own stand on the first file's that has one.
 
     Raises ``ValueError`` with one sentence for anything that is wrong.
@@ -36,15 +32,13 @@ def open_ugrid(
         everything += placed
         if store is topology.store and len(stores) > 1 and not _has_flow(placed):
             continue  # the file that holds the mesh alone
-        piece, more = read_piece(store, _with_constants(placed, everything), said)
+        piece, more = read_piece(store, _with_constants(placed, everything), asked.said)
         pieces.append(piece)
         notes += more
-    ground = ground_of(topology.store, topology.x, topology.y, [p.variable for p in everything], said)
-    built = _mesh(topology, ground, origin, notes)
+    ground = ground_of(topology.store, topology.x, topology.y, [p.variable for p in everything], asked.said)
+    built = _mesh(topology, ground, asked.origin, notes)
     sets = _boundary_sets(topology, everything, built, notes)
-    return join(
-        pieces, built, ground, said=said, settings=settings, kind=kind, name=name, notes=notes, boundary_sets=sets
-    )
+    return join(pieces, built, ground, asked, notes=notes, boundary_sets=sets)
 
 
 def _has_flow(placed: list[Placed]) -> bool:
