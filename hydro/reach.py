@@ -86,6 +86,7 @@ class Structure:
     geometry: BaseGeometry
     design: str = "both"
     levels: Mapping[str, float] = field(default_factory=dict)  # crest_m, soffit_m, road_m where known
+    discharge_variable: str = ""  # for a link: the run's series that holds its discharge, from its first point to its last
 
 
 @dataclass(frozen=True, eq=False)
@@ -164,6 +165,17 @@ def read_lines(path: Path, origin: tuple[float, float]) -> Reach:
     return Reach(origin, centre, tuple(structures), layers)
 
 
+def origin_of_lines(path: Path) -> tuple[float, float] | None:
+    """Local origin by :func:`hydro.mesh.default_origin` for a lines.gpkg; None where it holds nothing."""
+    import pyogrio
+
+    from .mesh import default_origin
+
+    bounds = [pyogrio.read_info(path, layer=name)["total_bounds"] for name, _ in pyogrio.list_layers(path)]
+    known = np.array([b for b in bounds if b is not None and np.isfinite(b).all()])
+    return default_origin(known[:, :2]) if len(known) else None
+
+
 def automatic_sections(centre_line: CentreLine, xy: np.ndarray, spacing_m: float) -> list[tuple[float, np.ndarray]]:
     """Sections square to the centre line, every ``spacing_m`` m, over the whole width of the mesh.
 
@@ -224,7 +236,8 @@ def _structure(geometry, row: Mapping, path: Path) -> Structure:
         )
     levels = {k: float(row[k]) for k in ("crest_m", "soffit_m", "road_m") if _given(row.get(k))}
     return Structure(
-        str(row["id"]), str(row["name"]), str(row["kind"]), how, geometry, str(row.get("design") or "both"), levels
+        str(row["id"]), str(row["name"]), str(row["kind"]), how, geometry, str(row.get("design") or "both"), levels,
+        str(row["discharge_variable"]) if _given(row.get("discharge_variable")) else "",
     )
 
 

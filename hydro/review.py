@@ -21,7 +21,7 @@ import pydantic
 import tomlkit
 
 from .provenance import file_hash, files_hash
-from .reach import Reach, read_lines
+from .reach import Reach, origin_of_lines, read_lines
 from .run import Run
 from .settings import Settings
 
@@ -185,29 +185,34 @@ class Review:
         if entry.id not in self._opened:
             from .readers import open_run
 
-            first = entry is self.contents.runs[0] or not self.contents.runs
             self._opened[entry.id] = open_run(
                 self.paths(entry), mesh=entry.mesh, mapping={**self.contents.mapping, **entry.mapping} or None,
-                settings=self.settings, kind=entry.kind, name=entry.label, origin=None if first else self.origin,
+                settings=self.settings, kind=entry.kind, name=entry.label, origin=self.origin,
             )
         return self._opened[entry.id]
 
     @cached_property
-    def origin(self) -> tuple[float, float]:
-        """Local origin shared by all runs of the review: the first run's."""
-        if not self.contents.runs:
-            raise ValueError(f"{self.folder / 'review.toml'} lists no runs; add one under [[runs]].")
-        return self.open(self.contents.runs[0].id).mesh.origin
+    def origin(self) -> tuple[float, float] | None:
+        """Local origin shared by all runs and lines of the review: set by its centre line; None without one,
+        when each run sets its own by the same rule."""
+        path = self.folder / self.contents.lines
+        return origin_of_lines(path) if path.is_file() else None
 
     @cached_property
     def reach(self) -> Reach:
         """Centre line, structures and lines; empty where the review has no lines yet."""
         path = self.folder / self.contents.lines
-        return read_lines(path, self.origin) if path.is_file() else Reach(self.origin)
+        if path.is_file() and self.origin is not None:
+            return read_lines(path, self.origin)
+        return Reach(self.origin or self.open(self.contents.runs[0].id).mesh.origin)
 
     def entry_of(self, run: Run) -> RunEntry | None:
         """The entry whose files a run was read from; None for a run from elsewhere."""
-        return next((e for e in self.runs if tuple(self.paths(e)) == tuple(p.resolve() for p in run.files)), None)
+        opened = next((i for i, r in self._opened.items() if r is run), None)
+        if opened is not None:
+            return self.entry(opened)
+        files = [p.resolve() for p in run.files]
+        return next((e for e in self.runs if [(self.folder / f).resolve() for f in e.files] == files), None)
 
     def reach_for(self, run: Run) -> Reach:
         """The review's lines with only what belongs to the run's design."""

@@ -68,6 +68,8 @@ class Run:
         What the stored depth is within a face or at a node.
     statements : dict
         What the file says of itself (global attributes), as text.
+    series : dict
+        Discharges that depend on time alone, (frames,) m3/s by the file's name: what links carry.
     """
 
     name: str
@@ -85,6 +87,7 @@ class Run:
     notes: tuple[Note, ...] = ()
     depth_is: str = "mean"
     statements: dict[str, str] = field(default_factory=dict)
+    series: dict[str, np.ndarray] = field(default_factory=dict)
 
     @property
     def n_frames(self) -> int:

@@ -8,6 +8,7 @@ import numpy as np
 
 from ..mesh import Mesh
 from ..run import Note, Run, TimeAxis
+from . import units
 from .assemble import Asked, Field, Parts, check_edge_sense, make_run
 from .crs import Ground, convergence_deg
 from .mapping import Said
@@ -71,7 +72,20 @@ def join(
         _depth_is(pieces[0], asked.said, notes), _once(notes), boundary_sets or {}, {k: str(v) for k, v in attributes.items()},
     )
     run = make_run(parts)
-    return replace(run, notes=(*run.notes, *check_edge_sense(parts, run)))
+    return replace(run, notes=(*run.notes, *check_edge_sense(parts, run)), series=_series(pieces, first_frames, len(axis)))
+
+
+def _series(pieces: list[Piece], first_frames: np.ndarray, count: int) -> dict[str, np.ndarray]:
+    """Discharges that depend on time alone, (frames,) m3/s by name: what links, pumps and gauges carry."""
+    found: dict[str, np.ndarray] = {}
+    ends = [*first_frames[1:], count]
+    for piece, begin, end in zip(pieces, first_frames, ends, strict=True):
+        for name, variable in piece.store.variables.items():
+            unit = variable.text("units")
+            if variable.dimensions == (piece.times.dimension,) and units.fits(unit, "edge_discharge"):
+                values = found.setdefault(name, np.full(count, np.nan))
+                values[begin:end] = variable.values()[: end - begin] * units.factor_to_si(unit, "edge_discharge")
+    return found
 
 
 def _field(
