@@ -165,9 +165,7 @@ def _cells(store: Store, grid: Grid) -> tuple[np.ndarray, np.ndarray]:
     if bx is None or by is None:
         return corners_from_centres(grid.xs, grid.ys).reshape(-1, 2), quads(rows, columns)
     if bx.shape == (columns, 2) and by.shape == (rows, 2):
-        low_x, high_x = bx.values().T
-        low_y, high_y = by.values().T
-        across, along = np.meshgrid(np.append(low_x, high_x[-1]), np.append(low_y, high_y[-1]))
+        across, along = np.meshgrid(_edges_of(bx), _edges_of(by))
         return np.column_stack([across.ravel(), along.ravel()]), quads(rows, columns)
     if bx.shape == by.shape == (rows, columns, 4):
         corners = np.stack([bx.values(), by.values()], axis=-1).reshape(-1, 2)
@@ -177,3 +175,13 @@ def _cells(store: Store, grid: Grid) -> tuple[np.ndarray, np.ndarray]:
         points[points[:, 0] == -1e30] = np.nan
         return points, number.reshape(-1, 4)
     raise ValueError(f"{bx} has shape {bx.shape}, which does not bound a grid of {rows} by {columns} cells; export it again.")
+
+
+def _edges_of(bounds: Stored) -> np.ndarray:
+    """Edges (n + 1,) of cells along one axis, in the order of the cells, whichever way that goes."""
+    low, high = np.sort(bounds.values(), axis=1).T
+    ahead, behind = (high, low) if len(low) < 2 or low[1] > low[0] else (low, high)
+    apart = np.flatnonzero(np.abs(behind[1:] - ahead[:-1]) > 1e-6 * np.abs(high - low).max())
+    if apart.size:
+        raise ValueError(f"{bounds}: cells {apart[0]} and {apart[0] + 1} do not meet; export bounds that join.")
+    return np.append(behind[:1], ahead)

@@ -5,7 +5,7 @@ from __future__ import annotations
 import numpy as np
 from scipy.sparse import coo_matrix
 from scipy.sparse.csgraph import connected_components
-from scipy.spatial import Delaunay, cKDTree
+from scipy.spatial import Delaunay, QhullError, cKDTree
 
 LONGEST_SIDE = 3.0  # times the local spacing; longer triangle sides span a gap between points. Leewater's own.
 
@@ -69,7 +69,10 @@ def triangles_of(xy: np.ndarray) -> tuple[np.ndarray, int]:
     if len(xy) < 3:
         raise ValueError("fewer than three points make no mesh")
     centred = xy - xy.mean(axis=0)
-    found = Delaunay(centred).simplices
+    try:
+        found = Delaunay(centred).simplices
+    except QhullError:
+        raise ValueError("its points stand in a line") from None
     distance, near = cKDTree(centred).query(centred, k=min(7, len(xy)))
     spacing = np.median(distance[near, 1], axis=1)
     sides = np.linalg.norm(centred[found] - centred[np.roll(found, -1, axis=1)], axis=2)
@@ -79,5 +82,5 @@ def triangles_of(xy: np.ndarray) -> tuple[np.ndarray, int]:
     flat = area < 1e-6 * sides.max(axis=1) ** 2
     kept = found[~spans & ~flat]
     if not len(kept):
-        raise ValueError("its points stand in a line or too far apart to be joined")
+        raise ValueError("its points stand too far apart to be joined")
     return kept, int(np.count_nonzero(spans))
