@@ -218,7 +218,7 @@ class Screen:
             "working": "yes" if self.said else "no", "ends": None, "time": None,
             "arrangement": "map" if page.question.has_map else "words",
         }
-        if not self.waits.get("map", set()) - {("followed", desk.run_id)}:
+        if all(isinstance(key, tuple) and key[0] == "followed" for key in self.waits.get("map", ())):
             state["seen"] = page.sent
         try:
             ends = page.question.section_ends(desk) if page.question.has_map else None

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import hashlib
 import json
+import logging
 import os
 import re
 import secrets
@@ -16,6 +17,7 @@ os.environ["BOKEH_RESOURCES"] = "server"  # before bokeh is imported: a user's o
 
 import panel as pn  # noqa: E402
 from tornado.web import OutputTransform, RequestHandler, StaticFileHandler  # noqa: E402
+from tornado.websocket import WebSocketClosedError  # noqa: E402
 
 from . import theme  # noqa: E402
 from .page import Page  # noqa: E402
@@ -191,9 +193,15 @@ def serve(path: Path | str, *, port: int | None = None, browser: bool = True) ->
         application.stop()
 
 
+def _not_a_closed_page(record: logging.LogRecord) -> bool:
+    """A viewer who closes the page while something is being sent is no fault."""
+    return not (record.exc_info and isinstance(record.exc_info[1], WebSocketClosedError))
+
+
 def make_server(reading: Reading, port: int):
     """The server for a reading, not yet started; the first opening of the path begins at once."""
-    pn.config.session_history = 0
+    logging.getLogger("bokeh.server.views.ws").setLevel(logging.ERROR)
+    logging.getLogger("asyncio").addFilter(_not_a_closed_page)
     try:
         reading.matter()
     except Exception:  # being opened: the page says how far it is, and what went wrong if it does

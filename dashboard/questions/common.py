@@ -96,12 +96,14 @@ def ribbon_box(desk: Desk) -> ribbon.Box:
     return ribbon.Box(max(desk.sizes.ribbon, 280), desk.look.label_px)
 
 
-def moments(course: ribbon.Course, desk: Desk) -> dict[str, object]:
-    """What the slider under the ribbon needs to know."""
-    at = ribbon.places(course, ribbon_box(desk))
+def moments(desk: Desk) -> dict[str, object]:
+    """What the slider under the ribbon needs to know; never waits for a frame's figures."""
+    run = desk.run
+    times = run.times
+    course = ribbon.Course(times.seconds, times.instants, discharge(desk.reading.story(desk.run_id)), (), desk.index)
     return {
-        "index": course.index, "last": len(course.seconds) - 1, "words": ribbon.words(course, desk.units),
-        "places": [round(float(x), 1) for x in at],
+        "index": course.index, "last": run.n_frames - 1, "words": ribbon.words(course, desk.units),
+        "places": [round(float(x), 1) for x in ribbon.places(course, ribbon_box(desk))],
     }
 
 

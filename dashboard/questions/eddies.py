@@ -12,6 +12,7 @@ from ..choices import SHADES, TUBES
 from ..raster import View
 from ..reading import Story
 from ..results import Working
+from ..units import Units
 from ..views import marks, table
 from ..views import ribbon as strip
 from ..views.scene import Scene, Water, ZoneMark
@@ -54,7 +55,7 @@ class Eddies(Question):
             return f"No eddy turns {here}.{more}"
         largest = zone.area_m2 == max(z.area_m2 for z in zones)
         u, ids = desk.units, self.cautions(desk)
-        who = f'<em class="subject">{text.safe(zone.id)}</em> {_where(zone)}'
+        who = f'<em class="subject">{text.safe(zone.id)}</em> {_where(zone, desk.units)}'
         first = f"{text.count(len(zones), 'eddy', 'eddies')} turn {here}. {'The largest' if largest else 'Of these'}, {who},"
         if len(zones) == 1:
             first = f"One eddy turns {here}: {who}. It"
@@ -110,9 +111,7 @@ class Eddies(Question):
 
     def key_html(self, desk: Desk) -> str:
         shade = desk.choices.shade
-        top = desk.reading.known(("top", desk.run_id, shade))
-        if top is None:
-            return ""
+        top = desk.reading.top(desk.run_id, shade)
         ramp = marks.ramp_key(shade.capitalize(), top, "m/s" if shade == "speed" else "m", desk.units)
         return ramp + ("" if desk.sizes.narrow or desk.look.hall else marks.hatch_key())
 
@@ -121,7 +120,7 @@ class Eddies(Question):
         u = desk.units
         through = u.quantity(ledger.sf.through_discharge_m3_s, "m3/s")
         eddies = "; ".join(
-            f"{text.safe(z.id)} {_where(z)}, {z.rotation}, {u.quantity(z.area_m2, 'm2')}" for z in ledger.zones.zones
+            f"{text.safe(z.id)} {_where(z, u)}, {z.rotation}, {u.quantity(z.area_m2, 'm2')}" for z in ledger.zones.zones
         )
         return f"Map of the reach with {through} flowing through, in tubes of equal discharge. Eddies: {eddies or 'none'}."
 
@@ -129,7 +128,7 @@ class Eddies(Question):
         return strip.draw(self.course(desk), common.ribbon_box(desk), desk.units)
 
     def moments(self, desk: Desk) -> dict[str, object]:
-        return common.moments(self.course(desk), desk)
+        return common.moments(desk)
 
     def course(self, desk: Desk) -> strip.Course:
         """What the ribbon shows: discharge and the largest eddies, with the subject among them."""
@@ -199,14 +198,24 @@ class Eddies(Question):
         return chosen or max(zones, key=lambda z: z.area_m2, default=None)
 
 
-def _where(zone: Zone) -> str:
+def _where(zone: Zone, units: Units) -> str:
     """Where an eddy is, in words that follow its tag in a sentence."""
-    name = text.safe(zone.name or zone.kind).replace(", chainage", ", at chainage").replace(" m", "\u00a0m")
+    name, chainage = _place(zone, units)
     if zone.kind == "behind structure":
-        return f"at {name}"
-    if zone.kind in ("at bank", "side bay"):
-        return f"{'in' if zone.kind == 'side bay' else 'on'} the {name}"
-    return f"a {name}"
+        name = f"at {name}"
+    elif zone.kind in ("at bank", "side bay"):
+        name = f"{'in' if zone.kind == 'side bay' else 'on'} the {name}"
+    else:
+        name = f"a {name}"
+    return f"{name} at {chainage}" if chainage else name
+
+
+def _place(zone: Zone, units: Units) -> tuple[str, str]:
+    """The eddy's place and, where its name holds one, its chainage in display units, as HTML."""
+    name, found, _ = (zone.name or zone.kind).partition(", chainage")
+    if not found or zone.chainage_m is None:
+        return text.safe(name), ""
+    return text.safe(name), f"chainage {units.quantity(round(zone.chainage_m), 'm', digits=4)}"
 
 
 def _left_out(ledger: FrameLedger, unlisted: int) -> str:
@@ -241,13 +250,12 @@ def _line(zone: Zone, subject: bool, desk: Desk, ids: tuple[str, ...]) -> table.
         span = _span(zone, figure)
         return u.number(getattr(zone, figure), unit, *span), u.span(*span, unit)
 
-    place, _, chainage = (zone.name or zone.kind).partition(", chainage")
-    chainage = f"chainage{chainage}" if chainage else ""
+    place, chainage = _place(zone, u)
     coarse = footnote(ids, "wake-detail") if _UNDER_RESOLVED in zone.flags else ""
     few = desk.look.hall or desk.sizes.narrow
     return table.Line(
         (
-            (f"{marks.turning(zone.rotation)} {text.safe(zone.id)}", ""), (text.safe(place) + coarse, text.safe(chainage).replace(" m", "\u00a0m")),
+            (f"{marks.turning(zone.rotation)} {text.safe(zone.id)}", ""), (place + coarse, chainage),
             cell("area_m2", "m2"),
             *(() if few else (cell("recirculating_discharge_m3_s", "m3/s"), cell("rotation_time_s", "s"))),
         ),

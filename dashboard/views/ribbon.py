@@ -133,7 +133,7 @@ def _discharge(course: Course, box: Box, units: Units, x: np.ndarray) -> str:
     if known.sum() < 1:
         return out[0]
     f = units.factor("m3/s")
-    step = round_step(max(float(np.nanmax(q)) * f, 1e-9) / 3, steps=(1, 2, 2.5, 5))
+    step = round_step(max(float(np.nanmax(q)) * f, 1e-9) / 2, steps=(1, 2.5, 5))
     top = max(float(np.nanmax(q)) * f * 1.06, step)
     y = box.base - q * f / top * (box.base - box.flag - 4)
     for run in _pieces(known):

@@ -201,7 +201,20 @@ class Desk {
     const figure = this.figure();
     if (!figure) return;
     for (const range of [figure.x_range, figure.y_range]) range.change.connect(() => this.overlay());
-    new ResizeObserver(() => this.overlay()).observe(document.getElementById("map"));
+    const map = document.getElementById("map");
+    new ResizeObserver(() => {
+      this.overlay();
+      this.quiet(map);
+    }).observe(map);
+    this.quiet(map);
+  }
+
+  // The canvas is no stop for the Tab key: the map itself is one, with a name and keys that do something.
+  quiet(node) {
+    for (const element of node.querySelectorAll("*")) {
+      if (element.shadowRoot) this.quiet(element.shadowRoot);
+      if (element.tabIndex >= 0 && !element.matches("button")) element.tabIndex = -1;
+    }
   }
 
   // Pixels of a local point on the map, and back.
