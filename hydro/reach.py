@@ -191,11 +191,11 @@ def automatic_sections(centre_line: CentreLine, xy: np.ndarray, spacing_m: float
     list of (chainage, (2, 2) local points from left bank to right bank)
         None within half a spacing of the mesh's ends, where a section would leave the model.
     """
-    s, _ = centre_line.locate(xy)
+    s, n = centre_line.locate(xy)
     low, high = max(0.0, float(s.min())), min(centre_line.length, float(s.max()))
     out = []
     for chainage in np.arange(low + spacing_m / 2, high - spacing_m / 2, spacing_m):
-        line = section_at(centre_line, xy, float(chainage), spacing_m / 2)
+        line = _across(centre_line, s, n, float(chainage), spacing_m / 2)
         if line is not None:
             out.append((float(chainage), line))
     return out
@@ -206,7 +206,10 @@ def section_at(centre_line: CentreLine, xy: np.ndarray, chainage: float, near_m:
 
     Nodes ``xy`` (n, 2) within ``near_m`` of the chainage set its ends; None where there are none.
     """
-    s, n = centre_line.locate(xy)
+    return _across(centre_line, *centre_line.locate(xy), chainage, near_m)
+
+
+def _across(centre_line: CentreLine, s: np.ndarray, n: np.ndarray, chainage: float, near_m: float) -> np.ndarray | None:
     near = np.abs(s - chainage) <= near_m
     if not near.any():
         return None

@@ -9,7 +9,7 @@ import numpy as np
 from shapely.geometry.base import BaseGeometry
 
 from ..frame import Frame
-from ..reach import CentreLine, section_at
+from ..reach import CentreLine, automatic_sections
 from ..section import cut, section_figures
 from .setup import outside
 
@@ -88,13 +88,12 @@ def level_change(
     ValueError
         If fewer than three sections meet water in both frames.
     """
-    s = centre_line.locate(np.vstack([a.mesh.node_xy, b.mesh.node_xy]))[0]
-    low, high = max(0.0, float(s.min())), min(centre_line.length, float(s.max()))
+    both = np.vstack([a.mesh.node_xy, b.mesh.node_xy])
     found = []
-    for chainage in np.arange(low + spacing_m / 2, high - spacing_m / 2, spacing_m):
-        levels = [_level(f, centre_line, float(chainage), spacing_m / 2) for f in (a, b)]
+    for chainage, line in automatic_sections(centre_line, both, spacing_m):
+        levels = [_level(f, line) for f in (a, b)]
         if levels[0] is not None and levels[1] is not None:
-            found.append((float(chainage), *levels))
+            found.append((chainage, *levels))
     if len(found) < 3:
         raise ValueError("fewer than three sections meet water in both runs; do they show the same reach?")
     chainage, level_a, level_b = np.array(found).T
@@ -107,10 +106,7 @@ def level_change(
     )
 
 
-def _level(frame: Frame, centre_line: CentreLine, chainage: float, near_m: float) -> float | None:
-    line = section_at(centre_line, frame.mesh.node_xy, chainage, near_m)
-    if line is None:
-        return None
+def _level(frame: Frame, line: np.ndarray) -> float | None:
     try:
         return section_figures(cut(frame, line)).mean_level_m
     except ValueError:  # the section lies between two arms of the mesh
