@@ -108,7 +108,7 @@ class Frame:
     def triangle_unit_discharge(self) -> np.ndarray:
         """(m, 2) m2/s, constant in each triangle: the faces' own, or the mean of a triangle's nodes."""
         if self.stored_on == "node":
-            return self.unit_discharge[self.mesh.triangles].mean(axis=1)
+            return of_corners(self.mesh, self.unit_discharge)
         return self.face_unit_discharge[self.mesh.triangle_face]
 
     @property
@@ -137,6 +137,12 @@ class RawFrame:
     edge_discharge: np.ndarray | None = None
 
 
+def of_corners(mesh: Mesh, values: np.ndarray) -> np.ndarray:
+    """Mean (m, ...) over the corners of each triangle of node values (n, ...): the mean of a linear field."""
+    a, b, c = (values[mesh.triangles[:, k]] for k in range(3))
+    return (a + b + c) / 3
+
+
 def face_bed_and_node_bed(mesh: Mesh, node_bed: np.ndarray | None, face_bed: np.ndarray | None):
     """Both views of the bed, m: what is missing is made from the other; NaN-free.
 
@@ -145,7 +151,7 @@ def face_bed_and_node_bed(mesh: Mesh, node_bed: np.ndarray | None, face_bed: np.
     if node_bed is None and face_bed is None:
         raise ValueError("the run has no bed level; map a variable to bed in the review, or export it.")
     if face_bed is None:
-        face_bed = mesh.triangle_to_face(node_bed[mesh.triangles].mean(axis=1))
+        face_bed = mesh.triangle_to_face(of_corners(mesh, node_bed))
     if node_bed is None:
         node_bed = to_nodes(mesh, face_bed[:, None], np.ones(mesh.n_faces, bool))[:, 0]
     return np.asarray(node_bed, float), np.asarray(face_bed, float)
@@ -175,8 +181,8 @@ def make_frame(
     if raw.stored_on == "node":
         depth = np.maximum(np.nan_to_num(raw.depth), 0.0)
         q = np.nan_to_num(raw.unit_discharge)
-        face_depth = mesh.triangle_to_face(depth[mesh.triangles].mean(axis=1))
-        face_q = mesh.triangle_to_face(q[mesh.triangles].mean(axis=1))
+        face_depth = mesh.triangle_to_face(of_corners(mesh, depth))
+        face_q = mesh.triangle_to_face(of_corners(mesh, q))
     else:
         face_depth = np.maximum(np.nan_to_num(raw.depth), 0.0)
         face_q = _face_flow(mesh, raw)

@@ -90,13 +90,13 @@ class Mesh:
     @cached_property
     def triangle_centroid(self) -> np.ndarray:
         """(m, 2) local m."""
-        return _frozen(self.node_xy[self.triangles].mean(axis=1))
+        a, b, c = (self.node_xy[self.triangles[:, k]] for k in range(3))
+        return _frozen((a + b + c) / 3)
 
     @cached_property
     def face_centroid(self) -> np.ndarray:
         """(f, 2) local m: the centre of area."""
-        moment = self.triangle_centroid * self.triangle_area[:, None]
-        return _frozen(np.add.reduceat(moment, self.face_first_triangle[:-1]) / self.face_area[:, None])
+        return _frozen(self.triangle_to_face(self.triangle_centroid))
 
     @cached_property
     def edge_length(self) -> np.ndarray:
@@ -145,6 +145,8 @@ class Mesh:
 
     def triangle_to_face(self, values: np.ndarray) -> np.ndarray:
         """Area-weighted mean (f, ...) of values (m, ...) on triangles."""
+        if self.n_triangles == self.n_faces:
+            return values.copy()
         weight = self.triangle_area.reshape(-1, *([1] * (values.ndim - 1)))
         total = np.add.reduceat(values * weight, self.face_first_triangle[:-1])
         return total / self.face_area.reshape(-1, *([1] * (values.ndim - 1)))
@@ -188,15 +190,17 @@ def build_mesh(
     """
     world = np.asarray(node_xy, float)
     faces, count = _padded(face_nodes, len(world))
-    place = origin if origin is not None else default_origin(world[np.unique(faces[faces >= 0])])
+    used = np.zeros(len(world), bool)
+    used[faces[faces >= 0]] = True
+    place = origin if origin is not None else default_origin(world[used])
     xy = world - place
     areas = topology.signed_areas(xy[:, 0], xy[:, 1], faces, count)
-    _refuse_flat(areas, xy, faces, count, world)
+    _refuse_flat(areas, np.ptp(xy[used], axis=0).max(), faces, count, world)
     turned = int(topology.turn_clockwise(faces, count, areas))
 
-    file_face = curve.hilbert_order(_corner_means(xy, faces, count)).astype(np.int32)
+    file_face = curve.hilbert_order(topology.corner_means(xy, faces, count)).astype(np.int32)
     faces, count = faces[file_face], count[file_face]
-    file_node, faces = _number_nodes(faces, len(world))
+    file_node = topology.number_by_use(faces, count, len(world))  # leaves out nodes that no face uses
     xy = np.ascontiguousarray(xy[file_node])
 
     side_edge, edges, edge_faces, file_edge = _edges(faces, count, edge_nodes, file_node, file_face, world)
@@ -240,27 +244,13 @@ def _padded(face_nodes, n_nodes: int) -> tuple[np.ndarray, np.ndarray]:
     return faces, count
 
 
-def _refuse_flat(areas, xy, faces, count, world) -> None:
-    span = np.ptp(xy[faces[faces >= 0]], axis=0).max()
+def _refuse_flat(areas, span, faces, count, world) -> None:
     flat = np.flatnonzero(np.abs(areas) <= 1e-14 * span * span)
     if flat.size:
         x, y = world[faces[flat[0], : count[flat[0]]]].mean(axis=0)
         raise ValueError(
             f"face {flat[0]} at {x:.2f} E, {y:.2f} N has no area (and {flat.size - 1} more); remove or mend it."
         )
-
-
-def _corner_means(xy: np.ndarray, faces: np.ndarray, count: np.ndarray) -> np.ndarray:
-    return np.where((faces >= 0)[..., None], xy[faces], 0.0).sum(axis=1) / count[:, None]
-
-
-def _number_nodes(faces: np.ndarray, n_nodes: int) -> tuple[np.ndarray, np.ndarray]:
-    """Nodes in order of first use: (file numbers, faces renumbered). Nodes that no face uses are left out."""
-    used, first = np.unique(faces[faces >= 0], return_index=True)
-    file_node = used[np.argsort(first, kind="stable")].astype(np.int32)
-    new = np.full(n_nodes + 1, -1, np.int32)
-    new[file_node] = np.arange(len(file_node), dtype=np.int32)
-    return file_node, np.ascontiguousarray(new[faces])
 
 
 def _edges(faces, count, edge_nodes, file_node, file_face, world):

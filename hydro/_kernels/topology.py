@@ -176,8 +176,51 @@ def triangle_neighbours(triangles, start, order):
     return out
 
 
+@njit(cache=True, nogil=True)
+def _counted(keys, start, order):
+    """Counting sort: fills start (size + 1,) and order (n,), which keeps the order within a key."""
+    for k in keys:
+        start[k + 1] += 1
+    for i in range(start.size - 1):
+        start[i + 1] += start[i]
+    place = start[:-1].copy()
+    for i in range(keys.size):
+        order[place[keys[i]]] = i
+        place[keys[i]] += 1
+
+
 def grouped(keys: np.ndarray, size: int) -> tuple[np.ndarray, np.ndarray]:
     """Compressed lists: start (size + 1,) and order, so that order[start[i]:start[i+1]] have key i."""
-    start = np.zeros(size + 1, np.int32)
-    np.cumsum(np.bincount(keys, minlength=size), out=start[1:])
-    return start, np.argsort(keys, kind="stable").astype(np.int32)
+    start, order = np.zeros(size + 1, np.int32), np.empty(len(keys), np.int32)
+    _counted(np.ascontiguousarray(keys, np.int32), start, order)
+    return start, order
+
+
+@njit(cache=True, nogil=True)
+def corner_means(xy, faces, count):
+    """Mean (f, 2) of the corners of each face."""
+    out = np.zeros((faces.shape[0], 2))
+    for f in range(faces.shape[0]):
+        for k in range(count[f]):
+            out[f, 0] += xy[faces[f, k], 0]
+            out[f, 1] += xy[faces[f, k], 1]
+        out[f, 0] /= count[f]
+        out[f, 1] /= count[f]
+    return out
+
+
+@njit(cache=True, nogil=True)
+def number_by_use(faces, count, n_nodes):
+    """Number nodes in order of first use, in place in ``faces``; the old number (k,) of each new one."""
+    new = np.full(n_nodes, -1, np.int32)
+    old = np.empty(n_nodes, np.int32)
+    used = 0
+    for f in range(faces.shape[0]):
+        for k in range(count[f]):
+            node = faces[f, k]
+            if new[node] < 0:
+                new[node] = used
+                old[used] = node
+                used += 1
+            faces[f, k] = new[node]
+    return old[:used].copy()

@@ -8,7 +8,7 @@ from pathlib import Path
 
 import numpy as np
 
-from ..frame import RawFrame, face_bed_and_node_bed, flow_from_edges, to_nodes
+from ..frame import RawFrame, face_bed_and_node_bed, flow_from_edges, of_corners, to_nodes
 from ..mesh import Mesh
 from ..run import Note, Run, TimeAxis
 from ..settings import Settings
@@ -176,7 +176,7 @@ class _Frames:
         if source.location == self._flow.place:
             return depth
         if source.location == "node":
-            return self._mesh.triangle_to_face(depth[self._mesh.triangles].mean(axis=1))
+            return self._mesh.triangle_to_face(of_corners(self._mesh, depth))
         level = (depth + self._bed["face"])[:, None]
         at_nodes = to_nodes(self._mesh, level, depth > self._wet)[:, 0] - self._bed["node"]
         return np.fmax(at_nodes, 0.0)
@@ -255,7 +255,7 @@ def _roughness(parts: Parts) -> np.ndarray | None:
     mesh = parts.mesh
     values = f.read(0)[_order(mesh, f.location)]
     if f.location == "node":
-        values = mesh.triangle_to_face(values[mesh.triangles].mean(axis=1))
+        values = mesh.triangle_to_face(of_corners(mesh, values))
     faults.check_roughness(parts.file, f.name, values, mesh)
     return values
 

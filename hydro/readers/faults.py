@@ -20,8 +20,9 @@ ROUGHEST = 1.0
 
 def check_coordinates(file: str, names: str, xy: np.ndarray, faces: np.ndarray) -> None:
     """Every node that a face uses has coordinates; ``ValueError`` names the first that has none."""
-    used = np.unique(faces[faces >= 0])
-    missing = used[~np.isfinite(xy[used]).all(axis=1)]
+    used = np.zeros(len(xy), bool)
+    used[faces[faces >= 0]] = True
+    missing = np.flatnonzero(used & ~(np.isfinite(xy[:, 0]) & np.isfinite(xy[:, 1])))
     if missing.size:
         raise ValueError(
             f"{file}: coordinates {names} are missing at node {missing[0]} (and {missing.size - 1} more that faces use); "
@@ -37,6 +38,8 @@ def check_coordinates(file: str, names: str, xy: np.ndarray, faces: np.ndarray) 
 
 def check_faces(file: str, xy: np.ndarray, faces: np.ndarray) -> None:
     """Faces do not cross themselves; ``ValueError`` names the first that does."""
+    if faces.shape[1] == 3:
+        return
     count = (faces >= 0).sum(axis=1).astype(np.int32)
     crossed = meshcheck.self_crossing(np.ascontiguousarray(xy), faces, count)
     if crossed >= 0:
@@ -135,7 +138,7 @@ def check_roughness(file: str, name: str, values: np.ndarray, mesh: Mesh) -> Non
 def check_velocity(file: str, name: str, index: int, velocity: np.ndarray, depth: np.ndarray, wet_m: float) -> None:
     """There is a velocity somewhere in the water; ``ValueError`` when a frame has none."""
     wet = depth > wet_m
-    if wet.any() and not np.isfinite(velocity[wet]).all(axis=1).any():
+    if wet.any() and not (wet & np.isfinite(velocity[:, 0]) & np.isfinite(velocity[:, 1])).any():
         raise ValueError(
             f"{file}: velocity {name} is missing everywhere in the water of frame {index}; export it, or leave the frame out."
         )
