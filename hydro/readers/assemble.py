@@ -30,14 +30,15 @@ class Asked:
 
 @dataclass(frozen=True, eq=False)
 class Field:
-    """A quantity on nodes, faces or edges: ``read(i)`` gives its values at frame i, (places,), SI, NaN where missing.
+    """A quantity on nodes, faces or edges.
 
-    The places are in the file's order.
+    ``read(i, places)`` gives a new array of its values at frame i, SI, NaN where missing, at the places
+    (k,) that are listed by the file's numbers.
     """
 
     name: str
     location: str
-    read: Callable[[int], np.ndarray]
+    read: Callable[[int, np.ndarray], np.ndarray]
     per_length: bool = False
 
 
@@ -156,15 +157,17 @@ class _Frames:
         stored_on, components = self._flow.stored_on, self._flow.components
         if not components:
             return RawFrame(stored_on, depth, None, edge)
-        flow = np.column_stack([self._read(f, index) for f in components])
+        flow = np.empty((len(depth), 2))
+        for k, component in enumerate(components):
+            flow[:, k] = self._read(component, index)
         if self._flow.of_velocity:
             faults.check_velocity(self._file, components[0].name, index, flow, depth, self._wet)
             flow *= depth[:, None]
-        flow[depth == 0] = 0.0
+        flow[depth == 0] = 0.0  # whatever the file holds there, NaN too
         return RawFrame(stored_on, depth, flow, edge)
 
     def _read(self, f: Field, index: int) -> np.ndarray:
-        return f.read(index)[_order(self._mesh, f.location)]
+        return f.read(index, _order(self._mesh, f.location))
 
     def _depth(self, index: int) -> np.ndarray:
         """Depth where the flow stands, m; 0 where it is missing or negative."""
@@ -227,7 +230,7 @@ def _bed(parts: Parts) -> tuple[np.ndarray, np.ndarray]:
     for location in ("node", "face"):
         f = fields.get(f"{location} bed")
         if f is not None:
-            given[location] = f.read(0)[_order(mesh, location)]
+            given[location] = f.read(0, _order(mesh, location))
             faults.check_bed(parts.file, f.name, location, given[location], mesh)
     if not given:
         depth, level = fields.get("depth"), fields.get("level")
@@ -236,7 +239,7 @@ def _bed(parts: Parts) -> tuple[np.ndarray, np.ndarray]:
                 f"{parts.file} has no bed level that can be recognised; export it, or name it with mapping.bed.variable."
             )
         order = _order(mesh, depth.location)
-        derived = (level.read(0) - depth.read(0))[order]
+        derived = level.read(0, order) - depth.read(0, order)
         faults.check_bed(parts.file, f"{level.name} - {depth.name}", depth.location, derived, mesh)
         given[depth.location] = derived
         parts.notes.append(Note("bed = level - depth of the first frame", level.name))
@@ -253,7 +256,7 @@ def _roughness(parts: Parts) -> np.ndarray | None:
     if f is None:
         return None
     mesh = parts.mesh
-    values = f.read(0)[_order(mesh, f.location)]
+    values = f.read(0, _order(mesh, f.location))
     if f.location == "node":
         values = mesh.triangle_to_face(of_corners(mesh, values))
     faults.check_roughness(parts.file, f.name, values, mesh)

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import re
+from collections.abc import Callable
 from dataclasses import dataclass
 
 import numpy as np
@@ -151,5 +152,9 @@ def fields_of(
         if column is not None:
             values = values_of(file, table, column)[order].reshape(n_frames, n_places)
             key = f"{location} bed" if quantity == "bed" else quantity
-            out[key] = Field(column.heading, location, values.__getitem__)
+            out[key] = Field(column.heading, location, _reading(values))
     return out
+
+
+def _reading(values: np.ndarray) -> Callable[[int, np.ndarray], np.ndarray]:
+    return lambda index, places: values[index][places]

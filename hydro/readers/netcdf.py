@@ -96,16 +96,16 @@ def _field(
     first = choices[0]
     kept = keep.get(first.location)
 
-    def read(index: int) -> np.ndarray:
+    def read(index: int, places: np.ndarray) -> np.ndarray:
         piece = int(np.searchsorted(first_frames, index, side="right")) - 1
-        values = read_places(choices[piece], dimensions[piece], index - int(first_frames[piece]))
-        return values if kept is None else values[kept]
+        listed = places if kept is None else kept[places]
+        return read_places(choices[piece], dimensions[piece], index - int(first_frames[piece]), listed)
 
     return Field(first.variable.name, first.location, read, first.per_length)
 
 
-def read_places(choice: Choice, dimension: str | None, index: int) -> np.ndarray:
-    """Values (places,) float64 of a variable at one step of its time dimension, SI, in the file's order."""
+def read_places(choice: Choice, dimension: str | None, index: int, listed: np.ndarray | None = None) -> np.ndarray:
+    """Values (k,) float64 of a variable at one step of its time dimension, SI, at the places listed (all, if none are)."""
     variable, placed = choice.variable, choice.placed
     kept = list(variable.dimensions)
     if dimension in kept:
@@ -117,6 +117,8 @@ def read_places(choice: Choice, dimension: str | None, index: int) -> np.ndarray
     places = [d for d in kept if d in placed.dimensions]
     raw = raw.reshape([sizes[d] for d in places])
     raw = raw.transpose([places.index(d) for d in placed.dimensions]).ravel()
+    if placed.subset is None and listed is not None:
+        raw = raw[listed]  # before unpacking: stored numbers are half as long or less
     values = variable.unpacked(raw)
     if choice.factor != 1.0:
         values *= choice.factor
@@ -124,7 +126,7 @@ def read_places(choice: Choice, dimension: str | None, index: int) -> np.ndarray
         return values
     whole = np.full(placed.size, np.nan)
     whole[placed.subset] = values
-    return whole
+    return whole if listed is None else whole[listed]
 
 
 def _in_order(pieces: list[Piece], kind: str | None) -> tuple[list[Piece], np.ndarray, TimeAxis, list[Note]]:

@@ -11,7 +11,6 @@ from __future__ import annotations
 
 import re
 import threading
-from collections.abc import Callable
 from dataclasses import dataclass
 from pathlib import Path
 
@@ -58,7 +57,11 @@ def open_rasters(files: list[Path], asked: Asked) -> Run:
     fields = {q: _field(q, paths, said) for q, paths in sets.items()}
     if "bed" not in fields and not {"depth", "level"} <= set(fields):
         raise ValueError(f"{files[0].name}: the set has no bed; add bed.tif, or both depth and level of the first time.")
-    bed = fields["bed"].read(0) if "bed" in fields else fields["level"].read(0) - fields["depth"].read(0)
+    everywhere = np.arange(first.shape[0] * first.shape[1])
+    if "bed" in fields:
+        bed = fields["bed"].read(0, everywhere)
+    else:
+        bed = fields["level"].read(0, everywhere) - fields["depth"].read(0, everywhere)
     kept = np.flatnonzero(np.isfinite(bed))
     if not kept.size:
         raise ValueError(f"{files[0].name}: no cell of the set has a bed; check the no-data value of the bed.")
@@ -195,20 +198,19 @@ def _field(quantity: str, paths: list[Path], said: Said) -> Field:
     held: dict[Path, np.ndarray] = {}
     lock = threading.Lock()
 
-    def read(index: int) -> np.ndarray:
+    def read(index: int, places: np.ndarray) -> np.ndarray:
         path = paths[min(index, len(paths) - 1)]
         with lock:
             if path not in held:
                 held.clear()
                 held[path] = _values(path)
-            return held[path] * (factor * turned)
+            return held[path][places] * (factor * turned)
 
     return Field(paths[0].name, "face", read)
 
 
 def _kept(f: Field, kept: np.ndarray) -> Field:
-    read: Callable[[int], np.ndarray] = f.read
-    return Field(f.name, f.location, lambda index: read(index)[kept])
+    return Field(f.name, f.location, lambda index, places: f.read(index, kept[places]))
 
 
 def _values(path: Path) -> np.ndarray:

@@ -91,7 +91,8 @@ class Stored:
     def raw(self, index: Any = ...) -> np.ndarray:
         """Values as stored, in the machine's byte order."""
         with self.store.opened() as variables:
-            values = np.array(variables[self.name][() if self.shape == () else index])
+            values = variables[self.name][() if self.shape == () else index]
+            values = np.array(values) if not self.store.hdf5 else np.asarray(values)
         return values.astype(values.dtype.newbyteorder("="), copy=False)
 
     def values(self, index: Any = ...) -> np.ndarray:
@@ -100,8 +101,8 @@ class Stored:
 
     def unpacked(self, raw: np.ndarray) -> np.ndarray:
         """Stored numbers to float64 by the packing attributes; fill and out-of-range values are NaN."""
-        out = raw.astype(np.float64)
         missing = self._missing(raw)
+        out = raw.astype(np.float64)
         scale, offset = (self._number(a, default) for a, default in (("scale_factor", 1.0), ("add_offset", 0.0)))
         if scale != 1.0:
             out *= scale
@@ -148,7 +149,8 @@ class Stored:
         low, high = self._valid()
         masks += [raw < low] if low is not None else []
         masks += [raw > high] if high is not None else []
-        return np.logical_or.reduce(masks) if masks else None
+        missing = np.logical_or.reduce(masks) if masks else None
+        return missing if missing is not None and missing.any() else None
 
     def _valid(self) -> tuple[Any, Any]:
         both = self.attributes.get("valid_range")
