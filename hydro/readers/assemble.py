@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Callable
+from concurrent.futures import ThreadPoolExecutor
 from dataclasses import dataclass, field
 from pathlib import Path
 
@@ -152,18 +153,22 @@ class _Frames:
         self._edge = parts.fields.get("edge_discharge")
 
     def __call__(self, index: int) -> RawFrame:
-        depth = self._depth(index)
-        edge = self._edge_discharge(index)
         stored_on, components = self._flow.stored_on, self._flow.components
+        with ThreadPoolExecutor(2) as side_by_side:
+            read = [side_by_side.submit(self._read, f, index) for f in components]
+            depth = self._depth(index)
+            edge = self._edge_discharge(index)
+            values = [r.result() for r in read]
         if not components:
             return RawFrame(stored_on, depth, None, edge)
-        flow = np.empty((len(depth), 2))
-        for k, component in enumerate(components):
-            flow[:, k] = self._read(component, index)
         if self._flow.of_velocity:
-            faults.check_velocity(self._file, components[0].name, index, flow, depth, self._wet)
-            flow *= depth[:, None]
-        flow[depth == 0] = 0.0  # whatever the file holds there, NaN too
+            faults.check_velocity(self._file, components[0].name, index, values, depth > self._wet)
+        flow = np.empty((len(depth), 2))
+        for k, value in enumerate(values):
+            np.multiply(value, depth if self._flow.of_velocity else 1.0, out=flow[:, k])
+        dry = depth == 0
+        if dry.any():
+            flow[dry] = 0.0  # whatever the file holds there, NaN too
         return RawFrame(stored_on, depth, flow, edge)
 
     def _read(self, f: Field, index: int) -> np.ndarray:

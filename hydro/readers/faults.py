@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
+
 import numpy as np
 import shapely
 
@@ -135,10 +137,9 @@ def check_roughness(file: str, name: str, values: np.ndarray, mesh: Mesh) -> Non
         )
 
 
-def check_velocity(file: str, name: str, index: int, velocity: np.ndarray, depth: np.ndarray, wet_m: float) -> None:
-    """There is a velocity somewhere in the water; ``ValueError`` when a frame has none."""
-    wet = depth > wet_m
-    if wet.any() and not (wet & np.isfinite(velocity[:, 0]) & np.isfinite(velocity[:, 1])).any():
+def check_velocity(file: str, name: str, index: int, velocity: Sequence[np.ndarray], wet: np.ndarray) -> None:
+    """Some wet place (k,) bool has both components of velocity; ``ValueError`` when a frame has none."""
+    if wet.any() and not (wet & np.isfinite(velocity[0]) & np.isfinite(velocity[1])).any():
         raise ValueError(
             f"{file}: velocity {name} is missing everywhere in the water of frame {index}; export it, or leave the frame out."
         )

@@ -10,6 +10,7 @@ import gc
 import os
 import threading
 import warnings
+import zlib
 from collections.abc import Iterator, Mapping
 from contextlib import contextmanager
 from dataclasses import dataclass, field
@@ -20,6 +21,8 @@ import h5netcdf
 import h5py
 import numpy as np
 from scipy.io import netcdf_file
+
+from . import chunks
 
 _BLOCK_BYTES = 128 * 2**20  # most that one variable's block of times may hold
 _HDF5 = b"\x89HDF\r\n\x1a\n"
@@ -55,7 +58,7 @@ class Store:
                         yield arrays
                     finally:
                         arrays.clear()  # a map on disk can only be closed when no array refers to it
-        except OSError as error:
+        except (OSError, zlib.error) as error:
             raise ValueError(
                 f"{self.path.name}: a part cannot be read ({_first_line(error)}); copy or export the file again."
             ) from error
@@ -91,9 +94,14 @@ class Stored:
     def raw(self, index: Any = ...) -> np.ndarray:
         """Values as stored, in the machine's byte order."""
         with self.store.opened() as variables:
-            values = variables[self.name][() if self.shape == () else index]
-            values = np.array(values) if not self.store.hdf5 else np.asarray(values)
+            values = self._step(variables[self.name], index) if self.store.hdf5 else None
+            if values is None:
+                values = np.array(variables[self.name][() if self.shape == () else index])
         return values.astype(values.dtype.newbyteorder("="), copy=False)
+
+    def _step(self, dataset: h5py.Dataset, index: Any) -> np.ndarray | None:
+        single = isinstance(index, tuple) and len(index) == 1 and isinstance(index[0], int)
+        return chunks.read_step(dataset, index[0]) if single else None
 
     def values(self, index: Any = ...) -> np.ndarray:
         """Values as float64: unpacked, missing ones NaN."""
