@@ -105,7 +105,7 @@ def test_streamline_pathline_and_streakline_coincide_in_steady_flow():
 def _cylinder(at, radius, speed):
     def psi(x, y):
         x, y = x - at[0], y - at[1]
-        return speed * y * (1 - radius**2 / np.maximum(x**2 + y**2, radius**2))
+        return speed * y * (1 - radius**2 / np.maximum(x**2 + y**2, radius**2 / 2))
 
     return psi
 
