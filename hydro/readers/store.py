@@ -252,8 +252,8 @@ def _open_classic(path: Path) -> Store:
 def _store(path, attributes, header, groups, hdf5) -> Store:
     variables: dict[str, Stored] = {}
     store = Store(path, attributes, variables, groups, hdf5, _stamp(path))
-    for name, dimensions, shape, dtype, own, chunks in header:
-        variables[name] = Stored(store, name, dimensions, shape, np.dtype(dtype), own, chunks or None)
+    for name, dimensions, shape, dtype, own, together in header:
+        variables[name] = Stored(store, name, dimensions, shape, np.dtype(dtype), own, together or None)
     return store
 
 

@@ -65,7 +65,7 @@ def time_dimension(variables: list[Stored], store: Store, mesh_dimensions: set[s
             elif size > 1:
                 raise ValueError(
                     f"{variable} has a dimension {name!r} of {size} steps that is neither time nor mesh; export "
-                    "depth-averaged results with one value a place and time."
+                    "depth-averaged results with one value a place and time, or name its times with mapping.time.variable."
                 )
     return found
 
