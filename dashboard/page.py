@@ -4,17 +4,19 @@ from __future__ import annotations
 
 import logging
 from collections.abc import Callable
-from dataclasses import replace
+from dataclasses import fields, replace
 from typing import Any
 
 import numpy as np
+
+from hydro.queries import ask
 
 from . import theme
 from .choices import Choices, History, from_query
 from .questions import QUESTIONS
 from .questions.base import Desk, Question, Sizes
 from .raster import View
-from .reading import STORY, Reading
+from .reading import QUERIES, STORY, Reading
 from .results import Working
 from .screen import Screen
 from .views.figure import MapFigure
@@ -78,7 +80,8 @@ class Page:
             if act is None:
                 raise ValueError(f"the page sent {name!r}, which the desk does not know; reload the page.")
             act(value)
-            self.trouble = ""
+            if name != "size":  # what the browser measures answers nothing
+                self.trouble = ""
         except Working:
             return  # a button pressed before its figures were there
         except (ValueError, KeyError, TypeError) as error:
@@ -114,6 +117,30 @@ class Page:
         world = self.desk().run.mesh.to_world(local).round(2)
         self.own_section = True
         self.choose(section=tuple(float(v) for v in world.ravel()))
+
+    def on_line(self, name: str) -> None:
+        found = QUESTIONS["sections"].named(self.desk())  # type: ignore[attr-defined]
+        if name in found:
+            world = self.desk().run.mesh.to_world(np.array(found[name])).round(2)
+            self.own_section = True
+            self.choose(section=tuple(float(v) for v in world.ravel()), view=None)
+
+    def on_against(self, run_id: str) -> None:
+        self.choose(against=run_id)
+
+    def on_ask(self, form: dict) -> None:
+        review = self.reading.matter().review
+        if review is None:
+            raise ValueError("queries are kept in a review; open one to write them.")
+        x, y = self.choices.view[:2] if self.choices.view else (None, None)
+        ask(
+            review.folder, str(form.get("text", ""))[:2000], who=str(form.get("who", ""))[:200], run=self.desk().run_id,
+            x=x, y=y, seconds=self.choices.seconds, view=self.choices.query(),
+        )
+        self.reading.results.tell(QUERIES)
+
+    def on_follow(self, query: str) -> None:
+        self.choose(**{f.name: getattr(from_query(query), f.name) for f in fields(Choices)})
 
     def on_shade(self, value: str) -> None:
         self.choose(shade=value)
@@ -241,7 +268,9 @@ class Page:
     def _told(self, key: Any) -> None:
         """A result is ready (called from the worker)."""
         self._finished.add(key)
-        if self.screen.awaits(key):
+        if key == QUERIES:
+            self.later(self.refresh)
+        elif self.screen.awaits(key):
             self.later(self._ready)
 
     def _ready(self) -> None:
@@ -262,3 +291,8 @@ class Page:
             log.exception("the screen could not be drawn")
             raise
         self.push = False
+        # A result may have come between asking for it and waiting for it; its message was then missed.
+        missed = self.screen.awaited(self.reading.results.have)
+        if missed:
+            self.screen.only = self.screen.waiting_for(missed)
+            self.soon()

@@ -124,6 +124,11 @@ class Results:
         self._listeners.add(told)
         return lambda: self._listeners.discard(told)
 
+    def tell(self, key: Hashable) -> None:
+        """Tell all who listen that something they show has changed elsewhere."""
+        for told in list(self._listeners):
+            told(key)
+
     def wait(self, seconds: float) -> bool:
         """Wait until nothing is left to do; False when time ran out. For scripts and tests."""
         end = time.monotonic() + seconds
@@ -177,8 +182,7 @@ class Results:
             self._made[job.key] = (value, error, job.heavy)
             self._let_go()
             self._changed.notify_all()
-        for told in list(self._listeners):
-            told(job.key)
+        self.tell(job.key)
         if error is not None:
             raise error
         return value

@@ -47,6 +47,10 @@ class Screen:
         """Parts that wait for any of these results."""
         return {part for part, waited in self.waits.items() if waited & keys}
 
+    def awaited(self, there: Callable[[Hashable], bool]) -> set[Hashable]:
+        """Results that a part waits for although they are there."""
+        return {key for keys in self.waits.values() for key in keys if there(key)}
+
     def forget(self) -> None:
         """Everything is drawn anew the next time."""
         self._dressed = None
@@ -70,7 +74,7 @@ class Screen:
             ("ribbon", lambda: question.ribbon(desk) if question.has_time else ""),
         ):
             self._part(name, due, partial(self._made, name, make))
-        self._part("side", due, lambda: self.slots.update({"section": "", "table": "", **question.side(desk)}))
+        self._part("side", due, lambda: self.slots.update({"section": "", "table": "", "body": "", **question.side(desk)}))
         self._standing(page, desk)
         self._story(page, desk)
         page.wire.param.update(slots=dict(self.slots), state=self._state(page, desk))
@@ -200,7 +204,8 @@ class Screen:
             self._put("progress", "")
             return
         results = page.reading.results
-        missing = {("beat", desk.run_id, i) for i, beat in enumerate(story.beats) if beat is None}
+        beats = [("beat", desk.run_id, i) for i in range(len(story.beats))]
+        missing = {key for key in beats if not page.reading.results.have(key)}
         self.waits.setdefault("ribbon", set()).update(missing)
         if results.stopped(STORY):
             self._put(
@@ -220,13 +225,18 @@ class Screen:
         }
         if all(isinstance(key, tuple) and key[0] == "followed" for key in self.waits.get("map", ())):
             state["seen"] = page.sent
-        try:
-            ends = page.question.section_ends(desk) if page.question.has_map else None
-            state["ends"] = [list(end) for end in ends] if ends else None
-            state["time"] = page.question.moments(desk) if page.question.has_time else None
-        except (Working, ValueError, OSError):
-            pass
+        ends = _ready(page.question.section_ends, desk) if page.question.has_map else None
+        state["ends"] = [list(end) for end in ends] if ends else None
+        state["time"] = _ready(page.question.moments, desk) if page.question.has_time else None
         return state
+
+
+def _ready(make: Callable[[Desk], Any], desk: Desk) -> Any:
+    """What a question gives, or None while it is being made or where it cannot be."""
+    try:
+        return make(desk)
+    except (Working, ValueError, OSError):
+        return None
 
 
 def _whole(bounds: tuple[float, float, float, float], size: tuple[int, int]) -> View:

@@ -4,23 +4,28 @@ from __future__ import annotations
 
 import re
 from collections.abc import Mapping
+from dataclasses import replace
 
 import numpy as np
 import shapely
 
 from hydro.eddies import Zone
 from hydro.ledger import FrameLedger
-from hydro.reach import Structure
+from hydro.reach import CentreLine, Structure
 from hydro.section import Section, cut, section_figures
 from hydro.section.cut import runs_right_to_left
 from hydro.transfer import barycentric
 
 from .. import text
+from ..choices import SHADES, TUBES
 from ..reading import Story
-from ..views import ribbon, section
-from ..views.scene import Name, StructureMark
+from ..results import Working
+from ..views import marks, ribbon, section
+from ..views.scene import Name, Scene, StructureMark, Water, ZoneMark
 from .base import Desk, footnote
 
+Ends = tuple[tuple[float, float], tuple[float, float]]
+UNDER_RESOLVED = "under-resolved"
 _REACH = 150.0  # m to each side of the centre line that a first section may go
 _PIER = 12.0  # m of dry ground that a section steps over
 _BANK = 2.0  # m that it goes up each bank
@@ -32,6 +37,47 @@ def structures(desk: Desk) -> tuple[StructureMark, ...]:
         StructureMark(_labelled(s), s.kind, s.geometry, s.represented_as in ("hole", "dry"))
         for s in desk.reading.reach(desk.run_id).structures
     )
+
+
+def water_scene(desk: Desk) -> Scene:
+    """Water in its tubes, banks, structures and names; only the water's shade until psi is there."""
+    reading, run_id, index = desk.reading, desk.run_id, desk.index
+    frame, shade = reading.frame(run_id, index), desk.choices.shade
+    value = frame.speed if shade == "speed" else frame.depth
+    water = Water(frame, value, reading.top(run_id, shade))
+    scene = Scene(water=water, structures=structures(desk), names=names(desk))
+    try:
+        ledger = reading.ledger(run_id, index)
+        lines, tube = reading.tubes(run_id, index, desk.choices.tubes)
+    except (Working, ValueError):  # the sentence says which; the water is shown meanwhile
+        return scene
+    water = replace(water, psi=ledger.sf.psi, tube_m3_s=tube, carries=ledger.sf.domain, tube_lines=lines)
+    return replace(scene, water=water, shore=reading.shore(run_id, index))
+
+
+def zone_mark(zone: Zone, subject: bool) -> ZoneMark:
+    """How an eddy stands on the map, with two of its streamlines."""
+    return ZoneMark(
+        zone.id, zone.contour, tuple(zone.streamlines[1::2][:2]), zone.rotation, np.asarray(zone.centre), subject,
+        UNDER_RESOLVED in zone.flags, zone.kind == "travelling", zone.separation, zone.reattachment,
+    )
+
+
+def water_words(desk: Desk, scene: Scene) -> str:
+    """"Speed in 22 tubes of 3.3 m3/s: narrow is fast." with its words as controls."""
+    choices = desk.choices
+    tube = scene.water.tube_m3_s if scene.water is not None else 0.0
+    shade = chooser("shade", choices.shade, {s: s.capitalize() for s in SHADES}, "what the shade of the water tells")
+    count = chooser("tubes", str(choices.tubes), {str(t): f"{t} tubes" for t in TUBES}, "number of stream tubes")
+    of = f" of {desk.units.quantity(tube, 'm3/s')}" if tube else ""
+    return f"{shade} in {count}{of}: narrow is fast."
+
+
+def ramp_key(desk: Desk) -> str:
+    """The ramp with its numbers."""
+    shade = desk.choices.shade
+    top = desk.reading.top(desk.run_id, shade)
+    return marks.ramp_key(shade.capitalize(), top, "m/s" if shade == "speed" else "m", desk.units)
 
 
 def _labelled(structure: Structure) -> str:
@@ -91,6 +137,13 @@ def discharge(story: Story) -> np.ndarray:
     return np.array([b.discharge_m3_s if b else np.nan for b in story.beats])
 
 
+def plain_course(desk: Desk) -> ribbon.Course:
+    """The ribbon without rows: discharge and the cursor."""
+    times = desk.run.times
+    found = discharge(desk.reading.story(desk.run_id))
+    return ribbon.Course(times.seconds, times.instants, found, (), desk.index)
+
+
 def ribbon_box(desk: Desk) -> ribbon.Box:
     """The ribbon's lines for this look and window."""
     return ribbon.Box(max(desk.sizes.ribbon, 280), desk.look.label_px)
@@ -98,11 +151,9 @@ def ribbon_box(desk: Desk) -> ribbon.Box:
 
 def moments(desk: Desk) -> dict[str, object]:
     """What the slider under the ribbon needs to know; never waits for a frame's figures."""
-    run = desk.run
-    times = run.times
-    course = ribbon.Course(times.seconds, times.instants, discharge(desk.reading.story(desk.run_id)), (), desk.index)
+    course = plain_course(desk)
     return {
-        "index": course.index, "last": run.n_frames - 1, "words": ribbon.words(course, desk.units),
+        "index": course.index, "last": desk.run.n_frames - 1, "words": ribbon.words(course, desk.units),
         "places": [round(float(x), 1) for x in ribbon.places(course, ribbon_box(desk))],
     }
 
@@ -112,26 +163,33 @@ def natural(name: str) -> tuple:
     return tuple(int(p) if p.isdigit() else p for p in re.split(r"(\d+)", name))
 
 
-def section_ends(desk: Desk, zone: Zone | None) -> tuple[tuple[float, float], tuple[float, float]]:
-    """Left and right end of the section, local m: the reader's, else across the river at the subject."""
-    mesh, centre = desk.run.mesh, desk.reading.reach(desk.run_id).centre_line
-    assert centre is not None  # one is proposed where the review has none
-    if desk.choices.section is not None:
-        x1, y1, x2, y2 = desk.choices.section
-        a, b = mesh.to_local(np.array([[x1, y1], [x2, y2]]))
-        line = np.array([a, b])
-        if runs_right_to_left(line, centre):
-            line = line[::-1]
-        return (float(line[0, 0]), float(line[0, 1])), (float(line[1, 0]), float(line[1, 1]))
+def chosen_ends(desk: Desk) -> Ends:
+    """The reader's section, local m, turned so that the left bank comes first."""
+    assert desk.choices.section is not None
+    x1, y1, x2, y2 = desk.choices.section
+    line = desk.run.mesh.to_local(np.array([[x1, y1], [x2, y2]]))
+    if runs_right_to_left(line, _centre_line(desk)):
+        line = line[::-1]
+    return (float(line[0, 0]), float(line[0, 1])), (float(line[1, 0]), float(line[1, 1]))
+
+
+def first_ends(desk: Desk, zone: Zone | None) -> Ends:
+    """A section where the reader has drawn none: across the river at the subject, else in the middle."""
+    centre = _centre_line(desk)
     at = np.asarray(zone.centre) if zone is not None else centre.at(np.array([centre.length / 2]))[0]
     chainage, offset = (float(v[0]) for v in centre.locate(at))
     return across(desk, chainage, offset)
 
 
-def across(desk: Desk, chainage: float, offset: float = 0.0) -> tuple[tuple[float, float], tuple[float, float]]:
-    """A line square to the centre line through the water round an offset, from bank to bank."""
-    centre, mesh = desk.reading.reach(desk.run_id).centre_line, desk.run.mesh
+def _centre_line(desk: Desk) -> CentreLine:
+    centre = desk.reading.reach(desk.run_id).centre_line
     assert centre is not None  # one is proposed where the review has none
+    return centre
+
+
+def across(desk: Desk, chainage: float, offset: float = 0.0) -> Ends:
+    """A line square to the centre line through the water round an offset, from bank to bank."""
+    centre, mesh = _centre_line(desk), desk.run.mesh
     frame = desk.reading.frame(desk.run_id, desk.index)
     offsets = np.arange(_REACH, -_REACH - 0.5, -0.5)
     points = np.vstack([centre.at(np.array([chainage]), float(o)) for o in offsets])

@@ -2,25 +2,24 @@
 
 from __future__ import annotations
 
+from dataclasses import replace
+
 import numpy as np
 
 from hydro.eddies import Zone
 from hydro.ledger import FrameLedger
 
 from .. import text
-from ..choices import SHADES, TUBES
 from ..raster import View
 from ..reading import Story
-from ..results import Working
 from ..units import Units
 from ..views import marks, table
 from ..views import ribbon as strip
-from ..views.scene import Scene, Water, ZoneMark
+from ..views.scene import Scene
 from . import common
 from .base import Desk, Question, footnote
 
 _ROWS_DESK, _ROWS_HALL = 6, 1
-_UNDER_RESOLVED = "under-resolved"
 
 
 class Eddies(Question):
@@ -73,24 +72,12 @@ class Eddies(Question):
         )
 
     def scene(self, desk: Desk) -> Scene:
-        reading, run_id, index = desk.reading, desk.run_id, desk.index
-        frame = reading.frame(run_id, index)
-        shade = desk.choices.shade
-        value = frame.speed if shade == "speed" else frame.depth
-        structures = common.structures(desk)
-        water = Water(frame, value, reading.top(run_id, shade))
-        try:
-            ledger = self.ledger(desk)
-            lines, tube = reading.tubes(run_id, index, desk.choices.tubes)
-        except (Working, ValueError):  # the sentence says which; the water is shown meanwhile
-            return Scene(water=water, structures=structures, names=common.names(desk))
-        water = Water(frame, value, water.top, ledger.sf.psi, tube, ledger.sf.domain, lines)
+        scene = common.water_scene(desk)
+        if not scene.shore:
+            return scene
         subject = self.subject(desk)
-        return Scene(
-            water=water, shore=reading.shore(run_id, index), structures=structures,
-            zones=tuple(_mark(z, z is subject) for z in ledger.zones.zones), names=common.names(desk),
-            section=self.section_ends(desk),
-        )
+        zones = tuple(common.zone_mark(z, z is subject) for z in self.ledger(desk).zones.zones)
+        return replace(scene, zones=zones, section=self.section_ends(desk))
 
     def view(self, desk: Desk):
         zone = self.subject(desk)
@@ -99,20 +86,13 @@ class Eddies(Question):
         return common.view_of(desk, zone.contour.bounds, self.section_ends(desk))
 
     def caption(self, desk: Desk, scene: Scene, view: View) -> str:
-        choices, u = desk.choices, desk.units
-        tube = scene.water.tube_m3_s if scene.water is not None else 0.0
-        shade = common.chooser("shade", choices.shade, {s: s.capitalize() for s in SHADES}, "what the shade of the water tells")
-        count = common.chooser("tubes", str(choices.tubes), {str(t): f"{t} tubes" for t in TUBES}, "number of stream tubes")
-        of = f" of {u.quantity(tube, 'm3/s')}" if tube else ""
-        words = f"<i>Plate 2.</i> {shade} in {count}{of}: narrow is fast."
+        words = f"<i>Plate 2.</i> {common.water_words(desk, scene)}"
         if not desk.sizes.narrow:
             words += f" {marks.triangle(True)} leaves the wall {marks.triangle(False)} returns."
         return words
 
     def key_html(self, desk: Desk) -> str:
-        shade = desk.choices.shade
-        top = desk.reading.top(desk.run_id, shade)
-        ramp = marks.ramp_key(shade.capitalize(), top, "m/s" if shade == "speed" else "m", desk.units)
+        ramp = common.ramp_key(desk)
         return ramp + ("" if desk.sizes.narrow or desk.look.hall else marks.hatch_key())
 
     def alternative(self, desk: Desk) -> str:
@@ -185,7 +165,9 @@ class Eddies(Question):
         return ("sensitivity", "wake-detail", "rotation-time", "section-discharge", "no-roller")
 
     def section_ends(self, desk: Desk):
-        return common.section_ends(desk, self.subject(desk))
+        if desk.choices.section is not None:
+            return common.chosen_ends(desk)
+        return common.first_ends(desk, self.subject(desk))
 
     def ledger(self, desk: Desk) -> FrameLedger:
         """Stream function and eddies of the chosen frame."""
@@ -235,14 +217,6 @@ def _span(zone: Zone, figure: str) -> tuple[float | None, float | None]:
     return zone.sensitivity.get(figure, (None, None))
 
 
-def _mark(zone: Zone, subject: bool) -> ZoneMark:
-    inner = tuple(zone.streamlines[1::2][:2])
-    return ZoneMark(
-        zone.id, zone.contour, inner, zone.rotation, np.asarray(zone.centre), subject, _UNDER_RESOLVED in zone.flags,
-        zone.kind == "travelling", zone.separation, zone.reattachment,
-    )
-
-
 def _line(zone: Zone, subject: bool, desk: Desk, ids: tuple[str, ...]) -> table.Line:
     u = desk.units
 
@@ -251,7 +225,7 @@ def _line(zone: Zone, subject: bool, desk: Desk, ids: tuple[str, ...]) -> table.
         return u.number(getattr(zone, figure), unit, *span), u.span(*span, unit)
 
     place, chainage = _place(zone, u)
-    coarse = footnote(ids, "wake-detail") if _UNDER_RESOLVED in zone.flags else ""
+    coarse = footnote(ids, "wake-detail") if common.UNDER_RESOLVED in zone.flags else ""
     few = desk.look.hall or desk.sizes.narrow
     return table.Line(
         (

@@ -33,12 +33,12 @@ class Desk {
       for (const place of document.querySelectorAll(`[data-slot="${name}"]`)) this.put(place, html);
     }
     this.state = state;
+    if (state.seen === this.sent) this.release();
     for (const name of ["mode", "view", "arrangement", "question", "working"]) root.dataset[name] = state[name] ?? "";
     document.title = state.title;
     this.address(state);
     this.time(state);
     this.overlay();
-    if (state.seen === this.sent) this.release();
   }
 
   put(place, html) {
@@ -60,7 +60,7 @@ class Desk {
     if (!slider || !state.time) return;
     slider.max = state.time.last;
     slider.disabled = state.time.last === 0;
-    if (!this.moving) slider.value = state.time.index;
+    if (!this.moving && !this.busy) slider.value = state.time.index;
     slider.setAttribute("aria-valuetext", state.time.words);
     this.cursor(Number(slider.value));
   }

@@ -9,12 +9,13 @@ from collections.abc import Iterator
 from pathlib import Path
 
 import pytest
-from playwright.sync_api import BrowserContext, expect, sync_playwright
+from playwright.sync_api import Browser, BrowserContext, expect
 
 from .conftest import ROOT, Server, Watch, _wait_for_answer, end, free_port, launch_options
 from .desk import PATIENCE, open_desk
 
 pytestmark = pytest.mark.browser
+REVIEW = "sample_reach"
 
 
 class Desk:
@@ -27,7 +28,7 @@ class Desk:
 
     def start(self) -> None:
         command = [sys.executable, "-c", "import sys; from dashboard.cli import main; sys.exit(main())",
-                   "open", "sample_reach", "--port", str(self.port), "--no-browser"]
+                   "open", REVIEW, "--port", str(self.port), "--no-browser"]
         with self.log.open("ab") as out:
             self.process = subprocess.Popen(command, cwd=ROOT, stdout=out, stderr=subprocess.STDOUT, stdin=subprocess.DEVNULL)
         _wait_for_answer(Server(self.address, self.log), self.process)
@@ -47,11 +48,10 @@ def desk(tmp_path: Path) -> Iterator[Desk]:
 
 
 @pytest.fixture
-def installed(chromium_path: str, tmp_path: Path) -> Iterator[BrowserContext]:
+def installed(browser: Browser, chromium_path: str, tmp_path: Path) -> Iterator[BrowserContext]:
     """A browser with a profile of its own, where service workers live."""
-    with sync_playwright() as playwright, contextlib.closing(
-        playwright.chromium.launch_persistent_context(str(tmp_path / "profile"), **launch_options(chromium_path))
-    ) as context:
+    profile = str(tmp_path / "profile")
+    with contextlib.closing(browser.browser_type.launch_persistent_context(profile, **launch_options(chromium_path))) as context:
         yield context
 
 

@@ -1,0 +1,132 @@
+"""Arrival: what has arrived, and what must be asked before relying on it?"""
+
+from __future__ import annotations
+
+from dataclasses import replace
+
+import numpy as np
+
+from hydro.arrival import Finding
+from hydro.queries import Query
+
+from .. import text
+from ..raster import View
+from ..views import ribbon as strip
+from ..views import table
+from ..views.scene import PointMark, Scene
+from . import common
+from .base import Desk, Question
+
+_WORDS = {"resolve before use": "resolve before use", "ask": "ask", "note": "note"}
+
+
+class Arrival(Question):
+    """The audit's findings, and the queries that people wrote."""
+
+    key = "arrival"
+    word = "Arrival"
+    asks = "What has arrived, and what must be asked?"
+    places = (("subject", "the finding"),)
+
+    def summary(self, desk: Desk) -> str:
+        found = desk.reading.known(("audit", desk.run_id))
+        if found is None:
+            return "not looked at yet"
+        ask = sum(f.grade != "note" for f in found)
+        return f"{ask} to ask, {len(found) - ask} to note"
+
+    def sentence(self, desk: Desk) -> str:
+        found = self.findings(desk)
+        grave = [f for f in found if f.grade == "resolve before use"]
+        ask = [f for f in found if f.grade == "ask"]
+        run = text.safe(desk.run.name)
+        if not grave and not ask:
+            return f"The audit of {run} found nothing to ask; {text.count(len(found), 'thing').lower()} to note."
+        first = (grave or ask)[0].sentence.rstrip(".")
+        parts = []
+        if grave:
+            parts.append(f"<b>{text.count(len(grave), 'finding').lower()}</b> to resolve before use")
+        if ask:
+            parts.append(f"<b>{text.count(len(ask), 'thing').lower()}</b> to ask")
+        there = "There is" if len(grave) + len(ask) == 1 else "There are"
+        return f"{there} {text.listed(parts)} about {run}. First: <em class=\"subject\">{text.safe(first)}</em>."
+
+    def scene(self, desk: Desk) -> Scene:
+        scene = common.water_scene(desk)
+        if not scene.shore:
+            return scene
+        chosen = desk.choices.subject
+        marks = [
+            PointMark("query", np.array(f.at), label=str(i), subject=str(i) == chosen)
+            for i, f in enumerate(self.findings(desk), 1) if f.at is not None
+        ]
+        return replace(scene, points=tuple(marks))
+
+    def view(self, desk: Desk):
+        number = desk.choices.subject
+        found = self.findings(desk)
+        if number.isdigit() and 0 < int(number) <= len(found) and (at := found[int(number) - 1].at) is not None:
+            return float(at[0]), float(at[1]), 90.0
+        return None
+
+    def caption(self, desk: Desk, scene: Scene, view: View) -> str:
+        return f"<i>Plate 1.</i> Numbers stand where a finding has a place. {common.water_words(desk, scene)}"
+
+    def key_html(self, desk: Desk) -> str:
+        return common.ramp_key(desk)
+
+    def alternative(self, desk: Desk) -> str:
+        placed = sum(f.at is not None for f in self.findings(desk))
+        return f"Map of the reach with {placed} numbered places of findings."
+
+    def ribbon(self, desk: Desk) -> str:
+        return strip.draw(common.plain_course(desk), common.ribbon_box(desk), desk.units)
+
+    def moments(self, desk: Desk) -> dict[str, object]:
+        return common.moments(desk)
+
+    def side(self, desk: Desk) -> dict[str, str]:
+        lines = [
+            table.Line(
+                ((str(i), ""), (_WORDS[f.grade], ""), (text.safe(f.sentence), f"{text.safe(f.meaning)} <b>{text.safe(f.question)}</b>")),
+                str(i) == desk.choices.subject, ("subject", str(i)), f"Show finding {i}",
+            )
+            for i, f in enumerate(self.findings(desk), 1)
+        ]
+        columns = (table.Column("No.", figure=False), table.Column("Do", figure=False), table.Column("Finding", figure=False))
+        findings = table.Table("Findings", "gravest first", "Findings of the audit, gravest first", columns, lines, "Nothing found.")
+        return {"table": table.html(findings), "body": self.queries(desk)}
+
+    def queries(self, desk: Desk) -> str:
+        """The log of queries, and a form to write one; empty without a review to keep them in."""
+        items = desk.reading.queries()
+        if items is None:
+            return '<h2>Queries</h2><p>Queries are kept in a review; this is a results file alone.</p>'
+        columns = (
+            table.Column("No.", figure=False), table.Column("Query", figure=False), table.Column("State", figure=False),
+            table.Column("By", figure=False),
+        )
+        lines = [_query(q) for q in items]
+        log = table.html(table.Table("Queries", f"{len(items)} in the log", "Queries of the review", columns, lines, "No query yet."))
+        form = (
+            '<form data-send="ask" class="ask"><label>Your name <input type="text" name="who" id="ask-who" autocomplete="name" '
+            'required></label><label>Query <input type="text" name="text" id="ask-text" required></label>'
+            '<button type="submit" class="plain first">Write the query</button></form>'
+        )
+        return log + form
+
+    def cautions(self, desk: Desk) -> tuple[str, ...]:
+        return ("screening", "wake-detail", "no-roller")
+
+    def findings(self, desk: Desk) -> list[Finding]:
+        """The audit of the chosen run, gravest first."""
+        return desk.reading.audit(desk.run_id)
+
+
+def _query(q: Query) -> table.Line:
+    place = f"{q.x:.1f} E, {q.y:.1f} N" if q.x is not None and q.y is not None else ""
+    answer = f"Answer: {q.answer}" if q.answer else place
+    return table.Line(
+        ((str(q.number), ""), (text.safe(q.text), text.safe(answer)), (text.safe(q.state), text.safe(q.date)), (text.safe(q.author), "")),
+        go=("follow", q.view) if q.view else None, label=f"Open the view of query {q.number}",
+    )

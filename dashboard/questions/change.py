@@ -1,0 +1,200 @@
+"""Change: what does the proposal change, and is that more than can be told apart?"""
+
+from __future__ import annotations
+
+from dataclasses import replace
+
+import numpy as np
+import shapely
+
+from hydro.change import Change as Compared
+from hydro.change.eddies import ZoneChange
+from hydro.eddies import Zone
+
+from .. import text
+from ..raster import View
+from ..units import Units
+from ..views import ribbon as strip
+from ..views import table
+from ..views.scene import AreaMark, LineMark, Scene, Tag, Water
+from . import common
+from .base import Desk, Question, footnote
+
+SPEED_STEP = 0.1  # m/s: smaller changes of speed stay blank on the map (Leewater's own, stated in the caption)
+
+
+class Change(Question):
+    """One run against another of the same event."""
+
+    key = "change"
+    word = "Change"
+    asks = "What does the proposal change, and is that more than can be told apart?"
+    places = (("subject", "the works"),)
+
+    def summary(self, desk: Desk) -> str:
+        other = self.other(desk)
+        if not other:
+            return "needs two runs of one event"
+        change = desk.reading.known(("change", desk.run_id, desk.index, other))
+        if change is None:
+            return f"against {desk.reading.label(other)}"
+        return f"{len(change.ledger_b.zones.zones)} eddies, were {len(change.ledger_a.zones.zones)}"
+
+    def sentence(self, desk: Desk) -> str:
+        if not self.other(desk):
+            return "Change needs a second run of the same event, of another design; this review has none beside this run."
+        change, u, ids = self.change(desk), desk.units, self.cautions(desk)
+        parts = []
+        gone = [z for z in change.zones if z.state == "gone"]
+        if gone:
+            names = text.listed(text.safe(z.name) for z in gone[:2])
+            more = f" and {len(gone) - 2} more" if len(gone) > 2 else ""
+            parts.append(f'{names}{more} <em class="subject">{"is" if len(gone) == 1 else "are"} gone</em>')
+        kept = [z for z in change.zones if z.area_change_m2 is not None and z.told_apart]
+        if kept:
+            z = max(kept, key=lambda k: abs(k.area_change_m2 or 0.0))
+            grows = "grows" if (z.area_change_m2 or 0) > 0 else "shrinks"
+            parts.append(f"{text.safe(z.name)} {grows} by <b>{u.quantity(abs(z.area_change_m2 or 0.0), 'm2')}</b>")
+        levels = change.levels
+        if levels is not None and levels.headline >= 0:
+            i = levels.headline
+            rise = f"<b>{u.quantity(float(levels.rise[i]), 'm', digits=2)}</b>"
+            if levels.told_apart:
+                parts.append(f"outside the works the level rises by at most {rise}{footnote(ids, 'change')}")
+            else:
+                parts.append(f"the greatest rise of level, {rise}, cannot be told apart{footnote(ids, 'change')}")
+        if not parts:
+            return "Nothing changes by more than can be told apart."
+        sentence = "; ".join(parts)
+        return f"With {text.safe(desk.reading.label(self.other(desk)))}: {sentence}."
+
+    def scene(self, desk: Desk) -> Scene:
+        scene = common.water_scene(desk)
+        if not self.other(desk) or not scene.shore:
+            return scene
+        change = self.change(desk)
+        faster, slower = desk.reading.change_areas(desk.run_id, desk.index, self.other(desk), SPEED_STEP)
+        areas = [AreaMark("dots", faster, "more"), AreaMark("levels", slower, "less")]
+        for chosen, pattern in ((change.maps.newly_wet, "wet"), (change.maps.no_longer_wet, "dry")):
+            if chosen.any():
+                areas.append(AreaMark(pattern, _faces(change, chosen)))
+        lines, tags = [], []
+        frame = change.ledger_a.frame
+        still = Water(frame, np.zeros_like(frame.speed), 1.0)  # the water's shade tells nothing here
+        for z in change.zones:
+            for side, dotted in ((z.a, True), (z.b, False)):
+                if side is not None:
+                    lines += [_outline(side, "dotted" if dotted else "streamline", z.state == "gone")]
+            zone = z.b or z.a
+            if zone is not None:
+                tags.append(Tag(_tag(z, desk.units), tuple(zone.centre), z.state == "gone"))
+        return replace(
+            scene, water=still, areas=tuple(a for a in areas if not a.area.is_empty), lines=tuple(lines), tags=tuple(tags),
+            section=None,
+        )
+
+    def view(self, desk: Desk):
+        if not self.other(desk):
+            return None
+        change = self.change(desk)
+        bounds = [z.contour.bounds for c in change.zones for z in (c.a, c.b) if z is not None and c.state != "not distinguishable"]
+        if not bounds:
+            return None
+        b = np.array(bounds)
+        return common.view_of(desk, (*b[:, :2].min(axis=0), *b[:, 2:].max(axis=0)), None)
+
+    def caption(self, desk: Desk, scene: Scene, view: View) -> str:
+        runs = dict(desk.reading.matter().runs)
+        offered = {i: label for i, label in runs.items() if i != desk.run_id}
+        if not offered:
+            return "<i>Plate 6.</i> There is one run only."
+        other = common.chooser("against", self.other(desk), {"": "choose a run", **offered}, "the run that is compared")
+        step = desk.units.quantity(SPEED_STEP, "m/s", digits=1)
+        return (
+            f"<i>Plate 6.</i> {other} less {text.safe(runs[desk.run_id])}; speed changed by less than {step} is blank. Eddies: dotted "
+            "before, drawn out after."
+        )
+
+    def key_html(self, desk: Desk) -> str:
+        return (
+            '<div class="hatches"><div><svg class="swatch more" viewBox="0 0 28 13" aria-hidden="true">'
+            '<g><circle cx="5" cy="4" r="1.3"/><circle cx="11" cy="9" r="1.3"/><circle cx="17" cy="4" r="1.3"/>'
+            '<circle cx="23" cy="9" r="1.3"/></g><rect x=".5" y=".5" width="27" height="12"/></svg> faster</div>'
+            '<div><svg class="swatch less" viewBox="0 0 28 13" aria-hidden="true"><path d="M0 4h28M0 9h28"/>'
+            '<rect x=".5" y=".5" width="27" height="12"/></svg> slower</div></div>'
+        )
+
+    def alternative(self, desk: Desk) -> str:
+        return " ".join(f.sentence for f in self.change(desk).findings) if self.other(desk) else ""
+
+    def ribbon(self, desk: Desk) -> str:
+        return strip.draw(common.plain_course(desk), common.ribbon_box(desk), desk.units)
+
+    def moments(self, desk: Desk) -> dict[str, object]:
+        return common.moments(desk)
+
+    def side(self, desk: Desk) -> dict[str, str]:
+        if not self.other(desk):
+            return {}
+        change, u, ids = self.change(desk), desk.units, self.cautions(desk)
+        columns = (
+            table.Column("Eddy", figure=False), table.Column("before,", u.label("m2")), table.Column("after,", u.label("m2")),
+            table.Column("change,", u.label("m2")), table.Column(f"told apart{footnote(ids, 'change')}", figure=False),
+        )
+        lines = [_zone_line(z, u) for z in change.zones]
+        zones = table.html(table.Table("Eddies, matched", "", "Eddies of both runs", columns, lines, "No eddy in either run."))
+        first = "".join(f"<li>{text.safe(f.sentence)}</li>" for f in change.findings)
+        before = "".join(f"<li>{text.safe(d.sentence)}</li>" for d in change.setup)
+        said = f"<h2>In words</h2><ul>{first}</ul>" if first else ""
+        differs = before or "<li>Nothing that Leewater can see.</li>"
+        return {"table": zones, "body": f"{said}<h2>What differs outside the works</h2><ul>{differs}</ul>"}
+
+    def cautions(self, desk: Desk) -> tuple[str, ...]:
+        return ("change", "sensitivity", "wake-detail", "no-roller")
+
+    def other(self, desk: Desk) -> str:
+        """The run compared with the chosen one: the reader's, else another design's of the same event."""
+        review = desk.reading.matter().review
+        if review is None:
+            return ""
+        if desk.choices.against and desk.choices.against != desk.run_id:
+            return desk.choices.against
+        mine = review.entry(desk.run_id)
+        for entry in review.runs:
+            if entry.event == mine.event and entry.design != mine.design and entry.variant == mine.variant:
+                return entry.id
+        return ""
+
+    def change(self, desk: Desk) -> Compared:
+        """The comparison of the chosen frame with the other run's."""
+        return desk.reading.change(desk.run_id, desk.index, self.other(desk))
+
+
+def _faces(change: Compared, chosen: np.ndarray) -> shapely.Geometry:
+    mesh = change.ledger_a.frame.mesh
+    return shapely.union_all(shapely.polygons(mesh.node_xy[mesh.triangles[chosen[mesh.triangle_face]]]))
+
+
+def _outline(zone: Zone, kind: str, subject: bool) -> LineMark:
+    part = max(shapely.get_parts(zone.contour), key=lambda p: p.area)
+    return LineMark(kind, shapely.get_coordinates(part.exterior), subject=subject)
+
+
+def _tag(z: ZoneChange, units: Units) -> str:
+    zone = z.b or z.a
+    name = zone.id if zone is not None else ""
+    if z.area_change_m2 is None:
+        return f"{name} {z.state}"
+    sign = "+" if z.area_change_m2 > 0 else "\u2212"
+    return f"{name} {sign}{units.quantity(abs(z.area_change_m2), 'm2', digits=2)}"
+
+
+def _zone_line(z: ZoneChange, u: Units) -> table.Line:
+    def area(zone: Zone | None) -> str:
+        return "none" if zone is None else u.number(zone.area_m2, "m2", *zone.sensitivity.get("area_m2", (None, None)))
+
+    change = z.state if z.area_change_m2 is None else u.number(z.area_change_m2, "m2", digits=2)
+    told = "yes" if z.told_apart else "no"
+    return table.Line(
+        ((text.safe(z.name), ""), (area(z.a), ""), (area(z.b), ""), (change, ""), (told, "")), z.state == "gone",
+    )
