@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import re
 from dataclasses import dataclass
+from datetime import timedelta
 
 import cftime
 import numpy as np
@@ -19,6 +20,7 @@ _REFERENCE = re.compile(
     r"\s*(?P<zone>[A-Za-z]+)?\s*(?P<offset>[+-]?\d{1,2}:\d{2}|[+-]\d{1,4}|\d{3,4})?$"
 )
 _UNDATED = ("none", "tai")
+_COMMON = ("standard", "gregorian", "proleptic_gregorian")
 _METHOD = re.compile(r"((?:\w+\s*:\s*)+)(point|mean|maximum|max)\b", re.IGNORECASE)
 
 
@@ -96,7 +98,7 @@ def read_times(store: Store, dimension: str | None, said: Said) -> FileTimes:
     intervals = _intervals(store, variable, len(values), factor)
     instants = None
     if reference is not None:
-        instants, more = _instants(variable, values, reference)
+        instants, more = _instants(variable, values, seconds, reference)
         notes += more
     return FileTimes(dimension, seconds, instants, intervals, "" if reference is None else str(reference), tuple(notes))
 
@@ -210,10 +212,19 @@ def _unit_and_reference(variable: Stored, unit: str) -> tuple[float, Reference |
     return factor, Reference(clean, _offset_minutes(part["offset"]), "proleptic_gregorian" if calendar == "utc" else calendar), notes
 
 
-def _instants(variable: Stored, values: np.ndarray, reference: Reference) -> tuple[np.ndarray | None, list[Note]]:
+def _instants(
+    variable: Stored, values: np.ndarray, seconds: np.ndarray, reference: Reference
+) -> tuple[np.ndarray | None, list[Note]]:
     """Dated UTC instants (datetime64), and notes; undated where the calendar has other days."""
     calendar = reference.calendar
+    shift = np.timedelta64(60 * reference.offset_minutes, "s")
     try:
+        zero = cftime.num2date(0, reference.unit, calendar, only_use_cftime_datetimes=True)
+        earliest = min(zero, zero + timedelta(seconds=float(seconds[0])))
+        if calendar in _COMMON and earliest.year > 1582:
+            # Days are those of datetime64: one sum for all.
+            steps = np.round(seconds * 1e6).astype("timedelta64[us]")
+            return np.datetime64(_iso(zero), "us") + steps - shift, []
         dates = cftime.num2date(values, reference.unit, calendar, only_use_cftime_datetimes=True)
     except (ValueError, OverflowError) as error:
         raise ValueError(f"{variable}: its times cannot be read ({error}); correct units or calendar.") from None
@@ -221,10 +232,7 @@ def _instants(variable: Stored, values: np.ndarray, reference: Reference) -> tup
         local = np.array([np.datetime64(_iso(d), "us") for d in np.atleast_1d(dates)])
     except ValueError:
         return None, [Note(f"calendar {calendar!r} has days that UTC lacks; times are undated", variable.name)]
-    shift = np.timedelta64(60 * reference.offset_minutes, "s")
-    notes = []
-    if calendar not in ("standard", "gregorian", "proleptic_gregorian"):
-        notes.append(Note(f"dates are of the calendar {calendar!r}", variable.name))
+    notes = [] if calendar in _COMMON else [Note(f"dates are of the calendar {calendar!r}", variable.name)]
     return local - shift, notes
 
 

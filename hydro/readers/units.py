@@ -35,7 +35,7 @@ _BASE: dict[str, tuple[float, int, int]] = {
     "fps": (METRES_A_FOOT, 1, -1),
     "1": (1.0, 0, 0),
 }
-_DEGREES = re.compile(r"deg(ree)?s?([_ ](north|south|east|west|[nsew]))?$", re.IGNORECASE)
+_DEGREES = re.compile(r"deg(ree)?s?[_ ]?(north|south|east|west|[nsew])?$", re.IGNORECASE)
 _TOKEN = re.compile(
     r"\s*(?:(?P<operator>\*(?!\*)|·|\.(?!\d)|/|\bper\b)|(?P<open>\()|(?P<close>\))"
     r"|(?P<name>[A-Za-z_]+(?:-ft)?|1(?![\d.]))"
@@ -97,11 +97,13 @@ def parse_unit(text: str) -> Unit:
     text = text.strip()
     if not text:
         raise ValueError("the unit is empty")
+    after_operator = True  # a unit cannot begin with one
     while at < len(text):
         found = _TOKEN.match(text, at)
-        if not found or found.end() == at:
+        if not found or found.end() == at or (found["operator"] and after_operator):
             raise ValueError(f"the unit {text!r} is not understood")
         at = found.end()
+        after_operator = bool(found["operator"])
         if found["operator"]:
             sign = -1 if found["operator"].lower() in ("/", "per") else 1
         elif found["open"]:
@@ -121,7 +123,7 @@ def parse_unit(text: str) -> Unit:
             length += base[1] * power
             time += base[2] * power
             sign = 1
-    if len(signs) > 1 or text[-1] in "*/.·":
+    if len(signs) > 1 or after_operator:
         raise ValueError(f"the unit {text!r} is not understood")
     return Unit(factor, length, time)
 

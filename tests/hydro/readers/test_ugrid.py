@@ -3,11 +3,13 @@
 from __future__ import annotations
 
 import gc
+import tracemalloc
 
+import h5netcdf
 import h5py
 import numpy as np
 import pytest
-from hypothesis import given
+from hypothesis import given, settings
 from hypothesis import strategies as st
 
 from hydro.readers import open_run
@@ -436,3 +438,127 @@ def test_a_file_changed_since_it_was_opened_is_refused(tmp_path):
     drafts.with_edges(drafts.sound()).write(path)
     with pytest.raises(ValueError, match="changed on disk since it was opened; open it again"):
         run.frame(0)
+
+
+@pytest.mark.parametrize(
+    ("table", "attributes", "dimensions"),
+    [
+        ([[0, 1, 2, 999999], [1, 3, 4, 2]], {"_FillValue": np.int64(999999)}, ("face", "corner")),
+        ([[0, 1, 2, -1], [1, 3, 4, 2]], {}, ("face", "corner")),
+        ([[1, 2, 3, -(2**63)], [2, 4, 5, 3]], {"_FillValue": np.int64(-(2**63)), "start_index": np.int32(1)}, ("face", "corner")),
+        ([[0, 1], [1, 3], [2, 4], [-1, 2]], {"_FillValue": np.int64(-1)}, ("corner", "face")),
+        ([[2, 1, 0, -1], [1, 3, 4, 2]], {"_FillValue": np.int64(-1), "start_index": 0.0}, ("face", "corner")),
+    ],
+    ids=["padded 999999", "padded -1 undeclared", "from 1, least integer", "transposed, not declared", "clockwise"],
+)
+def test_the_two_face_mesh_in_every_listing(tmp_path, table, attributes, dimensions):
+    """Areas 0.5 and 1.0, six edges, V - E + F = 1, by hand (half base times height; a parallelogram of 1 by 1)."""
+    draft = drafts.sound()
+    nodes = np.array([(0, 0), (1, 0), (0.5, 1), (1.5, 1), (1, 2)]) + drafts.CORNER
+    draft.set("node_x", nodes[:, 0]).set("node_y", nodes[:, 1]).set("zb", np.zeros(5))
+    for name in "huv":
+        draft.set(name, np.ones((3, 2)))
+        if dimensions == ("corner", "face"):
+            draft.say(name, mesh=None, location=None)  # found by its dimension alone
+    mesh = open_run(draft.put("face_nodes", dimensions, np.array(table), **attributes).write(tmp_path / "run.nc")).mesh
+    np.testing.assert_allclose(mesh.face_area[np.argsort(mesh.file_face)], [0.5, 1.0], rtol=1e-9)
+    assert (mesh.n_edges, mesh.n_nodes - mesh.n_edges + mesh.n_faces) == (6, 1)
+
+
+@settings(max_examples=12)
+@given(angle=st.floats(0, 2 * np.pi), shift=st.tuples(st.floats(-4e5, 4e5), st.floats(-4e5, 4e5)))
+def test_a_turned_and_moved_file_gives_a_turned_and_moved_run(tmp_path_factory, angle, shift):
+    """Scalars stay, vectors turn. Tolerance: coordinates of half a million metres hold to 1e-10 m."""
+    draft = drafts.sound()
+    whole = open_run(draft.write(tmp_path_factory.mktemp("run") / "run.nc"))
+    turn = np.array([[np.cos(angle), np.sin(angle)], [-np.sin(angle), np.cos(angle)]])
+    xy = np.column_stack([draft.values("node_x"), draft.values("node_y")]) - drafts.CORNER
+    x, y = (xy @ turn + drafts.CORNER + shift).T
+    u, v = np.moveaxis(np.stack([draft.values("u"), draft.values("v")], axis=-1) @ turn, -1, 0)
+    moved = draft.set("node_x", x).set("node_y", y).set("u", u).set("v", v)
+    run = open_run(moved.write(tmp_path_factory.mktemp("run") / "run.nc"))
+    here, there = np.argsort(run.mesh.file_face), np.argsort(whole.mesh.file_face)
+    np.testing.assert_allclose(run.frame(1).face_depth[here], whole.frame(1).face_depth[there], rtol=1e-9)
+    turned = whole.frame(1).face_unit_discharge[there] @ turn
+    np.testing.assert_allclose(run.frame(1).face_unit_discharge[here], turned, atol=1e-9)
+    np.testing.assert_allclose(run.mesh.face_area[here], whole.mesh.face_area[there], rtol=1e-8)
+
+
+def test_a_long_file_opens_in_little_memory(tmp_path):
+    """20 GB of frames of which two were ever written: opening reads the mesh, the times and one frame."""
+    xy, faces = drafts.faces_of_channel(40, 30)
+    n, steps = len(faces), 500_000
+    draft = drafts.sound()
+    draft.set("node_x", xy[:, 0]).set("node_y", xy[:, 1]).set("face_nodes", faces).set("zb", np.zeros(len(xy)))
+    draft.set("time", np.arange(steps, dtype=float))
+    on = {"mesh": "reach", "location": "face"}
+    for name in "huv":
+        attributes = draft.variables[name][2]
+        draft.drop(name)
+    path = draft.write(tmp_path / "run.nc")
+    with h5netcdf.File(path, "a") as file:
+        for name, unit, words in (("h", "m", "water depth"), ("u", "m s-1", "velocity, x"), ("v", "m s-1", "velocity, y")):
+            made = file.create_variable(name, ("time", "face"), "f8", chunks=(1, n), compression="gzip", shuffle=True)
+            made.attrs.update(units=unit, long_name=words, **on)
+            made[0] = made[steps - 1] = np.ones(n)
+    assert 3 * 8 * n * steps > 20e9
+    tracemalloc.start()
+    run = open_run(path)
+    frame = run.frame(-1)
+    peak = tracemalloc.get_traced_memory()[1]
+    tracemalloc.stop()
+    assert run.n_frames == steps and frame.face_depth[0] == 1.0
+    # The time axis alone takes 8 bytes and a date object a frame.
+    assert peak < 400e6
+
+
+def test_eastward_velocity_is_grid_velocity_and_the_difference_is_said(tmp_path):
+    """Meridian convergence east of the central meridian, north of the equator: true north lies anticlockwise of grid north.
+
+    Closed form on the sphere: tan(convergence) = tan(longitude from the meridian) sin(latitude); the ellipsoid's differs
+    by less than 1 % at this latitude.
+    """
+    draft = drafts.sound().say("u", standard_name="eastward_sea_water_velocity").say("v", standard_name="northward_sea_water_velocity")
+    draft.set("node_x", draft.values("node_x") + 100_000)
+    run = open_run(draft.write(tmp_path / "run.nc"))
+    text = next(n.text for n in run.notes if "true north lies" in n.text)
+    stated = float(text.split("true north lies ")[1].split()[0])
+    longitude, latitude = 100_000 / (6_371_000 * np.cos(np.radians(52.0))), np.radians(52.0)
+    assert -stated == pytest.approx(np.degrees(np.arctan(np.tan(longitude) * np.sin(latitude))), rel=0.02)
+
+
+def test_a_bed_that_moves_is_said(tmp_path):
+    draft = drafts.sound()
+    attributes = draft.variables["zb"][2]
+    draft.put("zb", ("time", "node"), np.array([draft.values("zb") + k for k in (0.0, 0.1, 0.25)]), **attributes)
+    run = open_run(draft.write(tmp_path / "run.nc"))
+    same_run(run)
+    assert said(run, "the bed changes in time by up to 0.25 m; the first frame's is used throughout")
+
+
+def test_texts_and_other_oddities_in_a_file_do_no_harm(tmp_path):
+    path = drafts.sound().write(tmp_path / "run.nc")
+    with h5py.File(path, "a") as file:
+        file.create_dataset("remarks", data=np.array(["dry year", "gate stuck"], object), dtype=h5py.string_dtype())
+        file.create_dataset("codes", data=np.array([b"a", b"b"]))
+        file.create_dataset("pairs", data=np.zeros(3, [("a", "f4"), ("b", "i4")]))
+        file.create_group("log")
+        file["h"].attrs["remark"] = h5py.Empty("S10")
+    same_run(open_run(path))
+
+
+def test_float32_coordinates_are_noted_with_their_step(tmp_path):
+    """Northings of 500 km in single precision step by 1/32 m (24 bits of significand: 2^19 / 2^24)."""
+    draft = drafts.sound()
+    for name in ("node_x", "node_y"):
+        draft.set(name, draft.values(name).astype(np.float32))
+    assert said(open_run(draft.write(tmp_path / "run.nc")), "stored in steps of 0.031 m")
+
+
+def test_a_maximum_beside_depth_is_left_aside(tmp_path):
+    draft = drafts.sound()
+    dimensions, values, attributes = draft.variables["h"]
+    draft.put("h_max", ("face",), values.max(axis=0), **{**attributes, "cell_methods": "time: maximum"})
+    run = open_run(draft.write(tmp_path / "run.nc"))
+    same_run(run)
+    assert said(run, "depth is read from h; not from h_max")
