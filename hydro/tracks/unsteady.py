@@ -180,7 +180,7 @@ def _through(run: Run, starts, begin, times, sides, tolerance, viewpoint, progre
     parcels = release(run.mesh, starts, begin)
     kept = np.full((len(times), len(parcels.x), 2), np.nan)
     begins = parcels.begin.copy()
-    pair = _Pair(run)
+    pair = FramePair(run)
     kept[0, begins == times[0]] = parcels.xy[begins == times[0]]
     for j in range(1, len(times)):
         for until in pair.stops(times[j - 1], times[j]):
@@ -193,7 +193,7 @@ def _through(run: Run, starts, begin, times, sides, tolerance, viewpoint, progre
     return kept, parcels
 
 
-class _Pair:
+class FramePair:
     """The two frames round a time; a frame is read once while it is needed."""
 
     def __init__(self, run: Run) -> None:

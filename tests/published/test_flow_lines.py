@@ -9,7 +9,7 @@ from scipy.integrate import solve_ivp
 
 from hydro.streamfunction import stream_function
 from hydro.tracks import along, in_polygon, on_line, one_a_tube, pathlines, streaklines, streamlines, timelines
-from hydro.tracks.unsteady import _Pair
+from hydro.tracks.unsteady import FramePair
 from tests.builders import channel, disc, flow_of_psi, frame_of, raw_of, run_of, sides, with_hole
 
 U, V, PERIOD = 0.8, 0.3, 120.0
@@ -224,4 +224,4 @@ def test_releases_have_their_spacing_and_density_and_refuse_none():
 def test_times_outside_the_run_are_refused(oscillating):
     with pytest.raises(ValueError, match="lie outside the run"):
         pathlines(oscillating, [(0, 0)], begin=0, end=500, every=1.0)
-    assert _Pair(oscillating).stops(0.5, 3.0) == [1.0, 2.0, 3.0]
+    assert FramePair(oscillating).stops(0.5, 3.0) == [1.0, 2.0, 3.0]
