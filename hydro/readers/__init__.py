@@ -81,7 +81,9 @@ def open_run(
     if found <= {"text", "parquet"}:
         return open_tables(files, asked)
     if len(found) > 1:
-        raise ValueError(f"{files[0].name} and {files[1].name} are of different kinds; give the files of one run, all of a kind.")
+        raise ValueError(
+            f"{files[0].name} and {files[1].name} are of different kinds; give the files of one run, all of a kind."
+        )
     raise ValueError(
         f"{files[0].name} is no results file that can be read; give NetCDF, GeoTIFF, GeoPackage, CSV or Parquet."
     )

@@ -77,8 +77,8 @@ def make_run(parts: Parts) -> Run:
     first = frames(0)
     parts.notes.extend(faults.check_frame(parts.file, parts.mesh, first, parts.settings["wet_depth_m"]))
     return Run(
-        parts.name, parts.files, parts.mesh, parts.times, node_bed, face_bed, parts.ground.crs, parts.ground.datum, frames,
-        parts.settings, _roughness(parts), parts.boundary_sets, (*parts.ground.notes, *parts.notes), parts.depth_is,
+        parts.name, parts.files, parts.mesh, parts.times, node_bed, face_bed, parts.ground.crs, parts.ground.datum,
+        frames, parts.settings, _roughness(parts), parts.boundary_sets, (*parts.ground.notes, *parts.notes), parts.depth_is,
         parts.statements,
     )
 
@@ -107,7 +107,8 @@ def _flow(parts: Parts) -> _Flow:
         if x is not None and y is not None:
             if x.location != y.location or x.location == "edge":
                 raise ValueError(
-                    f"{parts.file}: {x.name} stands on {x.location}s and {y.name} on {y.location}s; export both components "
+                    f"{parts.file}: {x.name} stands on {x.location}s and {y.name} on {y.location}s; export both "
+                    "components "
                     "on faces (or both on nodes)."
                 )
             return _Flow((x, y), kind == "velocity")
@@ -115,13 +116,15 @@ def _flow(parts: Parts) -> _Flow:
         if one is not None:
             there, lacking = "xy" if x is not None else "yx"
             raise ValueError(
-                f"{parts.file}: {kind.replace('_', ' ')} has its {there} component ({one.name}) but not {lacking}; export "
+                f"{parts.file}: {kind.replace('_', ' ')} has its {there} component ({one.name}) but not {lacking}; "
+                "export "
                 f"both, or name it with mapping.{kind}_{lacking}.variable."
             )
     if "edge_discharge" in parts.fields:
         return _Flow((), False)
     raise ValueError(
-        f"{parts.file} has no velocity, unit discharge or edge discharge that can be recognised; export one, or name it "
+        f"{parts.file} has no velocity, unit discharge or edge discharge that can be recognised; export one, or name "
+        "it "
         "with mapping.velocity_x.variable and mapping.velocity_y.variable."
     )
 
@@ -132,7 +135,8 @@ def _water(parts: Parts, flow: _Flow) -> Field:
     if source is None:
         what = "velocity" if flow.of_velocity else "discharge"
         raise ValueError(
-            f"{parts.file} has {what} but neither depth nor water level that can be recognised; export one, or name it with "
+            f"{parts.file} has {what} but neither depth nor water level that can be recognised; export one, or name it "
+            "with "
             "mapping.depth.variable or mapping.level.variable."
         )
     if source.location == "edge":
@@ -241,7 +245,8 @@ def _bed(parts: Parts) -> tuple[np.ndarray, np.ndarray]:
         depth, level = fields.get("depth"), fields.get("level")
         if depth is None or level is None or depth.location != level.location or depth.location == "edge":
             raise ValueError(
-                f"{parts.file} has no bed level that can be recognised; export it, or name it with mapping.bed.variable."
+                f"{parts.file} has no bed level that can be recognised; export it, or name it with "
+                "mapping.bed.variable."
             )
         order = _order(mesh, depth.location)
         derived = level.read(0, order) - depth.read(0, order)
@@ -250,7 +255,7 @@ def _bed(parts: Parts) -> tuple[np.ndarray, np.ndarray]:
         parts.notes.append(Note("bed = level - depth of the first frame", level.name))
     for location, other in (("node", "face"), ("face", "node")):
         if location not in given:
-            rule = "the area mean of its nodes" if location == "face" else "carried from faces exactly for linear fields"
+            rule = {"face": "the area mean of its nodes", "node": "carried from faces exactly for linear fields"}[location]
             parts.notes.append(Note(f"{location} bed is made from the {other} bed: {rule}", ""))
     return face_bed_and_node_bed(mesh, given.get("node"), given.get("face"))
 
@@ -284,8 +289,12 @@ def check_edge_sense(parts: Parts, run: Run) -> list[Note]:
         return []
     if product < -0.5 * sizes:
         raise ValueError(
-            f"{parts.file}: {name} runs against the faces' own flow; it seems to count from right to left of its edges: say "
+            f"{parts.file}: {name} runs against the faces' own flow; it seems to count from right to left of its "
+            "edges: say "
             'mapping.edge_discharge.positive = "right to left".'
         )
-    text = f"edge discharges and the faces' own flow agree only in part (correlation {product / sizes:.2f}); ask which is right"
+    text = (
+        f"edge discharges and the faces' own flow agree only in part (correlation {product / sizes:.2f}); ask which is "
+        "right"
+    )
     return [Note(text, name)]

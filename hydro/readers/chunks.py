@@ -1,4 +1,4 @@
-"""One step of a compressed HDF5 variable, unpacked outside the library's lock so that variables are read side by side."""
+"""One step of a compressed HDF5 variable, unpacked outside the library's lock: variables are read side by side."""
 
 from __future__ import annotations
 

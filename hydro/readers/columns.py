@@ -51,7 +51,9 @@ def find_column(file: str, table: pd.DataFrame, quantity: str, said: Said) -> Co
     name = said.variable(quantity)
     named = [h for h in table.columns if name in (h, split_heading(h)[0])] if name is not None else []
     if name is not None and not named:
-        raise ValueError(f"{file}: mapping names column {name!r} for {quantity}; the columns are {', '.join(table.columns)}.")
+        raise ValueError(
+            f"{file}: mapping names column {name!r} for {quantity}; the columns are {', '.join(table.columns)}."
+        )
     if name is None:
         named = [h for h in table.columns if split_heading(h)[0].lower().replace(" ", "_") == quantity]
     if not named:
@@ -78,10 +80,12 @@ def values_of(file: str, table: pd.DataFrame, column: Column) -> np.ndarray:
     """A column's values in SI; ``ValueError`` names the first row that holds no number."""
     given = table[column.heading]
     values = pd.to_numeric(given, errors="coerce").to_numpy(float)
-    wrong = np.flatnonzero(np.isnan(values) & given.notna().to_numpy() & (given.astype(str).str.strip() != "").to_numpy())
+    filled = given.notna().to_numpy() & (given.astype(str).str.strip() != "").to_numpy()
+    wrong = np.flatnonzero(np.isnan(values) & filled)
     if wrong.size:
         raise ValueError(
-            f"{file}: column {column.heading!r} holds {given.iloc[wrong[0]]!r} in row {wrong[0] + 1}, which is no number; "
+            f"{file}: column {column.heading!r} holds {given.iloc[wrong[0]]!r} in row {wrong[0] + 1}, which is no "
+            "number; "
             "correct it."
         )
     return values * column.factor
@@ -105,13 +109,16 @@ def time_axis(file: str, table: pd.DataFrame, said: Said, kind: str | None) -> t
         times = values_of(file, table, Column(heading, factor_to_si(unit, "time")))
     elif unit or pd.api.types.is_numeric_dtype(table[heading]):
         raise ValueError(
-            f"{file}: column {heading!r} needs a unit of time; head it 'time [s]', or give dates like 2031-03-02T06:00:00Z."
+            f"{file}: column {heading!r} needs a unit of time; head it 'time [s]', or give dates like "
+            "2031-03-02T06:00:00Z."
         )
     else:
         dates = _dates(file, table[heading])
         times = dates.astype("int64") / 1e6
     if not np.isfinite(times).all():
-        raise ValueError(f"{file}: column {heading!r} is empty in row {np.flatnonzero(~np.isfinite(times))[0] + 1}; fill it.")
+        raise ValueError(
+            f"{file}: column {heading!r} is empty in row {np.flatnonzero(~np.isfinite(times))[0] + 1}; fill it."
+        )
     kept, first, frame = np.unique(times, return_index=True, return_inverse=True)
     instants = None if dates is None else dates[first]
     if instants is None:
@@ -122,10 +129,12 @@ def time_axis(file: str, table: pd.DataFrame, said: Said, kind: str | None) -> t
 
 def _dates(file: str, column: pd.Series) -> np.ndarray:
     try:
-        return pd.to_datetime(column, utc=True, format="ISO8601").dt.tz_localize(None).to_numpy().astype("datetime64[us]")
+        dates = pd.to_datetime(column, utc=True, format="ISO8601")
+        return dates.dt.tz_localize(None).to_numpy().astype("datetime64[us]")
     except (ValueError, TypeError) as error:
         raise ValueError(
-            f"{file}: column {column.name!r} holds times that cannot be read ({str(error).splitlines()[0][:80]}); give dates "
+            f"{file}: column {column.name!r} holds times that cannot be read ({str(error).splitlines()[0][:80]}); give "
+            "dates "
             "like 2031-03-02T06:00:00Z or seconds headed 'time [s]'."
         ) from None
 
@@ -144,7 +153,9 @@ def fields_of(
         i = int(np.flatnonzero(count != 1)[0])
         row = int(np.flatnonzero(place == i % n_places)[0]) + 1
         how = "is missing from" if count[i] == 0 else "stands twice in"
-        raise ValueError(f"{file}: the place of row {row} {how} frame {i // n_places}; give every place once at every time.")
+        raise ValueError(
+            f"{file}: the place of row {row} {how} frame {i // n_places}; give every place once at every time."
+        )
     order = np.argsort(cell)
     out = {}
     for quantity in FIELDS:

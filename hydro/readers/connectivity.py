@@ -158,7 +158,8 @@ def _closed_up(variable: Stored, numbers: np.ndarray, what: str, notes: list[Not
     few = np.flatnonzero(count < 3)
     if few.size:
         raise ValueError(
-            f"{variable}: {what} {few[0]} has {count[few[0]]} different nodes (and {few.size - 1} more); a {what} needs at "
+            f"{variable}: {what} {few[0]} has {count[few[0]]} different nodes (and {few.size - 1} more); a {what} "
+            "needs at "
             "least 3: remove it or mend it."
         )
     many = np.flatnonzero(count > MOST_CORNERS)

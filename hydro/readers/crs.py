@@ -111,7 +111,9 @@ def _grid_mapping(store: Store, variables: list[Stored]) -> Stored | None:
         return None
     name, variable = next(iter(names.items()))
     if name not in store.variables:
-        raise ValueError(f"{variable} names grid mapping {name!r}, which is not in the file; add it or say mapping.crs.")
+        raise ValueError(
+            f"{variable} names grid mapping {name!r}, which is not in the file; add it or say mapping.crs."
+        )
     return store.variables[name]
 
 
@@ -145,12 +147,15 @@ def _factor(units: list[str], x: Stored, system: pyproj.CRS | None) -> float:
     of_system = system_factor(system) if system is not None and system.is_projected else None
     if not stated:
         if of_system is None:
-            raise ValueError(f'{x} has no units and the file no coordinate system; say mapping.x.unit = "m" if it is in metres.')
+            raise ValueError(
+                f'{x} has no units and the file no coordinate system; say mapping.x.unit = "m" if it is in metres.'
+            )
         return of_system
     factor = stated.pop()
     if of_system is not None and abs(factor / of_system - 1) > 1e-9:
         raise ValueError(
-            f"{x} is in {units[0]}, but its coordinate system counts {_named(of_system)}; correct the one that is wrong."
+            f"{x} is in {units[0]}, but its coordinate system counts {_named(of_system)}; correct the one that is "
+            "wrong."
         )
     return factor
 

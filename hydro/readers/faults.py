@@ -27,13 +27,15 @@ def check_coordinates(file: str, names: str, xy: np.ndarray, faces: np.ndarray) 
     missing = np.flatnonzero(used & ~(np.isfinite(xy[:, 0]) & np.isfinite(xy[:, 1])))
     if missing.size:
         raise ValueError(
-            f"{file}: coordinates {names} are missing at node {missing[0]} (and {missing.size - 1} more that faces use); "
+            f"{file}: coordinates {names} are missing at node {missing[0]} (and {missing.size - 1} more that faces "
+            "use); "
             "export them again."
         )
     span = np.ptp(xy[used], axis=0)
     if span.max() > 2e6 or span.max() < 1e-3:
         raise ValueError(
-            f"{file}: the mesh spans {span[0]:.3g} by {span[1]:.3g} m by coordinates {names}, which no river model does; "
+            f"{file}: the mesh spans {span[0]:.3g} by {span[1]:.3g} m by coordinates {names}, which no river model "
+            "does; "
             "check their unit."
         )
 
@@ -64,10 +66,13 @@ def check_mesh(file: str, mesh: Mesh) -> list[Note]:
         face = mesh.file_face[mesh.triangle_face[triangle]]
         if kind == 1:
             raise ValueError(
-                f"{file}: {where} hangs on a side of face {face} without being one of its nodes; give the face that node, "
+                f"{file}: {where} hangs on a side of face {face} without being one of its nodes; give the face that "
+                "node, "
                 "or split it."
             )
-        raise ValueError(f"{file}: {where} lies inside face {face}: faces overlap there; mend the mesh and export it again.")
+        raise ValueError(
+            f"{file}: {where} lies inside face {face}: faces overlap there; mend the mesh and export it again."
+        )
     _check_boundary(file, mesh)
     return _twins(file, mesh)
 
@@ -83,7 +88,8 @@ def _check_boundary(file: str, mesh: Mesh) -> None:
         x, y = mesh.to_world(np.array([at.x, at.y]))
         faces = [int(mesh.file_face[mesh.edge_faces[mesh.boundary_edges[s]].max()]) for s in (a, b)]
         raise ValueError(
-            f"{file}: faces {faces[0]} and {faces[1]} overlap at {x:.2f} E, {y:.2f} N; mend the mesh and export it again."
+            f"{file}: faces {faces[0]} and {faces[1]} overlap at {x:.2f} E, {y:.2f} N; mend the mesh and export it "
+            "again."
         )
 
 
@@ -103,11 +109,15 @@ def _twins(file: str, mesh: Mesh) -> list[Note]:
         raise ValueError(f"{file}: faces {f} and {g} lie on one another at {x:.2f} E, {y:.2f} N; remove one of them.")
     if twins > mesh.n_nodes / 3:
         raise ValueError(
-            f"{file}: {twins} of {mesh.n_nodes} nodes stand on another node, so faces are not joined; export a mesh whose "
+            f"{file}: {twins} of {mesh.n_nodes} nodes stand on another node, so faces are not joined; export a mesh "
+            "whose "
             "faces share their nodes."
         )
     x, y = mesh.to_world(mesh.node_xy[order[np.flatnonzero(same)[0]]])
-    text = f"nodes that stand on another node (first at {x:.2f} E, {y:.2f} N): the faces there are not joined, as at a slit"
+    text = (
+        f"nodes that stand on another node (first at {x:.2f} E, {y:.2f} N): the faces there are not joined, as at a "
+        "slit"
+    )
     return [Note(text, "", twins)]
 
 
@@ -116,7 +126,8 @@ def check_bed(file: str, name: str, location: str, bed: np.ndarray, mesh: Mesh) 
     missing = np.flatnonzero(~np.isfinite(bed))
     if missing.size:
         raise ValueError(
-            f"{file}: bed {name} is missing at {place(mesh, location, missing[0])} (and {missing.size - 1} more); export a bed "
+            f"{file}: bed {name} is missing at {place(mesh, location, missing[0])} (and {missing.size - 1} more); "
+            "export a bed "
             "level for every one, dry ones too."
         )
     wrong = np.flatnonzero((bed > HIGHEST_BED_M) | (bed < LOWEST_BED_M))
@@ -132,7 +143,8 @@ def check_roughness(file: str, name: str, values: np.ndarray, mesh: Mesh) -> Non
     wrong = np.flatnonzero(~((values > 0) & (values < ROUGHEST)))
     if wrong.size:
         raise ValueError(
-            f"{file}: roughness {name} is {values[wrong[0]]:.4g} at {place(mesh, 'face', wrong[0])} (and {wrong.size - 1} more), "
+            f"{file}: roughness {name} is {values[wrong[0]]:.4g} at {place(mesh, 'face', wrong[0])} (and "
+            f"{wrong.size - 1} more), "
             "which no Manning's n is; check what it holds."
         )
 
@@ -141,7 +153,8 @@ def check_velocity(file: str, name: str, index: int, velocity: Sequence[np.ndarr
     """Some wet place (k,) bool has both components of velocity; ``ValueError`` when a frame has none."""
     if wet.any() and not (wet & np.isfinite(velocity[0]) & np.isfinite(velocity[1])).any():
         raise ValueError(
-            f"{file}: velocity {name} is missing everywhere in the water of frame {index}; export it, or leave the frame out."
+            f"{file}: velocity {name} is missing everywhere in the water of frame {index}; export it, or leave the "
+            "frame out."
         )
 
 
@@ -155,7 +168,8 @@ def check_frame(file: str, mesh: Mesh, raw: RawFrame, wet_m: float) -> list[Note
     deep = np.flatnonzero(depth > DEEPEST_M)
     if deep.size:
         raise ValueError(
-            f"{file}: the water is {depth[deep[0]]:.4g} m deep at {place(mesh, location, deep[0])} (and over {DEEPEST_M:g} m at "
+            f"{file}: the water is {depth[deep[0]]:.4g} m deep at {place(mesh, location, deep[0])} (and over "
+            f"{DEEPEST_M:g} m at "
             f"{deep.size - 1} more); check the unit and fill value of depth or level, and the bed."
         )
     if raw.unit_discharge is None:

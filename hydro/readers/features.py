@@ -64,7 +64,8 @@ def _layer(path: Path, layer: str | None) -> geopandas.GeoDataFrame:
     try:
         names = [str(n) for n, geometry in pyogrio.list_layers(path) if geometry is not None]
         if layer is None and len(names) != 1:
-            what = f"several layers: {', '.join(names)}; pick one with mesh" if names else "no layer with geometry; export one"
+            several = f"several layers: {', '.join(names)}; pick one with mesh"
+            what = several if names else "no layer with geometry; export one"
             raise ValueError(f"{path.name} holds {what}.")
         if layer is not None and layer not in names:
             raise ValueError(f"{path.name} has no layer {layer!r}; it has {', '.join(names)}.")
@@ -91,7 +92,8 @@ def _mesh_of_polygons(where: str, shapes, factor: float, origin) -> tuple[Mesh, 
     many = np.flatnonzero(count > MOST_CORNERS)
     if many.size:
         raise ValueError(
-            f"{where}: feature {first[many[0]] + 1} has {count[many[0]]} corners; faces of 3 to {MOST_CORNERS} are read: split it."
+            f"{where}: feature {first[many[0]] + 1} has {count[many[0]]} corners; faces of 3 to {MOST_CORNERS} are "
+            "read: split it."
         )
     xy, number = weld(np.vstack(corners), _JOINED_WITHIN_M)
     faces = np.full((len(polygons), int(count.max())), -1, np.int32)

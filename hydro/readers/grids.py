@@ -43,7 +43,8 @@ def open_grids(stores: list[Store], asked: Asked) -> Run:
     grid = read_grid(stores[0])
     for other in stores[1:]:
         theirs = read_grid(other)
-        if not (np.array_equal(grid.xs, theirs.xs, equal_nan=True) and np.array_equal(grid.ys, theirs.ys, equal_nan=True)):
+        pairs = ((grid.xs, theirs.xs), (grid.ys, theirs.ys))
+        if not all(np.array_equal(ours, again, equal_nan=True) for ours, again in pairs):
             raise ValueError(
                 f"{other.path.name} has another grid than {stores[0].path.name}; the files of one run must share it."
             )
@@ -59,7 +60,8 @@ def open_grids(stores: list[Store], asked: Asked) -> Run:
     ground = ground_of(stores[0], grid.x, grid.y, [p.variable for p in placed[0]], asked.said)
     mesh, kept = _mesh(stores[0], grid, cells, _has_bed(pieces[0], location), ground.factor, asked.origin)
     what = "cells" if cells else "points of the grid, joined by quads"
-    notes.append(Note(f"values are those of {what}; banks and piers are stair steps, there are no edges of the model", grid.x.name))
+    text = f"values are those of {what}; banks and piers are stair steps, there are no edges of the model"
+    notes.append(Note(text, grid.x.name))
     return join(pieces, mesh, ground, asked, notes=notes, keep={location: kept})
 
 
@@ -76,7 +78,9 @@ def read_grid(store: Store) -> Grid:
     """
     x, y = _coordinate(store, "x"), _coordinate(store, "y")
     if x is None or y is None:
-        raise ValueError(f"{store.path.name} has neither a mesh nor grid coordinates; export the results with a UGRID mesh.")
+        raise ValueError(
+            f"{store.path.name} has neither a mesh nor grid coordinates; export the results with a UGRID mesh."
+        )
     if len(x.shape) == 1 and len(y.shape) == 1 and x.dimensions != y.dimensions:
         xs, ys = np.meshgrid(x.values(), y.values())
         dimensions = (y.dimensions[0], x.dimensions[0])
@@ -127,7 +131,8 @@ def _has_bed(piece: Piece, location: str) -> np.ndarray:
     depth, level = piece.choices.get("depth"), piece.choices.get("level")
     if depth is None or level is None:
         raise ValueError(
-            f"{piece.store.path.name} has no bed level that can be recognised; export it, or name it with mapping.bed.variable."
+            f"{piece.store.path.name} has no bed level that can be recognised; export it, or name it with "
+            "mapping.bed.variable."
         )
     return np.isfinite(sum(read_places(c, piece.times.dimension, 0) for c in (depth, level)))
 
@@ -174,7 +179,9 @@ def _cells(store: Store, grid: Grid) -> tuple[np.ndarray, np.ndarray]:
         points, number = weld(np.where(finite[:, None], corners, -1e30), 1e-4 * size)
         points[points[:, 0] == -1e30] = np.nan
         return points, number.reshape(-1, 4)
-    raise ValueError(f"{bx} has shape {bx.shape}, which does not bound a grid of {rows} by {columns} cells; export it again.")
+    raise ValueError(
+        f"{bx} has shape {bx.shape}, which does not bound a grid of {rows} by {columns} cells; export it again."
+    )
 
 
 def _edges_of(bounds: Stored) -> np.ndarray:

@@ -121,10 +121,13 @@ def _candidates(quantity: str, placed: list[Placed], said: Said) -> list[Placed]
         if not mapped:
             known = ", ".join(sorted(p.variable.name for p in placed)) or "none"
             raise ValueError(
-                f"mapping: {quantity} names variable {name!r}, which does not stand on the mesh; those that do: {known}."
+                f"mapping: {quantity} names variable {name!r}, which does not stand on the mesh; those that do: "
+                f"{known}."
             )
         if mapped[0].location not in allowed:
-            raise ValueError(f"{mapped[0].variable} stands on {mapped[0].location}s; {quantity} is read on {allowed[0]}s.")
+            raise ValueError(
+                f"{mapped[0].variable} stands on {mapped[0].location}s; {quantity} is read on {allowed[0]}s."
+            )
         return mapped
     here = [p for p in placed if p.location in allowed]
     for standard in STANDARD_NAMES.get(quantity, ()):
@@ -163,7 +166,8 @@ def _one(quantity: str, candidates: list[Placed], times: set[str], notes: list[N
                 f"say which with mapping.{quantity}.variable."
             )
         others = ", ".join(p.variable.name for p in ranked[1:])
-        notes.append(Note(f"{_words(quantity)} is read from {ranked[0].variable.name}; not from {others}", ranked[0].variable.name))
+        text = f"{_words(quantity)} is read from {ranked[0].variable.name}; not from {others}"
+        notes.append(Note(text, ranked[0].variable.name))
     return ranked[0]
 
 
@@ -177,7 +181,8 @@ def _choice(quantity: str, placed: Placed, said: Said, notes: list[Note]) -> Cho
             f'"{DIMENSIONS[quantity][2]}" if that is what it is in.'
         )
     if stated and own and stated != own:
-        notes.append(Note(f"unit of {variable.name} taken as {stated} from the mapping, against {own} in the file", variable.name))
+        text = f"unit of {variable.name} taken as {stated} from the mapping, against {own} in the file"
+        notes.append(Note(text, variable.name))
     measured = quantity
     if quantity == "edge_discharge" and fits(unit, "edge_unit_discharge"):
         measured = "edge_unit_discharge"

@@ -60,19 +60,21 @@ def join(
     pieces, first_frames, axis, more = _in_order(pieces, asked.kind)
     notes = [*notes, *more, *(n for p in pieces for n in p.times.notes)]
     _same_quantities(pieces)
+    dimensions = [p.times.dimension for p in pieces]
     fields = {
-        quantity: _field([p.choices[quantity] for p in pieces], first_frames, [p.times.dimension for p in pieces], keep or {})
+        quantity: _field([p.choices[quantity] for p in pieces], first_frames, dimensions, keep or {})
         for quantity in pieces[0].choices
     }
     notes += _of_velocity_and_bed(pieces[0], ground, mesh)
     files = tuple(p.store.path for p in pieces)
-    attributes = pieces[0].store.attributes
+    statements = {k: str(v) for k, v in pieces[0].store.attributes.items()}
     parts = Parts(
-        asked.name or str(attributes.get("title", "")).strip() or files[0].stem, files, mesh, fields, axis, ground, asked.settings,
-        _depth_is(pieces[0], asked.said, notes), _once(notes), boundary_sets or {}, {k: str(v) for k, v in attributes.items()},
+        asked.name or statements.get("title", "").strip() or files[0].stem, files, mesh, fields, axis, ground,
+        asked.settings, _depth_is(pieces[0], asked.said, notes), _once(notes), boundary_sets or {}, statements,
     )
     run = make_run(parts)
-    return replace(run, notes=(*run.notes, *check_edge_sense(parts, run)), series=_series(pieces, first_frames, len(axis)))
+    notes_of_edges = check_edge_sense(parts, run)
+    return replace(run, notes=(*run.notes, *notes_of_edges), series=_series(pieces, first_frames, len(axis)))
 
 
 def _series(pieces: list[Piece], first_frames: np.ndarray, count: int) -> dict[str, np.ndarray]:
@@ -105,7 +107,7 @@ def _field(
 
 
 def read_places(choice: Choice, dimension: str | None, index: int, listed: np.ndarray | None = None) -> np.ndarray:
-    """Values (k,) float64 of a variable at one step of its time dimension, SI, at the places listed (all, if none are)."""
+    """Values (k,) float64 of a variable at one step of its time dimension, SI, at the places listed (None: all)."""
     variable, placed = choice.variable, choice.placed
     kept = list(variable.dimensions)
     if dimension in kept:
@@ -134,7 +136,9 @@ def _in_order(pieces: list[Piece], kind: str | None) -> tuple[list[Piece], np.nd
     dated = [p.times.instants is not None for p in pieces]
     if any(dated) and not all(dated):
         lacking = pieces[dated.index(False)].store.path.name
-        raise ValueError(f"{lacking} has undated times and another file of the run dated ones; export all of them alike.")
+        raise ValueError(
+            f"{lacking} has undated times and another file of the run dated ones; export all of them alike."
+        )
     if len(pieces) > 1 and not all(dated) and len({p.times.zero for p in pieces}) > 1:
         raise ValueError("the files of the run count time from different starts; export all of them alike.")
     all_instants = [p.times.instants for p in pieces if p.times.instants is not None]
@@ -149,7 +153,8 @@ def _in_order(pieces: list[Piece], kind: str | None) -> tuple[list[Piece], np.nd
     seconds = _trimmed(pieces, [starts(p) + (p.times.seconds - p.times.seconds[0]) for p in pieces], notes)
     kinds = [kind or p.kind or "instant" for p, s in zip(pieces, seconds, strict=True) for _ in s]
     if kind is None and any(p.kind is None for p in pieces):
-        notes.append(Note("the file does not say whether frames are instants, means or maxima; taken as instants: ask", ""))
+        text = "the file does not say whether frames are instants, means or maxima; taken as instants: ask"
+        notes.append(Note(text, ""))
     elif kind is not None and any(p.kind not in (None, kind) for p in pieces):
         notes.append(Note(f"frames are taken as {kind} as asked, against cell_methods in the file", ""))
     counts = [len(s) for s in seconds]
@@ -174,7 +179,8 @@ def _trimmed(pieces: list[Piece], seconds: list[np.ndarray], notes: list[Note]) 
             notes.append(Note(f"the last frame of {ours} is repeated by {theirs}; it is used once", ""))
         elif end >= start:
             raise ValueError(
-                f"{ours} and {theirs} overlap in time: the first ends at {end:g} s, the second begins at {start:g} s; give "
+                f"{ours} and {theirs} overlap in time: the first ends at {end:g} s, the second begins at {start:g} s; "
+                "give "
                 "files that follow one another."
             )
     return seconds
@@ -189,7 +195,8 @@ def _note_gaps(pieces: list[Piece], joined: np.ndarray, first: np.ndarray, notes
         gap = float(joined[first[i]] - joined[first[i] - 1])
         if gap > 1.5 * usual:
             before, after = pieces[i - 1].store.path.name, pieces[i].store.path.name
-            notes.append(Note(f"a gap of {gap:g} s between {before} and {after}; frames are usually {usual:g} s apart", ""))
+            text = f"a gap of {gap:g} s between {before} and {after}; frames are usually {usual:g} s apart"
+            notes.append(Note(text, ""))
 
 
 def _same_quantities(pieces: list[Piece]) -> None:
@@ -199,7 +206,8 @@ def _same_quantities(pieces: list[Piece]) -> None:
             other = p.choices.get(q)
             if other is None or other.location != choice.location or other.placed.size != choice.placed.size:
                 raise ValueError(
-                    f"{p.store.path.name} lacks {q.replace('_', ' ')} on {choice.location}s, which {first.store.path.name} has; "
+                    f"{p.store.path.name} lacks {q.replace('_', ' ')} on {choice.location}s, which "
+                    f"{first.store.path.name} has; "
                     "export all files of the run alike."
                 )
 
@@ -209,7 +217,10 @@ def _of_velocity_and_bed(piece: Piece, ground: Ground, mesh: Mesh) -> list[Note]
     velocity = piece.choices.get("velocity_x")
     if velocity is not None and "eastward" in velocity.variable.text("standard_name"):
         turn = 0.0 if ground.crs is None else convergence_deg(ground.crs, *mesh.to_world(mesh.node_xy.mean(axis=0)))
-        text = f"eastward velocity is taken along grid east; true north lies {turn:.2f} degrees clockwise of grid north: ask"
+        text = (
+            f"eastward velocity is taken along grid east; true north lies {turn:.2f} degrees clockwise of grid north: "
+            "ask"
+        )
         notes.append(Note(text, velocity.variable.name))
     for location in ("node", "face"):
         bed = piece.choices.get(f"{location} bed")

@@ -56,7 +56,9 @@ def open_rasters(files: list[Path], asked: Asked) -> Run:
     sets = _sets(rasters, times)
     fields = {q: _field(q, paths, said) for q, paths in sets.items()}
     if "bed" not in fields and not {"depth", "level"} <= set(fields):
-        raise ValueError(f"{files[0].name}: the set has no bed; add bed.tif, or both depth and level of the first time.")
+        raise ValueError(
+            f"{files[0].name}: the set has no bed; add bed.tif, or both depth and level of the first time."
+        )
     everywhere = np.arange(first.shape[0] * first.shape[1])
     if "bed" in fields:
         bed = fields["bed"].read(0, everywhere)
@@ -99,10 +101,11 @@ def _header(path: Path) -> _Header:
 
 
 def _same_grid(first: _Header, other: _Header) -> None:
-    alike = other.shape == first.shape and other.transform.almost_equals(first.transform, 1e-6) and other.crs == first.crs
-    if not alike:
+    in_place = other.shape == first.shape and other.transform.almost_equals(first.transform, 1e-6)
+    if not in_place or other.crs != first.crs:
         raise ValueError(
-            f"{other.path.name} lies on other cells than {first.path.name}; give all rasters of a run the same extent, cell "
+            f"{other.path.name} lies on other cells than {first.path.name}; give all rasters of a run the same extent, "
+            "cell "
             "size and coordinate system."
         )
 
@@ -119,7 +122,8 @@ def _recognised(path: Path, said: Said) -> Raster:
     found = re.fullmatch(f"(?P<quantity>{either})", name) or re.fullmatch(timed, name)
     if not found:
         raise ValueError(
-            f"{path.name} does not say what it holds; name it like depth_60s.tif or bed.tif, or give mapping.pattern and the "
+            f"{path.name} does not say what it holds; name it like depth_60s.tif or bed.tif, or give mapping.pattern "
+            "and the "
             "words of each quantity."
         )
     return Raster(path, words[found["quantity"]], found.groupdict().get("time"))
@@ -128,7 +132,8 @@ def _recognised(path: Path, said: Said) -> Raster:
 def _times(rasters: list[Raster], said: Said, kind: str | None) -> tuple[TimeAxis, dict[str, int], list[Note]]:
     """The time axis, and the frame of each time's text."""
     texts = sorted({r.time for r in rasters if r.time is not None})
-    notes = [] if kind else [Note("rasters do not say whether they are instants, means or maxima; taken as instants: ask", "")]
+    unsaid = Note("rasters do not say whether they are instants, means or maxima; taken as instants: ask", "")
+    notes = [] if kind else [unsaid]
     if not texts:
         return TimeAxis(np.zeros(1), None, (kind or "instant",), np.full(1, np.nan)), {}, notes
     numbers = [_NUMBER.match(t) for t in texts]
@@ -143,7 +148,9 @@ def _times(rasters: list[Raster], said: Said, kind: str | None) -> tuple[TimeAxi
     twice = np.flatnonzero(np.diff(seconds[order]) == 0)
     if twice.size:
         same = [texts[order[twice[0] + k]] for k in (0, 1)]
-        raise ValueError(f"{rasters[0].path.name}: the set names one time twice, as {same[0]!r} and {same[1]!r}; keep one.")
+        raise ValueError(
+            f"{rasters[0].path.name}: the set names one time twice, as {same[0]!r} and {same[1]!r}; keep one."
+        )
     frames = {texts[o]: i for i, o in enumerate(order)}
     seconds = seconds[order]
     axis = TimeAxis(
@@ -157,7 +164,8 @@ def _seconds(number: re.Match[str], said: Said, rasters: list[Raster]) -> float:
     unit = number["unit"] or said.unit("time")
     if not unit:
         raise ValueError(
-            f"{rasters[0].path.name}: times in the file names have no unit; write 60s, or say mapping.time.unit = \"s\"."
+            f"{rasters[0].path.name}: times in the file names have no unit; write 60s, or say mapping.time.unit = "
+            "\"s\"."
         )
     try:
         return float(number["number"]) * factor_to_si(unit, "time")
@@ -184,10 +192,14 @@ def _sets(rasters: list[Raster], frames: dict[str, int]) -> dict[str, list[Path]
         constant = set(by_frame) == {-1}
         lacking = sorted(set(frames.values()) - set(by_frame))
         if len(by_frame) < len(own) or (-1 in by_frame and not constant):
-            raise ValueError(f"{own[0].path.name}: the set holds {quantity.replace('_', ' ')} twice for one time; keep one.")
+            raise ValueError(
+                f"{own[0].path.name}: the set holds {quantity.replace('_', ' ')} twice for one time; keep one."
+            )
         if lacking and not constant and quantity not in ("bed", "roughness"):
             time = next(t for t, i in frames.items() if i == lacking[0])
-            raise ValueError(f"{own[0].path.name}: the set lacks {quantity.replace('_', ' ')} at time {time}; add that raster.")
+            raise ValueError(
+                f"{own[0].path.name}: the set lacks {quantity.replace('_', ' ')} at time {time}; add that raster."
+            )
         out[quantity] = [by_frame[i] for i in sorted(by_frame)]
     return out
 
@@ -232,7 +244,8 @@ def _factor(quantity: str, path: Path, said: Said) -> float:
         unit = said.unit(quantity) or (source.units[0] or "")
     if not unit:
         raise ValueError(
-            f"{path.name} has no unit; set its band's unit, or say mapping.{quantity}.unit = \"{DIMENSIONS[quantity][2]}\"."
+            f"{path.name} has no unit; set its band's unit, or say mapping.{quantity}.unit = "
+            f"\"{DIMENSIONS[quantity][2]}\"."
         )
     try:
         return factor_to_si(unit, quantity)

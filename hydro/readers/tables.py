@@ -36,7 +36,8 @@ def open_tables(files: list[Path], asked: Asked) -> Run:
     faces = [i for i, t in enumerate(tables) if _node_columns(t, asked.said)]
     if len(files) > 2 or (len(files) == 2 and len(faces) != 1) or (len(files) == 1 and faces):
         raise ValueError(
-            f"{files[0].name}: give one table of points, or a table of faces (with columns node_1, node_2, node_3) and one of "
+            f"{files[0].name}: give one table of points, or a table of faces (with columns node_1, node_2, node_3) and "
+            "one of "
             "nodes (with columns node, x, y); several times belong in one table with a time column."
         )
     if faces:
@@ -70,7 +71,9 @@ def table_ground(file: str, table: pd.DataFrame, said: Said) -> Ground:
     system = read_system(said.plain["crs"], "mapping.crs") if "crs" in said.plain else None
     column = column_of(file, table, "x", said)
     if system is not None and abs(column.factor / system_factor(system) - 1) > 1e-9:
-        raise ValueError(f"{file}: column {column.heading!r} is in another unit than mapping.crs; correct the one that is wrong.")
+        raise ValueError(
+            f"{file}: column {column.heading!r} is in another unit than mapping.crs; correct the one that is wrong."
+        )
     return ground(system, column.factor, said.plain.get("datum", ""), column.heading, file)
 
 
@@ -89,7 +92,9 @@ def read_table(path: Path) -> pd.DataFrame:
             table = pd.read_csv(path, sep=None, engine="python", skipinitialspace=True, comment="#")
     except (ValueError, OSError, pyarrow.ArrowException, UnicodeDecodeError) as error:
         first = (str(error).splitlines() or [type(error).__name__])[0].rstrip(".")
-        raise ValueError(f"{path.name} cannot be read as a table ({first}); export it again as CSV or Parquet.") from None
+        raise ValueError(
+            f"{path.name} cannot be read as a table ({first}); export it again as CSV or Parquet."
+        ) from None
     table.columns = [str(c).strip() for c in table.columns]
     if not len(table):
         raise ValueError(f"{path.name} has headings but no rows; export it again.")
@@ -103,7 +108,9 @@ def places(file: str, table: pd.DataFrame, said: Said) -> tuple[np.ndarray, np.n
     ])
     missing = np.flatnonzero(~np.isfinite(xy).all(axis=1))
     if missing.size:
-        raise ValueError(f"{file}: row {missing[0] + 1} has no coordinates (and {missing.size - 1} more); fill or remove them.")
+        raise ValueError(
+            f"{file}: row {missing[0] + 1} has no coordinates (and {missing.size - 1} more); fill or remove them."
+        )
     found, first, place = np.unique(xy, axis=0, return_index=True, return_inverse=True)
     order = np.argsort(first)
     rank = np.empty(len(order), int)
@@ -115,14 +122,16 @@ def mesh_of_points(file: str, xy: np.ndarray, origin: tuple[float, float] | None
     """A mesh whose nodes are the points, where values stand, and what the door cannot give."""
     cells = lattice_of(xy)
     if cells is not None:
-        notes = [Note("points stand on a lattice and are joined by quads; banks and piers are stair steps, there are no edges", "")]
+        text = "points stand on a lattice and are joined by quads; banks and piers are stair steps, there are no edges"
+        notes = [Note(text, "")]
     else:
         try:
             cells, spanning = triangles_of(xy)
         except ValueError as error:
             raise ValueError(f"{file}: {error}; give points all over the water.") from None
         text = (
-            f"points are joined by triangles; those with a side over {LONGEST_SIDE:g} times the local spacing are left out as "
+            f"points are joined by triangles; those with a side over {LONGEST_SIDE:g} times the local spacing are left "
+            "out as "
             "gaps, so check banks and piers; there are no edges of the model"
         )
         notes = [Note(text, "", spanning)]
@@ -146,7 +155,9 @@ def _mesh_of_faces(file, table, nodes, node_file, said, origin) -> tuple[Mesh, n
     """The mesh of a face table and a node table, and the face of each row."""
     heading = said.variable("node") or next((h for h in nodes.columns if split_heading(h)[0] == "node"), None)
     if heading is None or heading not in nodes.columns:
-        raise ValueError(f"{node_file} has no column 'node'; number its nodes or name the column with mapping.node.variable.")
+        raise ValueError(
+            f"{node_file} has no column 'node'; number its nodes or name the column with mapping.node.variable."
+        )
     xy = np.column_stack([
         values_of(node_file, nodes, column_of(node_file, nodes, axis, said)) for axis in "xy"
     ])
@@ -157,7 +168,9 @@ def _mesh_of_faces(file, table, nodes, node_file, said, origin) -> tuple[Mesh, n
     for i, row in enumerate(rows):
         for k, value in enumerate(row[row >= 0]):
             if int(value) not in number:
-                raise ValueError(f"{file}: row {first[i] + 1} names node {int(value)}, which {node_file} lacks; correct it.")
+                raise ValueError(
+                    f"{file}: row {first[i] + 1} names node {int(value)}, which {node_file} lacks; correct it."
+                )
             faces[i, k] = number[int(value)]
     faults.check_coordinates(node_file, "x, y", xy, faces)
     faults.check_faces(file, xy, faces)

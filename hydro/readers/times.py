@@ -67,7 +67,8 @@ def time_dimension(variables: list[Stored], store: Store, mesh_dimensions: set[s
             elif size > 1:
                 raise ValueError(
                     f"{variable} has a dimension {name!r} of {size} steps that is neither time nor mesh; export "
-                    "depth-averaged results with one value a place and time, or name its times with mapping.time.variable."
+                    "depth-averaged results with one value a place and time, or name its times with "
+                    "mapping.time.variable."
                 )
     return found
 
@@ -83,7 +84,8 @@ def read_times(store: Store, dimension: str | None, said: Said) -> FileTimes:
         steps = _length(store, dimension)
         if steps > 1:
             raise ValueError(
-                f"{store.path.name}: dimension {dimension!r} has {steps} steps but no time variable; export it, or name "
+                f"{store.path.name}: dimension {dimension!r} has {steps} steps but no time variable; export it, or "
+                "name "
                 "it with mapping.time.variable."
             )
         note = Note("the file gives its frame no time; it stands at 0 s", "")
@@ -173,7 +175,9 @@ def _length(store: Store, dimension: str | None) -> int:
 def _check_order(variable: Stored, values: np.ndarray) -> None:
     missing = np.flatnonzero(~np.isfinite(values))
     if missing.size:
-        raise ValueError(f"{variable} has no time for frame {missing[0]} (and {missing.size - 1} more); export it again.")
+        raise ValueError(
+            f"{variable} has no time for frame {missing[0]} (and {missing.size - 1} more); export it again."
+        )
     if not values.size:
         raise ValueError(f"{variable} holds no times: the file has no frames; export at least one.")
     back = np.flatnonzero(np.diff(values) <= 0)
@@ -193,7 +197,8 @@ def _unit_and_reference(variable: Stored, unit: str) -> tuple[float, Reference |
         factor = factor_to_si(name, "time")
     except ValueError as error:
         raise ValueError(
-            f"{variable}: {error}; give times in seconds, minutes, hours or days (months and years have no fixed length)."
+            f"{variable}: {error}; give times in seconds, minutes, hours or days (months and years have no fixed "
+            "length)."
         ) from None
     if since is None:
         return factor, None, [Note("times are undated: seconds from the start of the run", variable.name)]
@@ -209,7 +214,8 @@ def _unit_and_reference(variable: Stored, unit: str) -> tuple[float, Reference |
         text = f"zone name {part['zone']!r} in the time's unit is not of the standard; it is read as UTC"
         notes.append(Note(text, variable.name))
     clean = f"{name} since {part['date']} {part['clock'] or '00:00:00'}"
-    return factor, Reference(clean, _offset_minutes(part["offset"]), "proleptic_gregorian" if calendar == "utc" else calendar), notes
+    calendar = "proleptic_gregorian" if calendar == "utc" else calendar
+    return factor, Reference(clean, _offset_minutes(part["offset"]), calendar), notes
 
 
 def _instants(

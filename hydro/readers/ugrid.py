@@ -99,7 +99,8 @@ def _pick(store: Store, mesh: str | None) -> Stored:
     if not names:
         hint = f"; its groups {', '.join(store.groups)} are not read" if store.groups else ""
         raise ValueError(
-            f"{store.path.name} has no mesh: no variable has cf_role = 'mesh_topology'{hint}; export the results with a "
+            f"{store.path.name} has no mesh: no variable has cf_role = 'mesh_topology'{hint}; export the results with "
+            "a "
             "UGRID mesh."
         )
     if mesh is not None:
@@ -114,7 +115,9 @@ def _pick(store: Store, mesh: str | None) -> Stored:
     variable = store.variables[chosen[0]]
     dimension = variable.text("topology_dimension")
     if dimension not in ("2", "2.0", ""):
-        raise ValueError(f"{variable} has topology_dimension {dimension}; a depth-averaged model needs a mesh of faces (2).")
+        raise ValueError(
+            f"{variable} has topology_dimension {dimension}; a depth-averaged model needs a mesh of faces (2)."
+        )
     return variable
 
 
@@ -123,7 +126,9 @@ def _required(store: Store, variable: Stored, attribute: str) -> Stored:
     if not name:
         raise ValueError(f"{variable} lacks the attribute {attribute}; export the complete UGRID mesh.")
     if name not in store.variables:
-        raise ValueError(f"{variable}: {attribute} names {name!r}, which is not in the file; export the complete UGRID mesh.")
+        raise ValueError(
+            f"{variable}: {attribute} names {name!r}, which is not in the file; export the complete UGRID mesh."
+        )
     return store.variables[name]
 
 
@@ -131,7 +136,9 @@ def _coordinates(store: Store, variable: Stored) -> tuple[Stored, Stored]:
     """The node coordinates, x first (U12)."""
     names = variable.text("node_coordinates").split()
     if len(names) < 2:
-        raise ValueError(f"{variable} lacks the attribute node_coordinates with two names; export the complete UGRID mesh.")
+        raise ValueError(
+            f"{variable} lacks the attribute node_coordinates with two names; export the complete UGRID mesh."
+        )
     for name in names[:2]:
         if name not in store.variables:
             raise ValueError(f"{variable}: node_coordinates names {name!r}, which is not in the file; export it.")
@@ -139,7 +146,9 @@ def _coordinates(store: Store, variable: Stored) -> tuple[Stored, Stored]:
     if _is_y(x) and not _is_y(y):
         x, y = y, x
     if len(x.shape) != 1 or x.dimensions != y.dimensions:
-        raise ValueError(f"{x} and {y.name} do not stand on one list of nodes ({x.shape} and {y.shape}); export them again.")
+        raise ValueError(
+            f"{x} and {y.name} do not stand on one list of nodes ({x.shape} and {y.shape}); export them again."
+        )
     return x, y
 
 
@@ -154,15 +163,14 @@ def _face_dimension(store: Store, mesh: Stored, table: Stored, notes: list[Note]
     if stated:
         if stated not in table.dimensions:
             raise ValueError(
-                f"{mesh}: face_dimension is {stated!r}, but {table.name} has {' and '.join(table.dimensions)}; correct it."
+                f"{mesh}: face_dimension is {stated!r}, but {table.name} has {' and '.join(table.dimensions)}; correct "
+                "it."
             )
         return stated
     first, second = table.dimensions
     rows, columns = table.shape
-    used = {
-        d for v in store.variables.values() if v is not table and v.text("location") == "face" and v.text("mesh") == mesh.name
-        for d in v.dimensions
-    }
+    on_faces = [v for v in store.variables.values() if v.text("location") == "face" and v.text("mesh") == mesh.name]
+    used = {d for v in on_faces for d in v.dimensions}
     for name in mesh.text("face_coordinates").split():
         used |= set(store.variables[name].dimensions) if name in store.variables else set()
     transposed = second in used and first not in used
@@ -218,12 +226,15 @@ def _placed(topology: Topology, variable: Stored, by_dimension, notes, elsewhere
     if location:
         dimension = topology.dimensions.get(location)
         if dimension is None and location == "edge":
-            text = f"{variable.name} stands on edges, but the mesh has no edge_node_connectivity to number them; not used"
+            text = (
+                f"{variable.name} stands on edges, but the mesh has no edge_node_connectivity to number them; not used"
+            )
             notes.append(Note(text, variable.name))
             return None
         if dimension not in variable.dimensions:
             raise ValueError(
-                f"{variable} is said to stand on {location}s but has the dimensions {', '.join(variable.dimensions) or 'none'} "
+                f"{variable} is said to stand on {location}s but has the dimensions "
+                f"{', '.join(variable.dimensions) or 'none'} "
                 f"without {dimension}: its size does not fit the mesh; export it again."
             )
     elif len(here) == 1:
@@ -249,7 +260,8 @@ def _on_index_set(topology: Topology, variable: Stored, notes: list[Note]) -> Pl
     if len(index.shape) != 1 or index.dimensions[0] not in variable.dimensions:
         raise ValueError(f"{variable} does not have the dimension of its index set {name}; export it again.")
     subset = read_index_set(index, size)
-    notes.append(Note(f"{variable.name} covers {len(subset)} of {size} {location}s; the rest is taken as dry", variable.name))
+    text = f"{variable.name} covers {len(subset)} of {size} {location}s; the rest is taken as dry"
+    notes.append(Note(text, variable.name))
     return Placed(variable, location, index.dimensions, size, subset)
 
 
@@ -258,5 +270,7 @@ def read_index_set(index: Stored, size: int) -> np.ndarray:
     numbers = index.raw().astype(np.int64) - int(float(index.attributes.get("start_index", 0)))
     wrong = np.flatnonzero((numbers < 0) | (numbers >= size))
     if wrong.size:
-        raise ValueError(f"{index}: entry {wrong[0]} is outside the {size} {index.text('location')}s of the mesh; correct it.")
+        raise ValueError(
+            f"{index}: entry {wrong[0]} is outside the {size} {index.text('location')}s of the mesh; correct it."
+        )
     return numbers

@@ -93,39 +93,43 @@ def parse_unit(text: str) -> Unit:
     >>> parse_unit("ft").factor
     0.3048
     """
-    factor, length, time, at, sign, signs = 1.0, Fraction(0), Fraction(0), 0, 1, [1]
+    factor, length, time = 1.0, Fraction(0), Fraction(0)
+    for name, power in _powers(text):
+        base, of_length, of_time = _BASE[name]
+        factor *= base ** float(power)
+        length += of_length * power
+        time += of_time * power
+    return Unit(factor, length, time)
+
+
+def _powers(text: str) -> list[tuple[str, Fraction]]:
+    """The names in a unit with their powers; what stands after a slash has its power turned."""
+    strange = ValueError(f"the unit {text!r} is not understood" if text.strip() else "the unit is empty")
+    out: list[tuple[str, Fraction]] = []
+    at, sign, signs, expecting = 0, 1, [1], True
     text = text.strip()
-    if not text:
-        raise ValueError("the unit is empty")
-    after_operator = True  # a unit cannot begin with one
     while at < len(text):
         found = _TOKEN.match(text, at)
-        if not found or found.end() == at or (found["operator"] and after_operator):
-            raise ValueError(f"the unit {text!r} is not understood")
-        at = found.end()
-        after_operator = bool(found["operator"])
+        if not found or found.end() == at or (found["operator"] and expecting):
+            raise strange
+        at, expecting = found.end(), bool(found["operator"] or found["open"])
         if found["operator"]:
             sign = -1 if found["operator"].lower() in ("/", "per") else 1
         elif found["open"]:
             signs.append(signs[-1] * sign)
             sign = 1
         elif found["close"]:
-            if len(signs) == 1:
-                raise ValueError(f"the unit {text!r} is not understood")
             signs.pop()
             sign = 1
         else:
-            base = _BASE.get(found["name"].lower())
-            if base is None:
-                raise ValueError(f"the unit {text!r} is not understood")
-            power = Fraction(found["power"] or found["broken"] or 1) * sign * signs[-1]
-            factor *= base[0] ** float(power)
-            length += base[1] * power
-            time += base[2] * power
+            power = Fraction(found["power"] or found["broken"] or 1)
+            out.append((found["name"].lower(), power * sign * signs[-1]))
             sign = 1
-    if len(signs) > 1 or after_operator:
-        raise ValueError(f"the unit {text!r} is not understood")
-    return Unit(factor, length, time)
+        if not signs or (found["name"] and found["name"].lower() not in _BASE):
+            raise strange
+    if expecting or len(signs) > 1:
+        raise strange
+    return out
 
 
 def factor_to_si(text: str, quantity: str) -> float:

@@ -42,8 +42,8 @@ def open_ugrid(stores: list[Store], asked: Asked, *, mesh: str | None = None) ->
 
 
 def _has_flow(placed: list[Placed]) -> bool:
-    words = ("velocity", "discharge", "flux")
-    return any(any(w in (p.variable.text("standard_name") + p.variable.text("long_name")).lower() for w in words) for p in placed)
+    names = " ".join(p.variable.text("standard_name") + " " + p.variable.text("long_name") for p in placed).lower()
+    return any(word in names for word in ("velocity", "discharge", "flux"))
 
 
 def _with_constants(placed: list[Placed], everything: list[Placed]) -> list[Placed]:
@@ -64,7 +64,8 @@ def _same_mesh(first: Topology, other: Topology) -> None:
     )
     if not same:
         raise ValueError(
-            f"{other.store.path.name} has another mesh than {first.store.path.name}; the files of one run must share it: "
+            f"{other.store.path.name} has another mesh than {first.store.path.name}; the files of one run must share "
+            "it: "
             "open them as two runs."
         )
 
@@ -102,7 +103,8 @@ def _boundary_sets(topology: Topology, placed: list[Placed], mesh: Mesh, notes: 
             for meaning, chosen in _flagged(p.variable, flags):
                 _add(sets, meaning.replace("_", " "), boundary[chosen[file_edge]])
     for variable in topology.store.variables.values():
-        if variable.text("mesh") == topology.name and variable.text("location") == "edge" and is_index_set(topology, variable):
+        on_edges = variable.text("mesh") == topology.name and variable.text("location") == "edge"
+        if on_edges and is_index_set(topology, variable):
             chosen = np.zeros(topology.sizes["edge"], bool)
             chosen[read_index_set(variable, topology.sizes["edge"])] = True
             _add(sets, variable.text("long_name") or variable.name, boundary[chosen[file_edge]])

@@ -492,9 +492,7 @@ def test_a_long_file_opens_in_little_memory(tmp_path):
     draft.set("node_x", xy[:, 0]).set("node_y", xy[:, 1]).set("face_nodes", faces).set("zb", np.zeros(len(xy)))
     draft.set("time", np.arange(steps, dtype=float))
     on = {"mesh": "reach", "location": "face"}
-    for name in "huv":
-        attributes = draft.variables[name][2]
-        draft.drop(name)
+    draft.drop(*"huv")
     path = draft.write(tmp_path / "run.nc")
     with h5netcdf.File(path, "a") as file:
         for name, unit, words in (("h", "m", "water depth"), ("u", "m s-1", "velocity, x"), ("v", "m s-1", "velocity, y")):
