@@ -12,7 +12,7 @@ HELP = "whether a way upstream is excluded for the fish of a review"
 
 def arguments(parser: argparse.ArgumentParser) -> None:
     parser.add_argument("review", metavar="REVIEW", help="folder with a review.toml")
-    parser.add_argument("--run", action="append", default=[], metavar="ID", help="only this run (may be given again)")
+    parser.add_argument("--run", dest="runs", action="append", default=[], metavar="ID", help="only this run (may be given again)")
     parser.add_argument("--fish", action="append", default=[], metavar="NAME", help="only this fish (may be given again)")
     parser.add_argument("--every", type=int, default=0, metavar="N", help="in runs of many frames, assess every N-th (default: the last)")
     parser.add_argument("--swimmers", type=int, default=0, metavar="N", help="sample N swimmers in each run's last frame")
@@ -29,7 +29,7 @@ def run(args: argparse.Namespace) -> int:
     if review is None:
         raise ValueError(f"{args.review} is a results file of no review; passage needs a review with fish, a start and a goal.")
     found = study(
-        review, runs=args.run, fish=args.fish, every=args.every, swimmers=args.swimmers, seed=args.seed, progress=_progress()
+        review, runs=args.runs, fish=args.fish, every=args.every, swimmers=args.swimmers, seed=args.seed, progress=_progress()
     )
     if args.out:
         write_tables(Path(args.out), found)
