@@ -16,9 +16,10 @@ from .choices import Choices, History, from_query
 from .questions import QUESTIONS
 from .questions.base import Desk, Question, Sizes
 from .raster import View
-from .reading import QUERIES, STORY, Reading
+from .reading import STORY
 from .results import Working
 from .screen import Screen
+from .studies import QUERIES, Studies
 from .views.figure import MapFigure
 from .wire import Wire
 
@@ -32,7 +33,7 @@ class Page:
 
     Parameters
     ----------
-    reading : Reading
+    studies : Studies
         Shared with the other viewers of the same review.
     query : str
         The address's query string.
@@ -40,8 +41,8 @@ class Page:
         ``later(function)`` runs a function soon on the page's own thread; may be called from any.
     """
 
-    def __init__(self, reading: Reading, query: str, later: Callable[[Callable[[], None]], None]) -> None:
-        self.reading, self.later = reading, later
+    def __init__(self, studies: Studies, query: str, later: Callable[[Callable[[], None]], None]) -> None:
+        self.studies, self.reading, self.later = studies, studies.reading, later
         self.trouble = ""
         try:
             start = from_query(query)
@@ -56,7 +57,7 @@ class Page:
         self.screen = Screen()
         self._scheduled = False
         self._finished: set[Any] = set()
-        self._unlisten = reading.results.listen(self._told)
+        self._unlisten = self.reading.listen(self._told)
         self.refresh()
 
     @property
@@ -138,6 +139,9 @@ class Page:
             x=x, y=y, seconds=self.choices.seconds, view=self.choices.query(),
         )
         self.reading.results.tell(QUERIES)
+
+    def on_record(self, _: str) -> None:
+        self.studies.make_record()
 
     def on_follow(self, query: str) -> None:
         self.choose(**{f.name: getattr(from_query(query), f.name) for f in fields(Choices)})
@@ -224,7 +228,7 @@ class Page:
     def desk(self, view: View | None = None) -> Desk:
         """What the question is given."""
         look = theme.look(self.choices.mode, hall=self.choices.hall, width_px=self.sizes.window)
-        return Desk(self.choices, self.reading, look, self.sizes, view)
+        return Desk(self.choices, self.reading, self.studies, look, self.sizes, view)
 
     def _look_at(self, x: float, y: float, width: float) -> None:
         world = self.desk().run.mesh.to_world(np.array([x, y]))
@@ -292,7 +296,7 @@ class Page:
             raise
         self.push = False
         # A result may have come between asking for it and waiting for it; its message was then missed.
-        missed = self.screen.awaited(self.reading.results.have)
+        missed = self.screen.awaited(self.reading.have)
         if missed:
             self.screen.only = self.screen.waiting_for(missed)
             self.soon()

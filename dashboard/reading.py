@@ -5,33 +5,28 @@ Every method either answers at once or raises ``Working`` and has the answer mad
 
 from __future__ import annotations
 
+from collections.abc import Callable
 from dataclasses import dataclass, replace
 from functools import partial
 from pathlib import Path
 from typing import Any
 
 import numpy as np
-import shapely
-from shapely.geometry.base import BaseGeometry
 
-from hydro.arrival import Finding, audit
-from hydro.change import Change, compare, pair_frames
 from hydro.contours import contour_lines, tube_levels
 from hydro.eddies import Zone
 from hydro.frame import Frame
 from hydro.ledger import FrameLedger, FrameReader, Life, follow, lumped_area
-from hydro.queries import Query, queries
 from hydro.reach import CentreLine, Reach, proposed_centre_line
 from hydro.review import Review, open_any
 from hydro.run import Run
 
 from .raster import Canvas, IndexRaster, View, canvas
-from .results import AHEAD, NOW, SOON, Results, Working
+from .results import AHEAD, NOW, Results, Working
 from .views.shore import shoreline
 
 _PIXELS_KEPT = 12_000_000  # triangles held in remembered frames, over all of them
 STORY = "story"
-QUERIES = "queries"
 
 
 @dataclass(frozen=True, eq=False)
@@ -93,11 +88,16 @@ class Story:
 
 
 class Reading:
-    """Results for one path, shared by all who look at it."""
+    """Results for one path, shared by all who look at it.
+
+    ``results`` makes what a screen waits for, ``long`` what takes so long that nobody else should wait
+    behind it; loops over several cores run in ``long`` only.
+    """
 
     def __init__(self, path: Path | str, results: Results | None = None) -> None:
         self.path = Path(path)
         self.results = results or Results()
+        self.long = Results()
         self._readers: dict[str, FrameReader] = {}
 
     def matter(self) -> Matter:
@@ -226,47 +226,18 @@ class Reading:
         """What a run is called."""
         return dict(self.matter().runs)[run_id]
 
-    def audit(self, run_id: str) -> list[Finding]:
-        """What there is to ask about a run, gravest first."""
-        run, reach = self.run(run_id), self.reach(run_id)
-        return self.results.get(("audit", run_id), lambda: audit(run, reach), label="Looking at what has arrived.", rank=SOON)
-
-    def queries(self) -> list[Query] | None:
-        """The review's queries as they stand; None where there is no review to keep them."""
-        review = self.matter().review
-        return None if review is None else queries(review.folder)
-
-    def change(self, run_id: str, index: int, other: str) -> Change:
-        """A frame of a run compared with its partner in another run."""
-        a, b = self.run(run_id), self.run(other)
-        ra, rb = self.reach(run_id), self.reach(other)
-
-        def make() -> Change:
-            pair = next((p for p in pair_frames(a, b) if p.a == index), None)
-            if pair is None:
-                raise ValueError(f"no frame of {b.name} is near the chosen time of {a.name}; choose another time.")
-            return compare(a, b, pair, reach_a=ra, reach_b=rb)
-
-        return self.results.get(("change", run_id, index, other), make, label="Comparing the two runs.", heavy=True)
-
-    def change_areas(self, run_id: str, index: int, other: str, step: float) -> tuple[BaseGeometry, BaseGeometry]:
-        """Where the water is faster and slower by more than ``step``, m/s."""
-        change = self.change(run_id, index, other)
-
-        def make() -> tuple[BaseGeometry, BaseGeometry]:
-            mesh = change.ledger_a.frame.mesh
-            rise = change.maps.speed[mesh.triangles].mean(axis=1)
-            faster, slower = (
-                shapely.union_all(shapely.polygons(mesh.node_xy[mesh.triangles[chosen]]))
-                for chosen in (rise > step, rise < -step)
-            )
-            return faster, slower
-
-        return self.results.get(("areas", run_id, index, other), make, label="Mapping the change.", heavy=True)
-
     def known(self, key: Any) -> Any:
         """A result that is ready, else None; starts nothing."""
-        return self.results.peek(key)
+        return self.results.peek(key) or self.long.peek(key)
+
+    def have(self, key: Any) -> bool:
+        """Whether a result is ready or has failed."""
+        return self.results.have(key) or self.long.have(key)
+
+    def listen(self, told: Callable[[Any], None]) -> Callable[[], None]:
+        """Call ``told(key)`` after each result; returns how to end it."""
+        ends = [self.results.listen(told), self.long.listen(told)]
+        return lambda: [end() for end in ends][0]
 
     def _beat(self, run_id: str, index: int) -> Beat:
         entry = self.entry(run_id, index, rank=AHEAD)

@@ -22,6 +22,7 @@ from tornado.websocket import WebSocketClosedError  # noqa: E402
 from . import theme  # noqa: E402
 from .page import Page  # noqa: E402
 from .reading import Reading  # noqa: E402
+from .studies import Studies  # noqa: E402
 from .wire import WEB  # noqa: E402
 
 HOST, PORT = "127.0.0.1", 5377
@@ -129,7 +130,7 @@ def worker_script() -> str:
     return text.replace("{{version}}", digest.hexdigest()[:16]).replace("{{files}}", files)
 
 
-def page_for(reading: Reading) -> pn.Template:
+def page_for(studies: Studies) -> pn.Template:
     """A new viewer's page."""
     document = pn.state.curdoc
     location = pn.state.location
@@ -138,7 +139,7 @@ def page_for(reading: Reading) -> pn.Template:
     def later(function) -> None:
         document.add_next_tick_callback(function)
 
-    page = Page(reading, location.search if location is not None else "", later)
+    page = Page(studies, location.search if location is not None else "", later)
     template = pn.Template((WEB / "index.html").read_text(encoding="utf-8"))
     template.add_panel("map", pn.pane.Bokeh(page.map.figure, sizing_mode="stretch_both"))
     template.add_panel("wire", page.wire)
@@ -206,9 +207,10 @@ def make_server(reading: Reading, port: int):
         reading.matter()
     except Exception:  # being opened: the page says how far it is, and what went wrong if it does
         pass
+    studies = Studies(reading)
     static = {"path": str(WEB)}
     server = pn.serve(
-        {"/": lambda: page_for(reading)}, address=HOST, port=port, show=False, start=False, title="Leewater",
+        {"/": lambda: page_for(studies)}, address=HOST, port=port, show=False, start=False, title="Leewater",
         websocket_origin=[f"{HOST}:{port}"], admin=False, check_unused_sessions_milliseconds=2000,
         unused_session_lifetime_milliseconds=20_000,
         extra_patterns=[

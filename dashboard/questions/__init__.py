@@ -4,6 +4,8 @@ from .arrival import Arrival
 from .base import Desk, Question, Sizes
 from .change import Change
 from .eddies import Eddies
+from .passage import Passage
+from .record import Record
 from .sections import Sections
 from .waiting import Waiting
 
@@ -14,13 +16,10 @@ _ALL: tuple[Question, ...] = (
         "drift", "Drift", "Where does floating wood go, and what does it meet?",
         "Drift needs a release line in the review; its screen is not part of this version.",
     ),
-    Waiting(
-        "passage", "Passage", "Is the way upstream excluded for these fish, and where?",
-        "Passage needs a fish and its places in the review; its screen is not part of this version.",
-    ),
+    Passage(),
     Sections(),
     Change(),
-    Waiting("record", "Record", "What goes on file?", "The record is made by the command leewater record."),
+    Record(),
 )
 QUESTIONS: dict[str, Question] = {q.key: q for q in _ALL}
 

@@ -99,7 +99,7 @@ class Arrival(Question):
 
     def queries(self, desk: Desk) -> str:
         """The log of queries, and a form to write one; empty without a review to keep them in."""
-        items = desk.reading.queries()
+        items = desk.studies.queries()
         if items is None:
             return '<h2>Queries</h2><p>Queries are kept in a review; this is a results file alone.</p>'
         columns = (
@@ -120,7 +120,7 @@ class Arrival(Question):
 
     def findings(self, desk: Desk) -> list[Finding]:
         """The audit of the chosen run, gravest first."""
-        return desk.reading.audit(desk.run_id)
+        return desk.studies.audit(desk.run_id)
 
 
 def _query(q: Query) -> table.Line:

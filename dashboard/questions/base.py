@@ -14,6 +14,7 @@ from hydro.run import Run
 from ..choices import Choices
 from ..raster import View
 from ..reading import Reading
+from ..studies import Studies
 from ..theme import Look
 from ..units import Units
 from ..views.scene import Scene
@@ -41,6 +42,7 @@ class Desk:
 
     choices: Choices
     reading: Reading
+    studies: Studies
     look: Look
     sizes: Sizes = field(default_factory=Sizes)
     view: View | None = None  # of the map; None until the mesh is known

@@ -73,7 +73,7 @@ class Change(Question):
         if not self.other(desk) or not scene.shore:
             return scene
         change = self.change(desk)
-        faster, slower = desk.reading.change_areas(desk.run_id, desk.index, self.other(desk), SPEED_STEP)
+        faster, slower = desk.studies.change_areas(desk.run_id, desk.index, self.other(desk), SPEED_STEP)
         areas = [AreaMark("dots", faster, "more"), AreaMark("levels", slower, "less")]
         for chosen, pattern in ((change.maps.newly_wet, "wet"), (change.maps.no_longer_wet, "dry")):
             if chosen.any():
@@ -167,7 +167,7 @@ class Change(Question):
 
     def change(self, desk: Desk) -> Compared:
         """The comparison of the chosen frame with the other run's."""
-        return desk.reading.change(desk.run_id, desk.index, self.other(desk))
+        return desk.studies.change(desk.run_id, desk.index, self.other(desk))
 
 
 def _faces(change: Compared, chosen: np.ndarray) -> shapely.Geometry:

@@ -75,8 +75,11 @@ class _Draughtsman:
 
     def area(self, mark: AreaMark) -> None:
         p = self.p
+        if mark.pattern == "rest":  # water to rest in: outlined only
+            self.sheet.area(mark.area, fill=p.paper, alpha=0.35, line=p.ink, width=0.9 * self.weight)
+            return
         hatch, scale, weight = {
-            "dots": (".", 7, 1.6), "levels": ("-", 7, 1), "bar": (" ", 8, 1), "dry": ("x", 10, 1), "wet": ("|", 9, 1),
+            "dots": (".", 7, 1.6), "levels": ("-", 7, 1), "dry": ("x", 10, 1), "wet": ("|", 9, 1),
             "stipple 1": (".", 14, 1.5), "stipple 2": (".", 10, 1.6), "stipple 3": (".", 7, 1.7), "stipple 4": (".", 5, 1.8),
         }[mark.pattern]
         fill = {"more": p.more, "less": p.less}.get(mark.tint, p.paper)

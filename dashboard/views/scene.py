@@ -14,7 +14,7 @@ from hydro.frame import Frame
 
 LINE_KINDS = ("streamline", "pathline", "streakline", "timeline", "route", "path", "dotted", "crest", "deck")
 MARK_KINDS = ("parcel", "log", "lodged", "drogue", "fish", "leaves", "returns", "rest", "query", "answered")
-PATTERNS = ("dots", "levels", "stipple 1", "stipple 2", "stipple 3", "stipple 4", "bar", "dry", "wet")
+PATTERNS = ("dots", "levels", "stipple 1", "stipple 2", "stipple 3", "stipple 4", "rest", "dry", "wet")
 
 
 @dataclass(frozen=True, eq=False)

@@ -1,0 +1,137 @@
+"""What the questions other than Eddies ask of hydro: the audit, queries, a comparison, a way upstream, the record."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from functools import partial
+from pathlib import Path
+
+import shapely
+from shapely.geometry.base import BaseGeometry
+
+from hydro.arrival import Finding, audit
+from hydro.change import Change, compare, pair_frames
+from hydro.passage import Answer, Fish, assess, read_fish
+from hydro.queries import Query, queries
+from hydro.record.build import Material, build_record
+from hydro.record.write import write_record
+from hydro.review import open_review
+
+from .reading import Reading
+from .results import SOON
+
+QUERIES = "queries"
+
+
+@dataclass(frozen=True, slots=True)
+class Recorded:
+    """A record that was written: when, where and what it holds."""
+
+    at: str
+    folder: str
+    files: tuple[str, ...]
+    figures: int
+    parts: int
+    cautions: int
+
+
+class Studies:
+    """Results of the longer kind for one reading; each answers at once or raises ``Working``."""
+
+    def __init__(self, reading: Reading) -> None:
+        self.reading = reading
+        self._record_wanted = False
+
+    def audit(self, run_id: str) -> list[Finding]:
+        """What there is to ask about a run, gravest first."""
+        run, reach = self.reading.run(run_id), self.reading.reach(run_id)
+        return self.reading.results.get(("audit", run_id), lambda: audit(run, reach), label="Looking at what has arrived.", rank=SOON)
+
+    def queries(self) -> list[Query] | None:
+        """The review's queries as they stand; None where there is no review to keep them."""
+        review = self.reading.matter().review
+        return None if review is None else queries(review.folder)
+
+    def change(self, run_id: str, index: int, other: str) -> Change:
+        """A frame of a run compared with its partner in another run."""
+        a, b = self.reading.run(run_id), self.reading.run(other)
+        ra, rb = self.reading.reach(run_id), self.reading.reach(other)
+
+        def make() -> Change:
+            pair = next((p for p in pair_frames(a, b) if p.a == index), None)
+            if pair is None:
+                raise ValueError(f"no frame of {b.name} is near the chosen time of {a.name}; choose another time.")
+            return compare(a, b, pair, reach_a=ra, reach_b=rb)
+
+        return self.reading.results.get(("change", run_id, index, other), make, label="Comparing the two runs.", heavy=True)
+
+    def change_areas(self, run_id: str, index: int, other: str, step: float) -> tuple[BaseGeometry, BaseGeometry]:
+        """Where the water is faster and slower by more than ``step``, m/s."""
+        change = self.change(run_id, index, other)
+
+        def make() -> tuple[BaseGeometry, BaseGeometry]:
+            mesh = change.ledger_a.frame.mesh
+            rise = change.maps.speed[mesh.triangles].mean(axis=1)
+            faster, slower = (
+                shapely.union_all(shapely.polygons(mesh.node_xy[mesh.triangles[chosen]]))
+                for chosen in (rise > step, rise < -step)
+            )
+            return faster, slower
+
+        return self.reading.results.get(("areas", run_id, index, other), make, label="Mapping the change.", heavy=True)
+
+    def fish(self) -> list[Fish]:
+        """The review's fish; none for a results file alone."""
+        review = self.reading.matter().review
+        return [read_fish(entry) for entry in review.fish] if review is not None else []
+
+    def passage(self, run_id: str, index: int, which: int) -> Answer:
+        """The answer for one of the review's fish in one frame."""
+        matter, run, frame = self.reading.matter(), self.reading.run(run_id), self.reading.frame(run_id, index)
+
+        def make() -> Answer:
+            return assess(
+                frame, self.fish()[which], matter.reach, run.settings, design=matter.design(run_id),
+                boundary_sets=run.boundary_sets,
+            )
+
+        return self.reading.results.get(("passage", run_id, index, which), make, label="Looking for a way upstream.", heavy=True)
+
+    def passage_areas(self, run_id: str, index: int, which: int) -> tuple[BaseGeometry, ...]:
+        """Outlines of the start, the goal and every resting water of an answer, in its order."""
+        answer = self.passage(run_id, index, which)
+
+        def make() -> tuple[BaseGeometry, ...]:
+            mesh, items = answer.mesh, answer.search.areas.items if answer.search else ()
+            return tuple(shapely.union_all(shapely.polygons(mesh.node_xy[mesh.triangles[a.triangles]])) for a in items)
+
+        return self.reading.results.get(("rests", run_id, index, which), make, label="Mapping the resting water.", heavy=True)
+
+    def made_record(self) -> Recorded | None:
+        """The record as it was made here; None before :meth:`make_record`. Raises ``Working`` while it is made."""
+        if not self._record_wanted:
+            return None
+        review = self.reading.matter().review
+        assert review is not None  # make_record refuses a results file alone
+        return self.reading.long.get(("record",), partial(_recorded, review.folder), label="Making the record.")
+
+    def make_record(self) -> None:
+        """Have the record made, or made again.
+
+        Raises ``ValueError`` where there is no review to make it of.
+        """
+        if self.reading.matter().review is None:
+            raise ValueError("a record is made of a review; this is a results file alone.")
+        self._record_wanted = True
+        self.reading.long.forget(("record",))
+
+
+def _recorded(folder: Path) -> Recorded:
+    """Write a review's record beside it; opened anew, so that nobody who looks at the review waits."""
+    review = open_review(folder)
+    material = Material(review)
+    record = build_record(material)
+    out = review.folder / "record"
+    files = write_record(record, out, review=review, readings=material.readings)
+    names = tuple(str(f.relative_to(out)) for f in files)
+    return Recorded(record.made, str(out), names, len(record.figures()), len(record.parts), len(record.cautions()))
