@@ -38,21 +38,14 @@ def _frame(m: Material, index: int) -> list[Finding]:
     sf = m.sf(index)
     frame = sf.frame
     out = []
-    if sf.misfit.unexplained > BROKEN and m.run.n_frames == 1:
-        out.append(Finding(
-            "no continuity", "resolve before use",
-            f"{sf.misfit.unexplained:.0%} of the flow in the frame is explained by no steady stream function.",
-            "A flow of one moment, or a mean, conserves water; an envelope of maxima, a mirrored component or wrong units do not.",
-            "Are these maxima over time? Are both velocity components in the same axes and units?",
-            Figure("unexplained misfit", sf.misfit.unexplained, "-"), frame=index,
-        ))
-    elif sf.misfit.unexplained > UNEXPLAINED:
+    if sf.misfit.unexplained > UNEXPLAINED:
         worst = int(np.argmax(sf.triangle_misfit))
         at = frame.mesh.triangle_centroid[worst]
         out.append(Finding(
-            "unexplained misfit", "resolve before use" if sf.misfit.unexplained > BROKEN else "ask",
+            "no continuity", "resolve before use" if sf.misfit.unexplained > BROKEN else "ask",
             f"{sf.misfit.unexplained:.1%} of the flow in frame {index} is explained by no stream function; it is worst at {m.where(at)}.",
-            "Discharges between walls and eddies are uncertain by that share.", "How were the stored velocities made from the model's own fluxes?",
+            "A flow of one moment, or a mean, conserves water; an envelope of maxima, a mirrored component or wrong units do not.",
+            "Are these maxima over time? Are both velocity components in the same axes and units? How were they made from the model's own fluxes?",
             Figure("unexplained misfit", sf.misfit.unexplained, "-", place=m.place(at)), point(at), index,
         ))
     return out + _walls(m, index) + _sections(m, index)
@@ -139,7 +132,9 @@ def _steps(m: Material, index: int, rows: np.ndarray, spacing: float) -> list[Fi
         if abs(step) > abs(best):
             best, at = step, (chainage[i - 1] + chainage[i]) / 2
     noise = float(np.median(np.abs(np.diff(surplus))))
-    if at is None or abs(best) <= max(SOURCE_SHARE * sf.through_discharge_m3_s, 6 * noise):
+    # Storage is known only as well as neighbouring frames tell it: half of it may be wrong.
+    least = max(SOURCE_SHARE * sf.through_discharge_m3_s, 6 * noise) + 0.5 * abs(sf.storage_m3_s or 0.0)
+    if at is None or abs(best) <= least:
         return []
     xy = m.reach.centre_line.at(np.array([at]))[0]
     word = "appear" if best > 0 else "vanish"
