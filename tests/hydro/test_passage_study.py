@@ -25,7 +25,7 @@ def slots(tmp_path_factory) -> Review:
 
     Discharge 4 h u with h = 1 m and u elsewhere: 0.2 to 1.2 m3/s, so up to 6 m/s in the slot. Flow along +x.
     """
-    mesh = channel(120, 4, 60, WIDTH, corner=ORIGIN)
+    mesh = channel(120, 4, 60, WIDTH, corner=ORIGIN, origin=ORIGIN)
 
     def raw(q: float):
         def speed(x, y):
