@@ -7,10 +7,16 @@ from dataclasses import dataclass
 from functools import cached_property
 from typing import Any
 
+from ..change import Change
+from ..drift.report import DriftAnswer
+from ..drift.report import study as drift_study
+from ..passage import Study
+from ..passage import study as passage_study
 from ..provenance import file_hash
 from ..review import Review, now
 from ..run import Run
 from . import basis
+from . import review_parts as parts
 from .eddies import Reading, eddies, read
 from .model import Part, Record
 
@@ -44,12 +50,46 @@ class Material:
                 out.append(read(self.review, entry, self.runs[entry.id]))
         return out
 
+    @cached_property
+    def still(self) -> list[Reading]:
+        """The readings of means: what drift and passage take as steady flow."""
+        return [r for r in self.readings if r.run.n_frames == 1]
+
+    @cached_property
+    def changes(self) -> list[tuple[Reading, Reading, Change]]:
+        """Every pair of designs compared."""
+        self.progress("comparing designs")
+        return parts.changes(self.readings)
+
+    @cached_property
+    def drift(self) -> list[DriftAnswer]:
+        """Wood let go in the runs of [record] drift_runs; without it, in every bankfull mean."""
+        wanted = self.review.contents.record.get("drift_runs")
+        chosen = [self.review.entry(w) for w in wanted] if wanted else [r.entry for r in self.still if r.entry.event == "bankfull"]
+        if not self.review.releases:
+            return []
+        return [drift_study(self.review, e, progress=lambda what, share: None) for e in chosen if "coarse" not in e.variant]
+
+    @cached_property
+    def passage(self) -> Study | None:
+        """Passage in the means; None where the review names no fish."""
+        if not self.review.fish:
+            return None
+        return passage_study(self.review, runs=[r.entry.id for r in self.still if "coarse" not in r.entry.variant])
+
 
 PARTS: dict[str, Callable[[Material], Part]] = {
     "documents": lambda m: basis.documents(m.review),
     "runs": lambda m: basis.runs(m.review, m.runs),
     "method": lambda m: basis.method(),
+    "arrival": lambda m: parts.arrival(m.review, m.readings),
+    "queries": lambda m: parts.asked(m.review),
     "eddies": lambda m: eddies(m.readings),
+    "sections": lambda m: parts.sections(m.readings),
+    "change": lambda m: parts.change(m.changes),
+    "checks": lambda m: parts.checks(m.review, m.readings, m.changes),
+    "drift": lambda m: parts.drift_part(m.drift),
+    "passage": lambda m: parts.passage_part(m.passage),
     "settings": lambda m: basis.settings(m.review),
 }
 
@@ -73,17 +113,17 @@ def build_record(material: Material) -> Record:
         raise ValueError("the review lists no runs; add one under [[runs]] before making a record.")
     if changed := review.changed_inputs():
         raise ValueError(changed[0])
-    parts = []
+    made = []
     for name in chosen:
         progress(name)
-        parts.append(PARTS[name](material))
+        made.append(PARTS[name](material))
     return Record(
-        title=review.title, front=_front(review, parts), parts=tuple(parts), inputs=tuple(_inputs(material)),
+        title=review.title, front=_front(review, made), parts=tuple(made), inputs=tuple(_inputs(material)),
         settings=dict(review.settings), made=now(),
     )
 
 
-def _front(review: Review, parts: list[Part]) -> dict[str, str]:
+def _front(review: Review, made: list[Part]) -> dict[str, str]:
     who = review.contents.reviewer
     missing = [d.name for d in review.contents.documents if not d.received]
     left = review.contents.record.get("leave_out", ())
@@ -94,7 +134,7 @@ def _front(review: Review, parts: list[Part]) -> dict[str, str]:
         "Date": now()[:10],
         "Place": review.contents.place or "not named",
         "What was reviewed": "; ".join(e.label for e in review.runs),
-        "Done": ", ".join(p.title for p in parts),
+        "Done": ", ".join(p.title for p in made),
         "Still awaited": "; ".join(missing) or "nothing listed",
         "Left out": "; ".join(left) or "nothing",
         "Limits": review.contents.record.get("limits", LIMITS),
