@@ -16,7 +16,7 @@ from .runs import ALPHA, Fields
 from .solver import Model
 
 EPOCH = "seconds since 2031-03-02T06:00:00Z"
-_DEPTH_STEP, _SPEED_STEP = 0.001, 0.001  # of the packed integers, m and m/s
+_DEPTH_STEP, _SPEED_STEP = 0.001, {True: 0.001, False: 0.002}  # of the packed integers: m; m/s of means, of instants
 _NO_SPEED_BELOW = 0.002  # m: thinner water is written with no velocity
 
 
@@ -144,8 +144,8 @@ def _frames(f, model: Model, frames: list[Fields], story: Story) -> None:
         "long_name": "water depth", "units": "m", "scale_factor": _DEPTH_STEP, "add_offset": 0.0} | place, np.int16, **chunk)
     for k, axis in enumerate("xy"):
         speed = np.stack([_speed(x, k) for x in frames])
-        _variable(f, f"velocity_{axis}", ("time", "mesh2d_face"), np.round(speed / _SPEED_STEP), {
-            "standard_name": f"sea_water_{axis}_velocity", "units": "m s-1", "scale_factor": _SPEED_STEP, "add_offset": 0.0,
+        _variable(f, f"velocity_{axis}", ("time", "mesh2d_face"), np.round(speed / _SPEED_STEP[mean]), {
+            "standard_name": f"sea_water_{axis}_velocity", "units": "m s-1", "scale_factor": _SPEED_STEP[mean], "add_offset": 0.0,
             "long_name": f"depth-averaged river velocity, {axis}",
             "comment": "unit discharge from the edge discharges, divided by depth"} | place, np.int16, **chunk)
     if story.edges:
