@@ -275,4 +275,19 @@ def _nodes_from_faces(mesh, node_bed, face_bed, face_depth, face_q, wet_depth_m)
     dry = np.isnan(at_nodes[:, 0])
     depth = np.where(dry, 0.0, np.maximum(at_nodes[:, 0] - node_bed, 0.0))
     q = np.where(dry[:, None], 0.0, at_nodes[:, 1:])
-    return depth, q
+    return depth, _calmed(mesh, depth, q, face_depth, face_q, wet_depth_m)
+
+
+def _calmed(mesh, depth, q, face_depth, face_q, wet_depth_m):
+    """Node unit discharge whose speed in shallow water is no more than that of the wet faces round it.
+
+    Depth and flow are extrapolated to the waterline apart from each other, so their ratio may run wild
+    there. Water deeper than four wet depths is left as it is.
+    """
+    start, around = mesh.node_faces
+    speed = np.hypot(*_velocity(face_depth, face_q, wet_depth_m).T)
+    fastest = np.maximum.reduceat(speed[around], start[:-1])
+    flow = np.hypot(*q.T)
+    shallow = (depth < 4 * wet_depth_m) & (flow > fastest * depth)
+    factor = np.where(shallow, fastest * depth / np.where(flow > 0, flow, 1.0), 1.0)
+    return q * factor[:, None]
