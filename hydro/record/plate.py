@@ -171,8 +171,10 @@ def _structures(sheet: Drawing, window: Window, reach: Reach, design: str | None
             sheet.line(ring, ink=INK, width=0.3, dash="" if solid else "2 1", close=True, fill=INK if solid else "none")
         for line in _parts(shape, "LineString"):
             sheet.line(window.to_mm(np.asarray(line.coords)), ink=INK, width=0.4, dash="3 1")
-        x, y = window.to_mm(np.array([shape.representative_point().coords[0]]))[0]
-        sheet.text(x + 2.5, y - 2, s.name, size=2.6, ink=INK, halo=PAPER)
+        corners = window.to_mm(shapely.get_coordinates(shape))
+        x, y = corners[corners[:, 0].argmin()]
+        name = f"{s.name}, above" if s.kind == "deck" else s.name
+        sheet.text(x - 1.2, y - 0.5, name, size=2.6, ink=INK, anchor="end", halo=PAPER)
 
 
 def _chainage(sheet: Drawing, window: Window, reach: Reach) -> None:
