@@ -19,7 +19,7 @@ from .raster import View
 from .reading import STORY
 from .results import Working
 from .screen import Screen
-from .studies import QUERIES, Studies
+from .studies import QUERIES, SHARES, TRIED, Studies
 from .views.figure import MapFigure
 from .wire import Wire
 
@@ -106,9 +106,8 @@ class Page:
 
     def on_frame(self, value: dict) -> None:
         self.sent = int(value.get("sent", 0))
-        desk = self.desk()
-        index = int(np.clip(int(value["index"]), 0, desk.run.n_frames - 1))
-        self.choose(seconds=float(desk.run.times.seconds[index]))
+        times = self.question.times(self.desk())
+        self.choose(seconds=float(times[int(np.clip(int(value["index"]), 0, len(times) - 1))]))
 
     def on_section(self, value: dict) -> None:
         self.sent = int(value.get("sent", 0))
@@ -142,6 +141,9 @@ class Page:
 
     def on_record(self, _: str) -> None:
         self.studies.make_record()
+
+    def on_try(self, _: str) -> None:
+        self.studies.try_settings(self.desk().run_id)
 
     def on_follow(self, query: str) -> None:
         self.choose(**{f.name: getattr(from_query(query), f.name) for f in fields(Choices)})
@@ -203,7 +205,10 @@ class Page:
         self.screen.forget()
 
     def on_stop(self, _: str) -> None:
-        self.reading.results.stop(STORY)
+        if self.question.progress(self.desk()) is not None:
+            self.studies.stop(self.desk().run_id)
+        else:
+            self.reading.results.stop(STORY)
 
     def on_resume(self, _: str) -> None:
         self.reading.results.resume(STORY)
@@ -272,7 +277,7 @@ class Page:
     def _told(self, key: Any) -> None:
         """A result is ready (called from the worker)."""
         self._finished.add(key)
-        if key == QUERIES:
+        if key in (QUERIES, SHARES) or (isinstance(key, tuple) and key[0] == TRIED):
             self.later(self.refresh)
         elif self.screen.awaits(key):
             self.later(self._ready)

@@ -192,7 +192,11 @@ class Screen:
         self._put("foot", _foot(page, desk, matter.runs))
 
     def _story(self, page: Page, desk: Desk) -> None:
-        """Progress of following the eddies through the run, with its Stop."""
+        """Progress of long work, with its Stop: the question's own, else following the eddies through the run."""
+        own = page.question.progress(desk) if page.reading.have("matter") else None
+        if own is not None:
+            self._put("progress", frame_words.working(own[0], own[1], own[2], "%", stoppable=True))
+            return
         try:
             story = page.reading.story(desk.run_id) if page.question.has_time else None
         except (Working, ValueError, OSError):

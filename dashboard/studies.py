@@ -11,6 +11,7 @@ from shapely.geometry.base import BaseGeometry
 
 from hydro.arrival import Finding, audit
 from hydro.change import Change, compare, pair_frames
+from hydro.drift.report import DriftAnswer, study
 from hydro.passage import Answer, Fish, assess, read_fish
 from hydro.queries import Query, queries
 from hydro.record.build import Material, build_record
@@ -20,7 +21,9 @@ from hydro.review import open_review
 from .reading import Reading
 from .results import SOON
 
-QUERIES = "queries"
+QUERIES, SHARES = "queries", "shares"  # told to all viewers when they change
+TRIED = "drift tried"
+_QUICK = 0.2  # share of the review's logs that are let go on screen
 
 
 @dataclass(frozen=True, slots=True)
@@ -41,6 +44,8 @@ class Studies:
     def __init__(self, reading: Reading) -> None:
         self.reading = reading
         self._record_wanted = False
+        self.shares: dict[str, float] = {}  # how far the drift of a run is, 0 to 1
+        self._stopped: set[str] = set()
 
     def audit(self, run_id: str) -> list[Finding]:
         """What there is to ask about a run, gravest first."""
@@ -106,6 +111,48 @@ class Studies:
             return tuple(shapely.union_all(shapely.polygons(mesh.node_xy[mesh.triangles[a.triangles]])) for a in items)
 
         return self.reading.results.get(("rests", run_id, index, which), make, label="Mapping the resting water.", heavy=True)
+
+    def has_wood(self) -> bool:
+        """Whether the review says what wood is let go."""
+        review = self.reading.matter().review
+        return review is not None and bool(review.releases)
+
+    def drift(self, run_id: str) -> DriftAnswer:
+        """A fifth of the review's logs let go in a run, with the settings chosen."""
+        return self.reading.long.get(
+            ("drift", run_id), partial(self._let_go, run_id, False), label="Letting the logs go.", rank=SOON,
+        )
+
+    def try_settings(self, run_id: str) -> None:
+        """Let the logs go again with other settings, for the range."""
+        self.reading.long.ahead(
+            (TRIED, run_id), partial(self._let_go, run_id, True), label="Trying other settings.", group="drift",
+        )
+
+    def stop(self, run_id: str) -> None:
+        """Stop letting logs go in a run; what was done is kept."""
+        self._stopped.add(run_id)
+
+    def _let_go(self, run_id: str, tried: bool) -> DriftAnswer:
+        review = self.reading.matter().review
+        assert review is not None  # has_wood says so
+        self._stopped.discard(run_id)
+        told = [-1]
+
+        def progress(_: str, share: float) -> None:
+            self.shares[run_id] = share
+            if int(50 * share) != told[0]:
+                told[0] = int(50 * share)
+                self.reading.long.tell(SHARES)
+
+        try:
+            return study(
+                review, review.entry(run_id), numbers=_QUICK, try_settings=tried, stop=lambda: run_id in self._stopped,
+                progress=progress,
+            )
+        finally:
+            self.shares.pop(run_id, None)
+            self.reading.long.tell(SHARES)
 
     def made_record(self) -> Recorded | None:
         """The record as it was made here; None before :meth:`make_record`. Raises ``Working`` while it is made."""

@@ -69,6 +69,8 @@ def percent(share: float | None) -> str:
     if share is None or not np.isfinite(share):
         return "n/a"
     value = share * 100
+    if abs(value) < 0.0005:
+        return f"0{NBSP}%"
     digits = 0 if abs(value) >= 10 else 1 if abs(value) >= 1 else 2 if abs(value) >= 0.1 else 3
     return f"{value:.{digits}f}{NBSP}%"
 

@@ -64,9 +64,17 @@ class Units:
         return " to ".join(ends)
 
 
-def round_step(target: float, steps: tuple[float, ...] = (1, 2, 5)) -> float:
-    """The largest of ``steps`` times a power of ten that is not above ``target``: for scales and ticks."""
+def round_step(target: float) -> float:
+    """The largest of 1, 2, 5 times a power of ten that is not above ``target``: for scales and ticks."""
     if not target > 0 or not math.isfinite(target):
         return 1.0
     power = 10.0 ** math.floor(math.log10(target) + 1e-12)
-    return max(s for s in steps if s * power <= target * (1 + 1e-9)) * power
+    return max(s for s in (1, 2, 5) if s * power <= target * (1 + 1e-9)) * power
+
+
+def step_above(target: float) -> float:
+    """The smallest of 1, 2.5, 5 times a power of ten that is not below ``target``: for few ticks on little room."""
+    if not target > 0 or not math.isfinite(target):
+        return 1.0
+    power = 10.0 ** math.floor(math.log10(target) - 1e-12)
+    return min(s for s in (1, 2.5, 5, 10) if s * power >= target * (1 - 1e-9)) * power

@@ -3,19 +3,16 @@
 from .arrival import Arrival
 from .base import Desk, Question, Sizes
 from .change import Change
+from .drift import Drift
 from .eddies import Eddies
 from .passage import Passage
 from .record import Record
 from .sections import Sections
-from .waiting import Waiting
 
 _ALL: tuple[Question, ...] = (
     Arrival(),
     Eddies(),
-    Waiting(
-        "drift", "Drift", "Where does floating wood go, and what does it meet?",
-        "Drift needs a release line in the review; its screen is not part of this version.",
-    ),
+    Drift(),
     Passage(),
     Sections(),
     Change(),

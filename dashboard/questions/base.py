@@ -8,6 +8,8 @@ from __future__ import annotations
 
 from dataclasses import dataclass, field
 
+import numpy as np
+
 from hydro.cautions import CAUTIONS
 from hydro.run import Run
 
@@ -111,6 +113,14 @@ class Question:
 
     def moments(self, desk: Desk) -> dict[str, object] | None:
         """For the slider: index, last, words, and the x of each frame on the ribbon, px."""
+        return None
+
+    def times(self, desk: Desk) -> np.ndarray:
+        """Moments that the slider steps through, s of the run."""
+        return desk.run.times.seconds
+
+    def progress(self, desk: Desk) -> tuple[str, int, int] | None:
+        """Label, done and whole of long work that this question has running; None: none."""
         return None
 
     def side(self, desk: Desk) -> dict[str, str]:

@@ -151,9 +151,13 @@ def ribbon_box(desk: Desk) -> ribbon.Box:
 
 def moments(desk: Desk) -> dict[str, object]:
     """What the slider under the ribbon needs to know; never waits for a frame's figures."""
-    course = plain_course(desk)
+    return moments_of(plain_course(desk), desk)
+
+
+def moments_of(course: ribbon.Course, desk: Desk) -> dict[str, object]:
+    """The same of any course of time."""
     return {
-        "index": course.index, "last": desk.run.n_frames - 1, "words": ribbon.words(course, desk.units),
+        "index": course.index, "last": len(course.seconds) - 1, "words": ribbon.words(course, desk.units),
         "places": [round(float(x), 1) for x in ribbon.places(course, ribbon_box(desk))],
     }
 

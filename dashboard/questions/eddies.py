@@ -75,8 +75,8 @@ class Eddies(Question):
         scene = common.water_scene(desk)
         if not scene.shore:
             return scene
-        subject = self.subject(desk)
-        zones = tuple(common.zone_mark(z, z is subject) for z in self.ledger(desk).zones.zones)
+        chosen = self.subject_id(desk)
+        zones = tuple(common.zone_mark(z, z.id == chosen) for z in self.ledger(desk).zones.zones)
         return replace(scene, zones=zones, section=self.section_ends(desk))
 
     def view(self, desk: Desk):
@@ -117,8 +117,7 @@ class Eddies(Question):
         for i, zones in (story.followed.zones if story.followed else {}).items():
             for zone in zones:
                 areas.setdefault(zone.id, np.full(run.n_frames, np.nan))[i] = zone.area_m2
-        subject = self.subject(desk)
-        chosen = subject.id if subject else ""
+        chosen = self.subject_id(desk)
         order = sorted(areas, key=lambda k: (k != chosen, -float(np.nanmax(areas[k]))))
         keep = order[: _ROWS_HALL if desk.look.hall or desk.sizes.narrow else _ROWS_DESK]
         rows = [strip.Row(k, areas[k], k == chosen) for k in sorted(keep, key=common.natural)]
@@ -141,12 +140,12 @@ class Eddies(Question):
 
     def table(self, desk: Desk) -> str:
         ledger, u, ids = self.ledger(desk), desk.units, self.cautions(desk)
-        subject = self.subject(desk)
+        chosen = self.subject_id(desk)
         zones = list(ledger.zones.zones)
         if desk.look.hall or desk.sizes.narrow:
-            zones.sort(key=lambda z: (z is not subject, -z.area_m2))
+            zones.sort(key=lambda z: (z.id != chosen, -z.area_m2))
             zones = zones[: 3 if desk.look.hall else 6]
-        lines = [_line(z, z is subject, desk, ids) for z in zones]
+        lines = [_line(z, z.id == chosen, desk, ids) for z in zones]
         few = desk.look.hall or desk.sizes.narrow
         columns = (
             table.Column("Eddy", figure=False), table.Column("Where", figure=False),
@@ -173,6 +172,11 @@ class Eddies(Question):
         """Stream function and eddies of the chosen frame."""
         return desk.reading.ledger(desk.run_id, desk.index)
 
+    def subject_id(self, desk: Desk) -> str:
+        """The subject's id; empty where there is no eddy."""
+        zone = self.subject(desk)
+        return zone.id if zone is not None else ""
+
     def subject(self, desk: Desk) -> Zone | None:
         """The chosen eddy if it is in this frame, else the largest; None where there is none."""
         zones = self.ledger(desk).zones.zones
@@ -197,7 +201,7 @@ def _place(zone: Zone, units: Units) -> tuple[str, str]:
     name, found, _ = (zone.name or zone.kind).partition(", chainage")
     if not found or zone.chainage_m is None:
         return text.safe(name), ""
-    return text.safe(name), f"chainage {units.quantity(round(zone.chainage_m), 'm', digits=4)}"
+    return text.safe(name), f"chainage {round(zone.chainage_m * units.factor('m'))}\u00a0{units.label('m')}"
 
 
 def _left_out(ledger: FrameLedger, unlisted: int) -> str:

@@ -39,12 +39,10 @@ def cautions(ids: Sequence[str], *, short: bool = False) -> str:
     return f"<h2>Cautions</h2><ol>{items}</ol>" if items else ""
 
 
-def working(label: str, done: int = 0, total: int = 0, *, stoppable: bool = False, left: str = "") -> str:
+def working(label: str, done: int = 0, total: int = 0, unit: str = "frames", *, stoppable: bool = False) -> str:
     """What is being made, as a scale bar that fills up, with a way to stop."""
-    out = f"<span>{safe(label)}"
-    if total:
-        out += f" {done} of {total} frames." + (f" {safe(left)}" if left else "")
-    out += "</span>"
+    count = f" {done}\u00a0%" if unit == "%" else f" {done} of {total} {unit}."
+    out = f"<span>{safe(label)}{count if total else ''}</span>"
     if total:
         out += (
             f'<progress max="{total}" value="{done}" aria-label="{safe(label)}"></progress>'

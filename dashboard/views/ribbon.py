@@ -8,7 +8,7 @@ from dataclasses import dataclass
 import numpy as np
 
 from .. import text
-from ..units import Units, round_step
+from ..units import Units, step_above
 
 _HOURS = np.array([0.25, 0.5, 1, 2, 3, 6, 12, 24, 48, 24 * 7, 24 * 30]) * 3600.0
 _SPANS = np.array([0.1, 0.2, 0.5, 1, 2, 5, 10, 20, 30, 60, 120, 300, 600, 900, 1800, 3600, 7200, 14400, 43200, 86400.0])
@@ -31,8 +31,8 @@ class Course:
     ----------
     seconds : (k,) float64
     instants : (k,) datetime64 or None
-    discharge_m3_s : (k,) float64
-        NaN where not known yet.
+    amount : (k,) float64
+        What ``title`` and ``unit`` say, by default the discharge; NaN where not known yet.
     rows : sequence of Row
     index : int
         The frame under the cursor.
@@ -42,12 +42,14 @@ class Course:
 
     seconds: np.ndarray
     instants: np.ndarray | None
-    discharge_m3_s: np.ndarray
+    amount: np.ndarray
     rows: Sequence[Row]
     index: int
     rows_title: str = "Eddies"
     rows_note: str = "size"
     more_rows: int = 0
+    title: str = "Discharge"
+    unit: str = "m3/s"
 
 
 @dataclass(frozen=True, slots=True)
@@ -113,9 +115,9 @@ def _one_frame(course: Course, box: Box, units: Units) -> str:
 
 def words(course: Course, units: Units) -> str:
     """The moment under the cursor, for those who do not see it."""
-    q = course.discharge_m3_s[course.index]
+    q = course.amount[course.index]
     moment = text.moment(_instant(course), course.seconds[course.index])
-    return f"{moment}, {units.quantity(q, 'm3/s')}" if np.isfinite(q) else moment
+    return f"{moment}, {units.quantity(q, course.unit)}" if np.isfinite(q) else moment
 
 
 def _instant(course: Course):
@@ -123,17 +125,17 @@ def _instant(course: Course):
 
 
 def _discharge(course: Course, box: Box, units: Units, x: np.ndarray) -> str:
-    q = course.discharge_m3_s
+    q = course.amount
     out = [
-        f'<text class="strong" x="0" y="{box.flag + 1.2 * box.label:.1f}">Discharge</text>'
-        f'<text class="second" x="0" y="{box.flag + 2.5 * box.label:.1f}">{units.label("m3/s")}</text>'
+        f'<text class="strong" x="0" y="{box.flag + 1.2 * box.label:.1f}">{course.title}</text>'
+        f'<text class="second" x="0" y="{box.flag + 2.5 * box.label:.1f}">{units.label(course.unit)}</text>'
         f'<line class="hair" x1="{box.left}" x2="{box.right}" y1="{box.base}" y2="{box.base}"/>'
     ]
     known = np.isfinite(q)
     if known.sum() < 1:
         return out[0]
-    f = units.factor("m3/s")
-    step = round_step(max(float(np.nanmax(q)) * f, 1e-9) / 2, steps=(1, 2.5, 5))
+    f = units.factor(course.unit)
+    step = step_above(max(float(np.nanmax(q)) * f, 1e-9) / 3.4)
     top = max(float(np.nanmax(q)) * f * 1.06, step)
     y = box.base - q * f / top * (box.base - box.flag - 4)
     for run in _pieces(known):
@@ -232,10 +234,10 @@ def _at_least(steps: np.ndarray, wanted: float) -> float:
 
 
 def _cursor(course: Course, box: Box, units: Units, x: np.ndarray, axis: float) -> str:
-    q = course.discharge_m3_s[course.index]
+    q = course.amount[course.index]
     words = text.clock(_instant(course), course.seconds[course.index])
     if np.isfinite(q):
-        words += f" \u00b7 {units.quantity(q, 'm3/s')}"
+        words += f" \u00b7 {units.quantity(q, course.unit)}"
     width = 0.53 * box.label * len(words) + 14
     left = x[course.index] + width > box.width
     start = -width if left else 0.0

@@ -159,7 +159,7 @@ def _bars(s: _Scale) -> str:
     speed = np.interp(at, s.x, np.nan_to_num(p.speed))
     base = np.interp(at, s.x, s.y(np.where(np.isfinite(p.level), p.level, s.level)))
     after = np.clip(np.searchsorted(s.x, at), 1, len(s.x) - 1)
-    wet = np.isfinite(p.speed[after]) & np.isfinite(p.speed[after - 1])
+    wet = np.isfinite(p.speed[after]) & np.isfinite(p.speed[after - 1]) & (at >= s.x[0]) & (at <= s.x[-1])
     out = []
     for x, v, low, ok in zip(at, speed, base, wet):
         if not ok or abs(v) * s.per_speed < 0.6:
