@@ -9,6 +9,7 @@ import numpy as np
 
 from ..arrival import audit
 from ..change import Change, compare, pair_frames
+from ..change.matrix import matrices
 from ..checks import AFFLUX, answer, answer_afflux, read_checks
 from ..drift.report import CAUTIONS as DRIFT_CAUTIONS
 from ..drift.report import DriftAnswer
@@ -122,10 +123,12 @@ def checks(review: Review, readings: Sequence[Reading], compared: Sequence[tuple
                 frames: list[Frame] = [r.ledger.frame]
                 found = answer(check, frames, r.reach)
                 rows.append((check.name, r.entry.label, found.figure, _limit(check), found.answer, check.source))
+    matrix_rows = tuple((m.check.name, m.sentence) for m in matrices(review))
+    over = Table("checks-matrix", "Does the decision change over the run matrix?", ("Check", "Answer"), matrix_rows)
     table = Table("checks", "Checks against values entered", ("Check", "Run", "Figure", "Value entered", "Answer", "Source"), tuple(rows))
     return Part("checks", "Checks", (
         "Each answer compares a figure with a value that the reviewer entered together with its source. It is no judgement of fitness.",
-    ), (table,), cautions=("screening",))
+    ), (table, over), cautions=("screening",))
 
 
 def drift_part(answers: Sequence[DriftAnswer]) -> Part:
