@@ -55,10 +55,11 @@ REGISTRY: dict[str, Setting] = {
         Setting(
             "follow_gap_frames", 2, "frames", "Leewater's own", "an eddy not seen for more frames than this has ended", 0
         ),
+        Setting("least_periods", 5, "periods", _COMMON, "a mean over fewer shedding periods than this is flagged", 1, 100),
         Setting("gravity_m_s2", 9.81, "m/s2", "conventional value", "heads, Froude numbers, weirs", 9.7, 9.9),
         Setting("density_kg_m3", 1000.0, "kg/m3", "fresh water, rounded", "shear, power, drift", 900.0, 1100.0),
         Setting(
-            "passage_time_weight", 1e-7, "1/s", "Leewater's own: an hour counts as 0.0004 of a leg's endurance",
+            "passage_time_weight", 1e-6, "1/s", "Leewater's own: an hour counts as 0.0036 of a leg's endurance",
             "which of two fish routes of nearly equal fatigue is taken", 1e-12, 1e-3,
         ),
         Setting(

@@ -16,6 +16,7 @@ from .queue import pop, push
 from .swim import BODY, LEAST_DEPTH, POSITION, TIME_WEIGHT, TOP, WET_DEPTH, floor_metre, metre, needed
 
 FREE = -1  # label of a point in no area
+BARRED = 100.0  # legs a body length that barred water counts where it is let through
 SECTORS = 16  # headings told apart by the mask of drops
 
 
@@ -129,7 +130,7 @@ def link(p, q, t, water, drops, swimmer, relaxed, spare):
     less than ``spare``.
 
     Two-point Gauss rule in depth-weighted place, so q/h is met exactly at its points. ``relaxed`` lets a barred link
-    through at one whole leg a body length and more with the excess, to find the least barred way.
+    through at BARRED legs a body length and more with the excess: only where there is no other way.
     """
     dx, dy = water[q, 0] - water[p, 0], water[q, 1] - water[p, 1]
     length = math.sqrt(dx * dx + dy * dy)
@@ -149,7 +150,7 @@ def link(p, q, t, water, drops, swimmer, relaxed, spare):
     if speed + shallow + drop > 0.0:
         if not relaxed:
             return math.inf, math.inf
-        return length / swimmer[BODY] * (1.0 + speed + shallow + drop), length / swimmer[TOP]
+        return BARRED * length / swimmer[BODY] * (1.0 + speed + shallow + drop), length / swimmer[TOP]
     fatigue = 0.0
     seconds = 0.0
     for s in (0.21132486540518713, 0.7886751345948129):

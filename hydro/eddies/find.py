@@ -165,6 +165,7 @@ def _zone(
         triangles_across=c.across, max_reverse_speed_m_s=_reverse(sf, region, along),
         flags=_flags(sf, c, contact, extent, solid, settings), cautions=CAUTIONS, wake=wake, contour=shape.polygon,
         inner=inner.polygon, streamlines=_streamlines(sf, c), along=along, noise_m3_s=c.noise, region=region,
+        core=_core(sf, region, settings["core_share"]),
         sensitivity=from_outline(
             shape.area_m2, shape.volume_m3, extent.length_m, extent.width_m, depth, flow, free_outline=free,
             size=c.size, noise=c.noise, inner_area=inner.area_m2, inner_volume=inner.volume_m3,
@@ -267,6 +268,11 @@ def _cores_above(sf: StreamFunction, region: Region, shape: Shape, noise: float)
 def _reverse(sf: StreamFunction, region: Region, along: np.ndarray) -> float:
     """Greatest speed against the outer flow at the zone's nodes, m/s."""
     return float(np.max(-(sf.frame.velocity[region.nodes] @ along), initial=0.0))
+
+
+def _core(sf: StreamFunction, region: Region, share: float) -> np.ndarray:
+    depth = region.sign * (sf.psi[region.nodes] - region.level)
+    return region.nodes[depth >= share * depth.max()]
 
 
 def _streamlines(sf: StreamFunction, c: _Candidate) -> list[np.ndarray]:

@@ -22,8 +22,8 @@ def setting_of(
 ) -> tuple[str, int | None, Structure | None]:
     """Kind of a zone, its wall (a place in ``sf.walls``) and its structure.
 
-    A zone that touches a wall belongs to it. One that does not may still lie behind a structure: the
-    nearest wall or outline within its own width, itself upstream of the zone's centre.
+    A zone that touches a wall belongs to it. One that does not may still lie by a bank, within half its own
+    width, or behind a structure: in its lee and no farther off than the structure is wide.
     """
     by_id = {s.id: s for s in reach.structures}
     if contact is not None:
@@ -33,13 +33,13 @@ def setting_of(
         closed = not sf.open_boundaries or sf.through_discharge_m3_s == 0
         bay = contact.length_m > _BAY * shape.polygon.length and not closed
         return ("side bay" if bay else "at bank"), contact.wall, None
-    reachable = max(narrow_of(shape.polygon)[0], 1e-9)
-    near = [(d, w) for w, d in _wall_distances(sf, shape) if d <= reachable / 2]
-    for _, w in sorted(near):
+    for distance, w in sorted((d, w) for w, d in _wall_distances(sf, shape)):
         wall = sf.walls[w]
         if wall.reaches_open:
-            return "at bank", w, None
-        return "behind structure", w, by_id.get(wall.structure_id or "")
+            if distance <= narrow_of(shape.polygon)[0] / 2:
+                return "at bank", w, None
+        elif _in_lee(sf.frame.mesh.node_xy[wall.nodes], distance, shape, along):
+            return "behind structure", w, by_id.get(wall.structure_id or "")
     structure = _outline_before(sf, reach, shape, along)
     return ("behind structure", None, structure) if structure is not None else ("free", None, None)
 
@@ -57,17 +57,23 @@ def _wall_distances(sf: StreamFunction, shape: Shape) -> list[tuple[int, float]]
     return found
 
 
+def _in_lee(outline: np.ndarray, distance: float, shape: Shape, along: np.ndarray) -> bool:
+    """Whether a zone lies downstream of the middle of an outline, and no farther off than the outline is wide."""
+    hull = shapely.convex_hull(shapely.multipoints(outline))
+    centre = np.asarray(shape.polygon.centroid.coords)[0]
+    middle = np.asarray(hull.centroid.coords)[0]
+    return bool((centre - middle) @ along > 0) and distance <= narrow_of(hull)[0]
+
+
 def _outline_before(sf: StreamFunction, reach: Reach, shape: Shape, along: np.ndarray) -> Structure | None:
     """A structure without a wall (resistance, raised bed) within its own width, upstream of the zone."""
     walled = {w.structure_id for w in sf.walls}
     best, nearest = None, np.inf
-    centre = np.asarray(shape.polygon.centroid.coords)[0]
     for s in reach.structures:
         if s.id in walled or s.geometry.geom_type not in ("Polygon", "MultiPolygon") or s.kind in ("opening", "deck"):
             continue
         distance = float(shape.polygon.distance(s.geometry))
-        middle = np.asarray(s.geometry.centroid.coords)[0]
-        if distance <= narrow_of(s.geometry)[0] and (centre - middle) @ along > 0 and distance < nearest:
+        if distance < nearest and _in_lee(shapely.get_coordinates(s.geometry), distance, shape, along):
             best, nearest = s, distance
     return best
 

@@ -86,7 +86,7 @@ class Readings:
 
     def __init__(self, plan: Plan) -> None:
         self._made = (
-            ("the other field", other_field, plan),
+            ("the other field", other_field, plan.sibling()),
             ("half the wet threshold", lambda f: other_threshold(f, 0.5), plan.sibling()),
             ("twice the wet threshold", lambda f: other_threshold(f, 2.0), plan.sibling()),
         )

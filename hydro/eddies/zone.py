@@ -60,6 +60,8 @@ class Zone:
     noise_m3_s : float
         Noise of psi there.
     region : Region
+    core : (c,) int32
+        Nodes by which the zone is followed in time: those nearest to its extremum in psi.
     """
 
     id: str
@@ -96,6 +98,7 @@ class Zone:
     along: np.ndarray
     noise_m3_s: float
     region: Region
+    core: np.ndarray
 
     def place(self, mesh) -> Place:
         """The centre in world coordinates."""

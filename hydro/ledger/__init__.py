@@ -1,7 +1,14 @@
 """The ledger: the table of recirculation zones of a run, by frame, of the mean flow, and in time."""
 
+from .all_frames import Job, reach_of, read_all
 from .export import write_tables
-from .frames import FrameLedger, depth_rate, frame_ledger, mean_ledger
+from .follow import Life, follow
+from .frames import FrameLedger, FrameReader, depth_rate, frame_ledger, mean_ledger
 from .report import ledger_json
+from .summary import FrameSummary
+from .windows import Instants, instants_of, lumped_area
 
-__all__ = ["FrameLedger", "depth_rate", "frame_ledger", "ledger_json", "mean_ledger", "write_tables"]
+__all__ = [
+    "FrameLedger", "FrameReader", "FrameSummary", "Instants", "Job", "Life", "depth_rate", "follow", "frame_ledger",
+    "instants_of", "ledger_json", "lumped_area", "mean_ledger", "reach_of", "read_all", "write_tables",
+]

@@ -7,69 +7,83 @@ import io
 import json
 import os
 import tempfile
-from collections.abc import Sequence
+from collections.abc import Mapping, Sequence
 from pathlib import Path
 from typing import Any
 
 import geopandas
 import numpy as np
+import pandas as pd
+import pyogrio
 import shapely
 
+from ..cautions import caution
 from ..contours import contour_lines, tube_levels
 from ..review import write_whole
 from ..run import Run
 from ..settings import Settings
+from .all_frames import summary_of
+from .follow import Life
 from .frames import FrameLedger
-from .report import frame_json, source_of
+from .page import page_text
+from .report import ledger_json
+from .summary import FrameSummary
+from .windows import Instants
 
 _POINTS = ("centre", "separation", "reattachment")
 
 
-def write_tables(folder: Path, run: Run, frames: Sequence[FrameLedger], settings: Settings | None = None) -> list[Path]:
-    """Write eddies.gpkg and eddies.csv into a folder, each whole or not at all; the paths written.
+def write_tables(
+    folder: Path, run: Run, frames: Sequence[FrameLedger | FrameSummary], settings: Settings | None = None, *,
+    lives: Sequence[Life] = (), instants: Mapping[str, Instants] | None = None,
+) -> list[Path]:
+    """Write eddies.gpkg, eddies.csv and eddies.html into a folder, each whole or not at all; the paths written.
 
-    Layers: zones, centres, separation, reattachment, stream_tubes, walls; each with the run's CRS and a
-    column for the frame.
+    Layers of the GeoPackage: zones, centres, separation, reattachment, and for frames whose field is at hand
+    stream_tubes and walls; tracks of the cores where eddies were followed. Each has the run's CRS and
+    a column for the frame.
     """
     folder = Path(folder)
     folder.mkdir(parents=True, exist_ok=True)
     settings = settings or run.settings
-    layers = _layers(run, frames, settings)
-    package, table = folder / "eddies.gpkg", folder / "eddies.csv"
-    write_package(package, layers, run.crs, {"source": source_of(run), "settings": dict(settings)})
-    write_whole(table, csv_text(zone_rows(run, frames), run, settings))
-    return [package, table]
+    whole = ledger_json(run, frames, settings, lives=lives, instants=instants)
+    layers = _layers(run, frames, settings, lives)
+    package, table, page = folder / "eddies.gpkg", folder / "eddies.csv", folder / "eddies.html"
+    write_package(package, layers, run.crs, {"source": whole["source"], "settings": whole["settings"]})
+    write_whole(table, csv_text(rows_of(whole), whole["source"], settings))
+    write_whole(page, page_text(whole, settings))
+    return [package, table, page]
 
 
-def zone_rows(run: Run, frames: Sequence[FrameLedger]) -> list[dict[str, Any]]:
-    """One flat row a zone and frame; places as x and y in world coordinates."""
+def rows_of(whole: Mapping[str, Any]) -> list[dict[str, Any]]:
+    """One flat row a zone and frame of a ledger; places as x and y in world coordinates."""
     rows = []
-    for entry in frames:
-        whole = frame_json(run, entry)
-        for zone in whole["zones"]:
-            row = {"frame": whole["index"], "time": whole["time"], "seconds": whole["seconds"], "frame_kind": whole["kind"]}
+    for entry in whole["frames"]:
+        for zone in entry["zones"]:
+            row = {"frame": entry["index"], "time": entry["time"], "seconds": entry["seconds"], "frame_kind": entry["kind"]}
             for key, value in zone.items():
                 if key in _POINTS:
                     row[f"{key}_x_m"], row[f"{key}_y_m"] = value or (None, None)
-                elif key == "wake":
-                    row.update(value or {})
                 elif key == "sensitivity":
                     for name, (low, high) in value.items():
                         row[f"{name}_low"], row[f"{name}_high"] = low, high
-                else:
+                elif isinstance(value, dict):
+                    row.update({f"{key}_{k}": v for k, v in value.items() if not isinstance(v, dict)})
+                elif value is not None or key not in ("wake", "instants"):
                     row[key] = "; ".join(value) if isinstance(value, list) else value
             rows.append(row)
     return rows
 
 
-def csv_text(rows: Sequence[dict[str, Any]], run: Run, settings: Settings) -> str:
+def csv_text(rows: Sequence[dict[str, Any]], source: Mapping[str, Any], settings: Settings) -> str:
     """Rows as CSV, headed by comment lines that say where they come from."""
     names = list(dict.fromkeys(name for row in rows for name in row))
     out = io.StringIO()
-    source = source_of(run)
     out.write(f"# run: {source['run']}; SHA-256: {source['hash']}; settings: {settings.digest()}\n")
     out.write(f"# made by leewater {source['versions']['leewater']}, {source['made']}: {source['command']}\n")
-    out.write(f"# coordinates: {run.crs and run.crs.splitlines()[0][:80] or 'local metres'}; levels above: {run.datum or 'not named'}\n")
+    crs = source["crs"].splitlines()[0][:80] if source["crs"] else "local metres"
+    out.write(f"# coordinates: {crs}; levels above: {source['vertical_datum'] or 'not named'}\n")
+    out.write(f"# {caution('sensitivity').text}\n")
     writer = csv.DictWriter(out, names, restval="", lineterminator="\n")
     writer.writeheader()
     writer.writerows({k: ("" if v is None else v) for k, v in row.items()} for row in rows)
@@ -86,18 +100,21 @@ def write_package(path: Path, layers: dict[str, geopandas.GeoDataFrame], crs: st
             if len(table):
                 table.set_crs(crs).to_file(name, layer=layer, driver="GPKG", engine="pyogrio")
         text = json.dumps(about, sort_keys=True, default=str)
-        note = geopandas.GeoDataFrame({"key": ["provenance"], "value": [text]}, geometry=[shapely.Point(0, 0)])
-        note.set_crs(crs).to_file(name, layer="provenance", driver="GPKG", engine="pyogrio")
+        note = pd.DataFrame({"key": ["provenance"], "value": [text]})
+        pyogrio.write_dataframe(note, name, layer="provenance", driver="GPKG")
         os.replace(name, path)
     finally:
         if os.path.exists(name):
             os.unlink(name)
 
 
-def _layers(run: Run, frames: Sequence[FrameLedger], settings: Settings) -> dict[str, geopandas.GeoDataFrame]:
-    rows = zone_rows(run, frames)
-    zones = [z for entry in frames for z in entry.zones.zones]
-    flat = [{k: v for k, v in row.items() if not k.endswith(("_x_m", "_y_m"))} for row in rows]
+def _layers(run: Run, frames, settings: Settings, lives: Sequence[Life]) -> dict[str, geopandas.GeoDataFrame]:
+    entries = [summary_of(run, f) if isinstance(f, FrameLedger) else f for f in frames]
+    flat = [
+        {k: v for k, v in row.items() if not k.endswith(("_x_m", "_y_m"))}
+        for row in rows_of({"frames": [e.values for e in entries]})
+    ]
+    zones = [z for e in entries for z in e.zones]
 
     def table(geometry: list, records: list[dict]) -> geopandas.GeoDataFrame:
         kept = [(g, r) for g, r in zip(geometry, records, strict=True) if g is not None]
@@ -109,16 +126,34 @@ def _layers(run: Run, frames: Sequence[FrameLedger], settings: Settings) -> dict
         short = [{k: r[k] for k in ("frame", "time", "seconds", "id", "name")} for r in flat]
         return table([None if p is None else shapely.Point(p) for p in place], short)
 
-    tubes = [t for entry in frames for t in _tubes(entry, settings)]
-    walls = [w for entry in frames for w in _walls(entry)]
+    held = [f for f in frames if isinstance(f, FrameLedger)]
+    tubes = [t for entry in held for t in _tubes(entry, settings)]
+    walls = [w for entry in held for w in _walls(entry)]
+    tracks = _tracks(entries, lives)
     return {
         "zones": table([z.contour for z in zones], flat),
+        "zones_inner": table([z.inner for z in zones], [{k: r[k] for k in ("frame", "id", "name")} for r in flat]),
         "centres": points("centre"),
         "separation": points("separation"),
         "reattachment": points("reattachment"),
+        "tracks": table([g for g, _ in tracks], [r for _, r in tracks]),
         "stream_tubes": table([g for g, _ in tubes], [r for _, r in tubes]),
         "walls": table([g for g, _ in walls], [r for _, r in walls]),
     }
+
+
+def _tracks(entries: Sequence[FrameSummary], lives: Sequence[Life]) -> list[tuple]:
+    """The path of each followed eddy's centre, for those seen at more than one place."""
+    made = []
+    for life in lives:
+        path = [z.centre for e in entries for z in e.zones if z.id == life.id]
+        if life.followed and len(path) > 1 and np.ptp(path, axis=0).any():
+            record = {
+                "id": life.id, "name": life.name, "first_s": life.first_s, "last_s": life.last_s,
+                "share_of_time": life.share_of_time,
+            }
+            made.append((shapely.LineString(path), record))
+    return made
 
 
 def _tubes(entry: FrameLedger, settings: Settings) -> list[tuple]:

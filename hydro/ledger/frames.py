@@ -3,10 +3,11 @@
 from __future__ import annotations
 
 from dataclasses import dataclass, replace
+from weakref import WeakKeyDictionary
 
 import numpy as np
 
-from ..eddies import ZoneSet, find_zones
+from ..eddies import Zone, ZoneSet, find_zones
 from ..eddies.sensitivity import Readings
 from ..frame import Frame
 from ..reach import Reach
@@ -16,6 +17,8 @@ from ..streamfunction import Plan, StreamFunction, stream_function
 
 # Three more solutions a frame; on meshes above this they would take longer than the answer is worth waiting for.
 _MOST_READ_NODES = 300_000
+# A plan's other readings keep their factors for as long as the plan lives.
+_READINGS: WeakKeyDictionary[Plan, Readings] = WeakKeyDictionary()
 
 
 @dataclass(frozen=True, eq=False)
@@ -42,7 +45,8 @@ class FrameReader:
         self.run, self.reach, self.settings = run, reach, settings or run.settings
         first = next((i for i, kind in enumerate(run.times.kinds) if kind != "maximum"), 0)
         self.plan = plan or plan_for(run, run.frame(first), reach, self.settings)
-        self.readings = Readings(self.plan) if sensitivity and run.mesh.n_nodes <= _MOST_READ_NODES else None
+        wanted = sensitivity and run.mesh.n_nodes <= _MOST_READ_NODES
+        self.readings = _READINGS.setdefault(self.plan, Readings(self.plan)) if wanted else None
         self.left_out = sensitivity and self.readings is None
 
     def frame(self, index: int) -> FrameLedger:
@@ -70,7 +74,20 @@ class FrameReader:
                 "thresholds"
             )
             found = replace(found, notes=(*found.notes, note))
+        length = window[1] - window[0] if window else frame.interval_s
+        if frame.kind == "mean" and length:
+            found = replace(found, zones=tuple(with_periods(z, length, self.settings) for z in found.zones))
         return FrameLedger(frame, sf, found, window)
+
+
+def with_periods(zone: Zone, window_s: float, settings: Settings) -> Zone:
+    """A zone of a mean flow, flagged where the window holds fewer shedding periods than ``least_periods``."""
+    if zone.wake is None:
+        return zone
+    periods = window_s / zone.wake.expected_period_s
+    if periods >= settings["least_periods"]:
+        return zone
+    return replace(zone, flags=(*zone.flags, f"mean over {periods:.1f} expected shedding periods"))
 
 
 def plan_for(run: Run, frame: Frame, reach: Reach | None = None, settings: Settings | None = None) -> Plan:

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import datetime
 import math
-from collections.abc import Iterable
+from collections.abc import Iterable, Mapping
 from dataclasses import asdict
 from typing import Any
 
@@ -15,22 +15,46 @@ from ..mesh import Mesh
 from ..provenance import command_line, file_hash, versions
 from ..run import Run
 from ..settings import Settings
+from .follow import Life
 from .frames import FrameLedger
+from .summary import FrameSummary
+from .windows import Instants
 
 SCHEMA = "leewater/eddies/1"
 
 
-def ledger_json(run: Run, frames: Iterable[FrameLedger], settings: Settings | None = None) -> dict[str, Any]:
+def ledger_json(
+    run: Run, frames: Iterable[FrameLedger | FrameSummary], settings: Settings | None = None, *,
+    lives: Iterable[Life] = (), instants: Mapping[str, Instants] | None = None, stopped_after: int | None = None,
+) -> dict[str, Any]:
     """The ledger of a run as a dict of schema leewater/eddies/1.
 
     Places are world coordinates, m; keys carry their unit; what is not available is None.
+
+    Parameters
+    ----------
+    frames : entries or summaries of frames
+    lives : the eddies followed through those frames; the zones' ids are theirs
+    instants : for the zones of a mean, by id, what the instants of its window say
+    stopped_after : frames done, where the work was stopped before its end
     """
-    return {
+    entries = [f.values if isinstance(f, FrameSummary) else frame_json(run, f) for f in frames]
+    for entry in entries if instants else ():
+        for zone in entry["zones"]:
+            if zone["id"] in instants:
+                zone["instants"] = _plain(asdict(instants[zone["id"]]))
+    whole: dict[str, Any] = {
         "schema": SCHEMA,
         "source": source_of(run),
         "settings": dict(settings or run.settings),
-        "frames": [frame_json(run, f) for f in frames],
+        "frames": entries,
     }
+    eddies = [_plain(asdict(life)) for life in lives]
+    if eddies:
+        whole["eddies"] = eddies
+    if stopped_after is not None:
+        whole["stopped_after_frames"] = stopped_after
+    return whole
 
 
 def source_of(run: Run) -> dict[str, Any]:
@@ -119,6 +143,15 @@ def time_text(time: np.datetime64 | None) -> str | None:
         return None
     text = np.datetime_as_string(time.astype("datetime64[ms]"))
     return text.removesuffix(".000") + "Z"
+
+
+def _plain(value: Any) -> Any:
+    """Tuples to lists, NaN to None, through nested values."""
+    if isinstance(value, dict):
+        return {k: _plain(v) for k, v in value.items()}
+    if isinstance(value, (list, tuple)):
+        return [_plain(v) for v in value]
+    return _number(value) if isinstance(value, float) else value
 
 
 def _number(value: float | None) -> float | None:

@@ -18,11 +18,11 @@ from .corridor import Corridor, narrowest
 from .fish import Fish
 from .legs import LegChain, Search, prepare
 from .profile import TOO_LONG, Barrier, Profile, barriers, profile
+from .sills import sills_of
 from .water import Routes
 
 NOT_EXCLUDED, EXCLUDED, NOT_ASSESSED = "not excluded", "excluded", "not assessed"
 CAUTIONS = ("passage", "endurance")
-_SILLS = ("weir", "sill", "drop")  # kinds of structure whose line a fish meets as a drop
 _CHANGE = 0.1  # flow that changes by more than this share during the swim is not steady
 
 
@@ -118,16 +118,6 @@ class Answer:
         alone = "also " if (self.alone_status == NOT_EXCLUDED) == (self.status == NOT_EXCLUDED) else ""
         alone_words = "not excluded" if self.alone_status == NOT_EXCLUDED else "excluded"
         return f"{head}{words}; {self.reason} Without recovery at rest: {alone}{alone_words}."
-
-
-def sills_of(reach: Reach | None, design: str | None = None) -> tuple[np.ndarray, ...]:
-    """Lines of the weirs, sills and drops that stand in a design, local m."""
-    if reach is None:
-        return ()
-    return tuple(
-        np.asarray(s.geometry.coords)[:, :2] for s in reach.structures_of(design)
-        if s.kind in _SILLS and s.geometry.geom_type == "LineString"
-    )
 
 
 def through_discharge(frame: Frame, settings: Settings, boundary_sets=None) -> float:

@@ -14,7 +14,7 @@ from ..frame import Frame
 from ..mesh import Mesh
 from ..reach import NamedLine, Reach
 from .fish import Fish
-from .water import Routes, triangles_of, widened
+from .water import Drops, Routes, triangles_of, widened
 
 LAYER = "fish"
 ROLES = ("start", "rest", "goal", "entrance")
@@ -75,12 +75,11 @@ class Areas:
 
 @dataclass(frozen=True, slots=True)
 class Places:
-    """Start, goal, declared resting places, and lines across the entrances of passes; local metres."""
+    """Start, goal and declared resting places of a review, local metres."""
 
     start: NamedLine
     goal: NamedLine
     rests: tuple[NamedLine, ...] = ()
-    entrances: tuple[NamedLine, ...] = ()
 
 
 def places_of(reach: Reach) -> Places:
@@ -100,14 +99,14 @@ def places_of(reach: Reach) -> Places:
                 f"layer {LAYER} has {len(by_role[role])} features with role {role!r}; passage needs exactly one: draw it "
                 "in lines.gpkg."
             )
-    return Places(by_role["start"][0], by_role["goal"][0], tuple(by_role["rest"]), tuple(by_role["entrance"]))
+    return Places(by_role["start"][0], by_role["goal"][0], tuple(by_role["rest"]))
 
 
-def find_areas(frame: Frame, fish: Fish, places: Places, drops: np.ndarray) -> Areas:
+def find_areas(frame: Frame, flow: np.ndarray, fish: Fish, places: Places, drops: Drops) -> Areas:
     """Start, goal and every resting area for a fish in one frame.
 
     A triangle is resting water where all its nodes are slow and deep enough and no heading through it is barred by a
-    drop (``drops``, (m,)); triangles that share a node are one area. Only water deep enough counts as start or goal.
+    drop (``flow`` is that of the water); triangles that share a node are one area. Only water deep enough counts as start or goal.
 
     Raises
     ------
@@ -117,9 +116,9 @@ def find_areas(frame: Frame, fish: Fish, places: Places, drops: np.ndarray) -> A
     """
     mesh = frame.mesh
     deep = (frame.depth >= fish.least_depth_m)[mesh.triangles].any(axis=1)
-    speed = frame.speed * fish.position_factor
+    speed = fish.position_factor * np.hypot(*flow.T) / np.maximum(frame.depth, 1e-6)
     slow = (speed <= fish.rest_speed_m_s) & (frame.depth >= fish.rest_depth_m)
-    resting = slow[mesh.triangles].all(axis=1) & (drops == 0)
+    resting = slow[mesh.triangles].all(axis=1) & (drops.barred == 0)
     of_triangle = np.full(mesh.n_triangles, FREE, np.int32)
     items: list[Area] = []
     for kind, place in (("start", places.start), ("goal", places.goal)):

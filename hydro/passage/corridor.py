@@ -84,7 +84,7 @@ def _fits(search: Search, triangle: np.ndarray, xy: np.ndarray, heading: np.ndar
     """(k,) bool: deep enough, and slow enough to keep the heading."""
     frame, fish = search.water.frame, search.fish
     weight, corner = barycentric(frame.mesh, triangle, xy), frame.mesh.triangles[np.maximum(triangle, 0)]
-    h, q = (np.einsum("ij,ij...->i...", weight, v[corner]) for v in (frame.depth, frame.unit_discharge))
+    h, q = (np.einsum("ij,ij...->i...", weight, v[corner]) for v in (frame.depth, search.water.flow))
     u = fish.position_factor * q / np.maximum(h, 1e-6)[:, None]
     along = np.einsum("ij,ij->i", u, heading)
     across = u[:, 0] * heading[:, 1] - u[:, 1] * heading[:, 0]

@@ -13,7 +13,7 @@ from ..frame import Frame
 from ..settings import Settings
 from .areas import Area, Areas, Places, around, find_areas
 from .fish import Fish
-from .water import Routes, Water, drop_masks, gathered, make_routes, make_water
+from .water import Drops, Routes, Water, find_drops, gathered, make_routes, make_water
 
 _BAND_RINGS = 3  # triangles either side of a route that its first refinement may use; later ones use one
 _BAND_POINTS = 7  # points a side there
@@ -29,7 +29,7 @@ class Leg:
     ----------
     from_area, to_area : Area
     fatigue : float
-        Share of endurance used, 1: exhausted. In water that bars the fish it counts one a body length and more.
+        Share of endurance used, 1: exhausted. Water that bars the fish counts BARRED a body length and more.
     seconds : float
         Swimming time.
     path : (k, 2) float64
@@ -79,7 +79,7 @@ class Search:
     water: Water
     fish: Fish
     areas: Areas
-    drops: np.ndarray  # of all triangles of the mesh
+    drops: Drops
     settings: Settings
 
     def least_worst(self, *, bound: float = math.inf, recovering: bool = True, relaxed: bool = False) -> float:
@@ -190,7 +190,7 @@ class Search:
         routes = make_routes(mesh, _BAND_POINTS, around(mesh, under[under >= 0], _BAND_RINGS if share == 0.5 else 1))
         if share < 0.5:
             routes = gathered(routes, leg.path, share)
-        water = make_water(routes, self.water.frame, self.drops)
+        water = make_water(routes, self.water.frame, self.drops, self.water.flow)
         label = areas.labels(routes)
         own, target = areas.items.index(leg.from_area), areas.items.index(leg.to_area)
         sources = np.flatnonzero(label == own).astype(np.int32)
@@ -215,5 +215,6 @@ def prepare(
     """A search ready to run; ``routes`` of the frame's mesh are made where none are handed over to be shared."""
     if routes is None:
         routes = make_routes(frame.mesh, int(settings["passage_points_per_side"]))
-    drops = drop_masks(frame, fish.greatest_drop_m, 3 * fish.length_m, sills)
-    return Search(make_water(routes, frame, drops), fish, find_areas(frame, fish, places, drops), drops, settings)
+    drops = find_drops(frame, fish.greatest_drop_m, 3 * fish.length_m, sills)
+    water = make_water(routes, frame, drops)
+    return Search(water, fish, find_areas(frame, water.flow, fish, places, drops), drops, settings)

@@ -7,9 +7,8 @@ from dataclasses import dataclass
 import numpy as np
 
 from .._kernels import route as kernel
-from .fish import Fish
 from .legs import LegChain, Search
-from .water import barycentric, level_at
+from .water import barycentric
 
 TOO_FAST, TOO_SHALLOW, DROP, TOO_LONG = "too fast", "too shallow", "drop", "too long without rest"
 _THIN_M = 1e-6
@@ -38,6 +37,8 @@ class Profile:
         Swimming time from the start of the route, barred stretches at the highest speed of the data.
     beyond : (k, 3)
         Speed excess, depth deficit (shares of the limits) and drop (1: barred) of the stretch to this point.
+    rise_m : (k,)
+        Rise of the level that bars the triangle of the stretch; 0 where it bars none.
     """
 
     xy: np.ndarray
@@ -55,6 +56,7 @@ class Profile:
     fatigue: np.ndarray
     seconds: np.ndarray
     beyond: np.ndarray
+    rise_m: np.ndarray
 
     @property
     def barred(self) -> np.ndarray:
@@ -118,11 +120,11 @@ def _leg_profile(search: Search, leg, index: int) -> dict[str, np.ndarray]:
     at = np.concatenate([within[:1], within])
     weight = barycentric(mesh, at, path)
     corners = mesh.triangles[at]
-    h, q, bed = (np.einsum("ij,ij...->i...", weight, v[corners]) for v in (frame.depth, frame.unit_discharge, frame.bed))
+    h, q, bed = (np.einsum("ij,ij...->i...", weight, v[corners]) for v in (frame.depth, search.water.flow, frame.bed))
     u = np.where(h[:, None] > _THIN_M, q / np.maximum(h, _THIN_M)[:, None], 0.0)
     points = np.column_stack([path, h, u])
     swimmer = search.fish.swimmer(search.settings)
-    links = kernel.walked(points, within, resting[1:], search.drops, swimmer)
+    links = kernel.walked(points, within, resting[1:], search.drops.barred, swimmer)
     links = np.vstack([np.zeros((1, 7)), links])
     links[0, 2:4] = links[min(1, len(links) - 1), 2:4]
     barred = (links[:, 4:] > 0).any(axis=1)
@@ -135,7 +137,7 @@ def _leg_profile(search: Search, leg, index: int) -> dict[str, np.ndarray]:
         "level_m": bed + h, "head_m": bed + h + speed**2 / (2 * search.settings["gravity_m_s2"]), "speed_m_s": speed,
         "against_m_s": -np.einsum("ij,ij->i", u, heading) / length, "swim_speed_m_s": links[:, 2],
         "ground_speed_m_s": links[:, 3], "fatigue": np.cumsum(np.where(barred, 0.0, links[:, 0])),
-        "seconds": links[:, 1], "beyond": links[:, 4:],
+        "seconds": links[:, 1], "beyond": links[:, 4:], "rise_m": search.drops.rise_m[at],
     }
 
 
@@ -146,7 +148,7 @@ def barriers(search: Search, chain: LegChain, route: Profile) -> tuple[Barrier, 
     for number in range(1, len(chain.legs) + 1):
         own = route.leg == number
         for column, kind in enumerate((TOO_FAST, TOO_SHALLOW, DROP)):
-            for run in _runs(own & (route.beyond[:, column] > 0)):
+            for run in _runs(own & (route.beyond[:, column] > 0), route.distance_m, 3 * search.fish.length_m):
                 found.append((route.distance_m[run[0]], _barrier(search, route, run, column, kind, number, step)))
         tired = np.flatnonzero(own & (route.fatigue >= 1.0))
         if tired.size:
@@ -160,11 +162,11 @@ def barriers(search: Search, chain: LegChain, route: Profile) -> tuple[Barrier, 
 
 def _barrier(search: Search, route: Profile, run: np.ndarray, column: int, kind: str, leg: int, step) -> Barrier:
     fish = search.fish
-    worst = run[np.argmax(route.beyond[run, column])]
+    worst = run[np.argmax(route.rise_m[run] if kind == DROP else route.beyond[run, column])]
     value, limit, unit = {
         TOO_FAST: (fish.top_speed_m_s * (1 + route.beyond[worst, 0]), fish.top_speed_m_s, "m/s"),
         TOO_SHALLOW: (fish.least_depth_m * (1 - route.beyond[worst, 1]), fish.least_depth_m, "m"),
-        DROP: (_rise(search, fish, route, run), fish.greatest_drop_m, "m"),
+        DROP: (route.rise_m[run].max(), fish.greatest_drop_m, "m"),
     }[kind]
     return Barrier(
         kind, leg, _point(route.xy[worst]), float(value), limit, unit, float(step[run].sum()),
@@ -172,22 +174,10 @@ def _barrier(search: Search, route: Profile, run: np.ndarray, column: int, kind:
     )
 
 
-def _rise(search: Search, fish: Fish, route: Profile, run: np.ndarray) -> float:
-    """Greatest rise of the level along the route within three body lengths, over a run of points and a window about it."""
-    window = 3 * fish.length_m
-    low, high = route.distance_m[run[0]] - window, route.distance_m[run[-1]] + window
-    place = np.linspace(max(low, 0.0), min(high, route.distance_m[-1]), 200)
-    xy = np.column_stack([np.interp(place, route.distance_m, route.xy[:, k]) for k in (0, 1)])
-    level = level_at(search.water.frame.mesh, search.water.frame.level, xy)
-    behind = np.interp(place - window, place, level, left=np.nan)
-    rises = level - np.where(np.isnan(behind), level[0], behind)
-    return float(np.nanmax(rises, initial=0.0))
-
-
-def _runs(chosen: np.ndarray) -> list[np.ndarray]:
-    """Stretches of adjoining True values, as arrays of their indices."""
+def _runs(chosen: np.ndarray, distance: np.ndarray, gap: float) -> list[np.ndarray]:
+    """Indices of chosen points in groups; those less than ``gap`` m apart along the route belong together."""
     index = np.flatnonzero(chosen)
-    return [part for part in np.split(index, np.flatnonzero(np.diff(index) > 1) + 1) if part.size]
+    return [part for part in np.split(index, np.flatnonzero(np.diff(distance[index]) > gap) + 1) if part.size]
 
 
 def _point(xy: np.ndarray) -> tuple[float, float]:

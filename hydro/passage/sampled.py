@@ -13,7 +13,7 @@ from scipy.stats import binomtest
 from .areas import Places, find_areas
 from .fish import Fish
 from .legs import Search
-from .water import drop_masks
+from .water import find_drops
 
 _LENGTH_STEP = 0.001  # m; lengths are sampled to the millimetre
 
@@ -113,7 +113,8 @@ def sampled_share(
 def _resized(search: Search, places: Places, sills: tuple[np.ndarray, ...], length_m: float) -> Search:
     """The same search for a fish of another length; areas are found anew only where its drops differ."""
     fish, frame = search.fish.resized(length_m), search.water.frame
-    drops = drop_masks(frame, fish.greatest_drop_m, 3 * length_m, sills)
-    areas = search.areas if np.array_equal(drops, search.drops) else find_areas(frame, fish, places, drops)
-    water = replace(search.water, drops=np.ascontiguousarray(drops[search.water.routes.triangles]))
+    drops = find_drops(frame, fish.greatest_drop_m, 3 * length_m, sills)
+    same = np.array_equal(drops.barred, search.drops.barred)
+    areas = search.areas if same else find_areas(frame, search.water.flow, fish, places, drops)
+    water = replace(search.water, drops=drops.of(search.water.routes))
     return Search(water, fish, areas, drops, search.settings)

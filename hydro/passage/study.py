@@ -9,12 +9,13 @@ import numpy as np
 
 from ..review import Review, RunEntry
 from ..run import Run
-from .answer import Answer, assess, sills_of, unsteady_flag
+from .answer import Answer, assess, unsteady_flag
 from .areas import places_of
 from .entrance import EntranceShare, entrance_share
 from .fish import Fish, read_fish
 from .flows import Band, Hydrograph, Shares, bands, hydrograph, monthly_shares, read_flow_duration
 from .sampled import SampledShare, sampled_share
+from .sills import entrances_of, sills_of
 from .water import Routes, make_routes
 
 Progress = Callable[[float, str], None]
@@ -132,7 +133,8 @@ def _one(review: Review, entry: RunEntry, run: Run, index: int, kind: Fish, net:
     answer = assess(
         frame, kind, review.reach, review.settings, design=entry.design or None, boundary_sets=run.boundary_sets, routes=net
     )
-    shares = tuple(entrance_share(frame, e, answer.discharge_m3_s) for e in places_of(review.reach).entrances)
+    lines = entrances_of(review.reach, entry.design or None)
+    shares = tuple(entrance_share(frame, line, answer.discharge_m3_s) for line in lines)
     return RunAnswer(entry, run, answer, shares)
 
 

@@ -136,20 +136,23 @@ class Water:
     ----------
     routes : Routes
     frame : Frame
+    flow : (n, 2) float64
+        Unit discharge at the mesh's nodes, m2/s, as used here: see :func:`node_flow`.
     points : (p, 5) float64
         Local x, y (m), depth (m) and velocity (m/s) at each point.
     drops : (m,) int64
-        One bit a heading sector and triangle: set where the level rises by more than the fish's greatest drop.
+        One bit a heading sector and triangle of the routes: see :class:`Drops`.
     """
 
     routes: Routes
     frame: Frame
+    flow: np.ndarray
     points: np.ndarray
     drops: np.ndarray = field(repr=False)
 
 
-def make_water(routes: Routes, frame: Frame, drops: np.ndarray | None = None) -> Water:
-    """The water of a frame at the points of routes; ``drops`` (all triangles of the mesh) from :func:`drop_masks`.
+def make_water(routes: Routes, frame: Frame, drops: Drops, flow: np.ndarray | None = None) -> Water:
+    """The water of a frame at the points of routes; ``flow`` from :func:`node_flow` where it is at hand.
 
     Raises ``ValueError`` for a frame of maxima, in which depth and speed belong to different moments.
     """
@@ -157,16 +160,46 @@ def make_water(routes: Routes, frame: Frame, drops: np.ndarray | None = None) ->
         raise ValueError(
             f"frame at {frame.seconds:g} s holds maxima of different moments; passage needs an instant or a mean."
         )
-    mesh = routes.mesh
-    values = routes.at_points(np.column_stack([mesh.node_xy, frame.depth, frame.unit_discharge]))
+    flow = node_flow(frame) if flow is None else flow
+    values = routes.at_points(np.column_stack([routes.mesh.node_xy, frame.depth, flow]))
     carries = values[:, 2] > _THIN_M
     values[:, 3:] = np.where(carries[:, None], values[:, 3:] / np.where(carries, values[:, 2], 1.0)[:, None], 0.0)
-    mask = np.zeros(len(routes.triangles), np.int64) if drops is None else drops[routes.triangles]
-    return Water(routes, frame, np.ascontiguousarray(values), np.ascontiguousarray(mask))
+    return Water(routes, frame, flow, np.ascontiguousarray(values), drops.of(routes))
 
 
-def drop_masks(frame: Frame, greatest_drop_m: float, window_m: float, sills: tuple[np.ndarray, ...] = ()) -> np.ndarray:
-    """Headings barred by a drop that a fish cannot climb, as bits (m,) int64 of each triangle.
+def node_flow(frame: Frame) -> np.ndarray:
+    """(n, 2) unit discharge at nodes, m2/s, with no node faster than the fastest face round it.
+
+    Values carried from faces to a node at the waterline may leave it next to no depth and so a speed that is nowhere
+    in the file.
+    """
+    if frame.stored_on == "node":
+        return frame.unit_discharge
+    start, faces = frame.mesh.node_faces
+    around = np.append(np.hypot(*frame.face_velocity.T)[faces], 0.0)
+    most = np.where(np.diff(start) > 0, np.maximum.reduceat(around, start[:-1]), 0.0)
+    speed = np.hypot(*frame.unit_discharge.T) / np.maximum(frame.depth, _THIN_M)
+    return frame.unit_discharge * np.minimum(1.0, most / np.maximum(speed, 1e-300))[:, None]
+
+
+@dataclass(frozen=True, eq=False)
+class Drops:
+    """Drops of the level that a fish cannot climb.
+
+    ``barred`` (m,) int64: one bit a heading sector of each triangle of the mesh; ``rise_m`` (m,): the greatest rise of
+    the level through a barred triangle, 0 elsewhere.
+    """
+
+    barred: np.ndarray
+    rise_m: np.ndarray
+
+    def of(self, routes: Routes) -> np.ndarray:
+        """The bits for the triangles of routes."""
+        return np.ascontiguousarray(self.barred[routes.triangles])
+
+
+def find_drops(frame: Frame, greatest_drop_m: float, window_m: float, sills: tuple[np.ndarray, ...] = ()) -> Drops:
+    """Headings barred by a drop that a fish cannot climb.
 
     Where the level rises in any heading by more than the greatest drop, every heading that does not lead down is
     barred: a drop is not climbed aslant.
@@ -187,15 +220,17 @@ def drop_masks(frame: Frame, greatest_drop_m: float, window_m: float, sills: tup
     tenth of the line still in it counts. Only triangles whose own slope could make the drop are looked at.
     """
     mesh = frame.mesh
-    out = np.zeros(mesh.n_triangles, np.int64)
+    barred, most = np.zeros(mesh.n_triangles, np.int64), np.zeros(mesh.n_triangles)
     level = frame.level
     at_sill = _triangles_under(mesh, sills)
     steep = _slope(mesh, level) * window_m > greatest_drop_m
     for chosen, half in ((np.flatnonzero(steep & ~at_sill), window_m / 2), (np.flatnonzero(at_sill), window_m)):
         rise = _rises(mesh, level, chosen, half)
-        barred = (rise.max(axis=1, initial=-np.inf) > greatest_drop_m)[:, None] & (rise > -0.01 * greatest_drop_m)
-        out[chosen] = barred @ (1 << np.arange(SECTORS))
-    return out
+        high = rise.max(axis=1, initial=-np.inf)
+        shut = high > greatest_drop_m
+        barred[chosen] = (shut[:, None] & (rise > -0.01 * greatest_drop_m)) @ (1 << np.arange(SECTORS))
+        most[chosen] = np.where(shut, high, 0.0)
+    return Drops(barred, most)
 
 
 def _slope(mesh: Mesh, level: np.ndarray) -> np.ndarray:
