@@ -243,7 +243,7 @@ def _cursor(course: Course, box: Box, units: Units, x: np.ndarray, axis: float) 
     start = -width if left else 0.0
     top, b = 0.0, box.label
     return (
-        f'<g data-cursor transform="translate({x[course.index]:.1f} 0)">'
+        f'<g data-cursor="" transform="translate({x[course.index]:.1f} 0)">'
         f'<line class="case" x1="0" x2="0" y1="{top}" y2="{axis + 2:.1f}"/>'
         f'<line class="cursor" x1="0" x2="0" y1="{top}" y2="{axis + 2:.1f}"/>'
         f'<path class="subject" d="M-6 {axis + 9:.1f} L6 {axis + 9:.1f} L0 {axis:.1f} Z"/>'

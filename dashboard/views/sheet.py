@@ -42,7 +42,8 @@ class Sheet:
         self, points: np.ndarray, colour: str, width: float, *, alpha: float = 1.0, dash: str = "solid", under: bool = False,
     ) -> None:
         """A line; ``under`` puts it below all areas."""
-        _add(self.under if under else self.over, points[:, 0], points[:, 1], colour, width, alpha, dash)
+        if len(points):
+            _add(self.under if under else self.over, points[:, 0], points[:, 1], colour, width, alpha, dash)
 
     def text(
         self, x: float, y: float, text: str, colour: str, *, size: float, fill: str = "#ffffff", fill_alpha: float = 0.0,
