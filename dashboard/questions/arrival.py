@@ -110,7 +110,7 @@ class Arrival(Question):
         log = table.html(table.Table("Queries", f"{len(items)} in the log", "Queries of the review", columns, lines, "No query yet."))
         form = (
             '<form data-send="ask" class="ask"><label>Your name <input type="text" name="who" id="ask-who" autocomplete="name" '
-            'required></label><label>Query <input type="text" name="text" id="ask-text" required></label>'
+            'required></label><label>Query <input type="text" name="text" id="ask-text" data-once required></label>'
             '<button type="submit" class="plain first">Write the query</button></form>'
         )
         return log + form

@@ -45,6 +45,7 @@ class Desk {
     const focused = place.contains(document.activeElement) ? document.activeElement : null;
     const key = focused && (focused.id || focused.dataset.key);
     place.innerHTML = html;
+    for (const field of place.querySelectorAll("input[type=text]")) field.value = sessionStorage.getItem(field.id) ?? "";
     if (key) place.querySelector(`#${CSS.escape(key)}, [data-key="${CSS.escape(key)}"]`)?.focus({ preventScroll: true });
   }
 
@@ -109,6 +110,14 @@ class Desk {
       e.preventDefault();
       const form = e.target;
       this.tell(form.dataset.send, Object.fromEntries(new FormData(form)));
+      for (const field of form.querySelectorAll("input[data-once]")) {
+        field.value = "";
+        sessionStorage.removeItem(field.id);
+      }
+    });
+    // What is typed outlives a redrawing of the page, and the desk's stopping and coming back.
+    document.addEventListener("input", (e) => {
+      if (e.target.matches("input[type=text]")) sessionStorage.setItem(e.target.id, e.target.value);
     });
     const slider = document.getElementById("time");
     slider?.addEventListener("input", () => {

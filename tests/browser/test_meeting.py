@@ -1,0 +1,104 @@
+"""Work in a meeting: two browsers on one review, long work that can be stopped, figures that agree with the commands."""
+
+from __future__ import annotations
+
+import json
+import re
+import shutil
+import subprocess
+import sys
+from collections.abc import Iterator
+from pathlib import Path
+from urllib.parse import parse_qs, urlsplit
+
+import pytest
+from playwright.sync_api import Browser, Page, expect
+
+from .conftest import ROOT, Server, running_dashboard
+from .desk import PATIENCE, answer, colours, faults, open_desk, plain, settled
+
+pytestmark = pytest.mark.browser
+COARSE = "existing_bankfull_coarse"
+
+
+@pytest.fixture(scope="module")
+def copy(tmp_path_factory: pytest.TempPathFactory) -> Path:
+    """The sample review with its coarse run alone, to write into; its title holds a script."""
+    folder = tmp_path_factory.mktemp("review")
+    sample = ROOT / "sample_reach"
+    head, *runs = (sample / "review.toml").read_text(encoding="utf-8").split("[[runs]]")
+    rest = runs[-1][runs[-1].index("[settings]") :]
+    chosen = next(r for r in runs if f'id = "{COARSE}"' in r)
+    head = re.sub(r'^title = .*$', 'title = "Weir <script>document.title=1</script>"', head, flags=re.M)
+    (folder / "review.toml").write_text(f"{head}[[runs]]{chosen}\n{rest}", encoding="utf-8")
+    (folder / "results").mkdir()
+    shutil.copy(sample / "lines.gpkg", folder)
+    shutil.copy(sample / "results" / f"{COARSE}.nc", folder / "results")
+    return folder
+
+
+@pytest.fixture(scope="module")
+def mine(copy: Path, tmp_path_factory: pytest.TempPathFactory) -> Iterator[Server]:
+    """The dashboard on that copy."""
+    with running_dashboard(tmp_path_factory.mktemp("dashboard") / "log.txt", str(copy)) as running:
+        yield running
+
+
+def test_a_title_with_a_script_in_it_is_only_text(page: Page, mine: Server):
+    open_desk(page, mine.address)
+    assert "<script>document.title=1</script>" in page.inner_text(".title")
+    assert page.title() == "Eddies \u00b7 Leewater"
+
+
+def test_a_query_written_in_one_browser_shows_in_the_other(page: Page, mine: Server, copy: Path, browser: Browser):
+    open_desk(page, mine.address, "question=arrival")
+    other = browser.new_context(viewport={"width": 1440, "height": 900}).new_page()
+    open_desk(other, mine.address, "question=arrival")
+    other.fill("#ask-who", "B. Other")
+    other.fill("#ask-text", "half a thought")
+    page.fill("#ask-who", "A. Reviewer")
+    page.fill("#ask-text", "Which roughness at the ramp? <b>bold</b>")
+    page.click("form.ask button")
+    expect(other.locator(".body")).to_contain_text("Which roughness at the ramp? <b>bold</b>", timeout=10_000)
+    assert other.input_value("#ask-text") == "half a thought"
+    other.click("form.ask button")
+    expect(page.locator(".body")).to_contain_text("half a thought", timeout=10_000)
+    written = [json.loads(line) for line in (copy / "queries.jsonl").read_text(encoding="utf-8").splitlines()]
+    assert [w["who"] for w in written] == ["A. Reviewer", "B. Other"]
+    other.context.close()
+
+
+def test_letting_logs_go_shows_how_far_it_is_and_can_be_stopped(page: Page, mine: Server):
+    open_desk(page, mine.address)
+    page.click("nav button[data-value=drift]:visible")
+    page.wait_for_selector("button[data-do=stop]", timeout=PATIENCE)
+    assert page.locator("progress").get_attribute("aria-label") == "Letting the logs go:"
+    page.click("button[data-do=stop]")
+    settled(page)
+    assert "Stopped early" in answer(page)
+    assert colours(page) > 10
+    assert faults(page) == []
+
+
+def test_the_section_on_screen_agrees_with_the_command(page: Page, mine: Server, copy: Path):
+    """The same line through `leewater section`; tolerance: the three digits that the screen prints."""
+    open_desk(page, mine.address)
+    box = page.locator("#end-left").bounding_box()
+    assert box is not None
+    x, y = box["x"] + box["width"] / 2, box["y"] + box["height"] / 2
+    url = page.url
+    page.mouse.move(x, y)
+    page.mouse.down()
+    page.mouse.move(x + 12, y + 18, steps=3)
+    page.mouse.up()
+    page.wait_for_function("url => location.href !== url", arg=url)
+    settled(page)
+    x1, y1, x2, y2 = parse_qs(urlsplit(page.url).query)["section"][0].split(",")
+    shown = re.search(r"Passes ([\d.]+) m\u00b3/s by the field, ([\d.]+) m\u00b3/s by psi", plain(page.inner_text(".figures")))
+    assert shown
+    command = [sys.executable, "-c", "import sys; from dashboard.cli import main; sys.exit(main())", "section",
+               str(copy / "results" / f"{COARSE}.nc"), "--line", f"{x1},{y1} {x2},{y2}", "--json", "-"]
+    ran = subprocess.run(command, cwd=ROOT, capture_output=True, text=True, check=True)
+    (row,) = json.loads(ran.stdout)["sections"]
+    assert float(shown[1]) == pytest.approx(row["discharge_m3_s"], rel=6e-3)
+    assert float(shown[2]) == pytest.approx(row["discharge_psi_m3_s"], rel=6e-3)
