@@ -68,7 +68,7 @@ class Checkout:
 
     def locks(self, level: str) -> "list[Path]":
         """The lock files that make up `level`."""
-        return [self.root / "locks" / name for name in LOCKS[level]]
+        return [self.root / ".ci" / "locks" / name for name in LOCKS[level]]
 
     def is_ready(self, level: str) -> bool:
         """Whether the environment holds exactly what the lock files of `level` say."""

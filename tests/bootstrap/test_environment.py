@@ -21,10 +21,10 @@ BEFORE_THE_ENVIRONMENT = ("dashboard/__init__.py", "dashboard/__main__.py", "das
 @pytest.fixture
 def checkout(tmp_path: Path) -> Checkout:
     """A checkout with locks and no environment."""
-    (tmp_path / "locks").mkdir()
+    (tmp_path / ".ci" / "locks").mkdir(parents=True)
     (tmp_path / "pyproject.toml").write_text("[project]\n")
-    (tmp_path / "locks" / "run.txt").write_text("# what runs\nnumpy==2.0\nscipy==1.0\n")
-    (tmp_path / "locks" / "test.txt").write_text("pytest==9.0\n")
+    (tmp_path / ".ci" / "locks" / "run.txt").write_text("# what runs\nnumpy==2.0\nscipy==1.0\n")
+    (tmp_path / ".ci" / "locks" / "test.txt").write_text("pytest==9.0\n")
     return Checkout(tmp_path)
 
 
@@ -115,7 +115,7 @@ def test_the_first_start_makes_the_environment_from_the_locks_and_says_so_in_one
     environment.make_ready(checkout, "run")
     made, locked, project = no_commands
     assert made[1:] == ["-m", "venv", "--clear", str(checkout.venv)]
-    assert locked[-2:] == ["--requirement", str(checkout.root / "locks" / "run.txt")]
+    assert locked[-2:] == ["--requirement", str(checkout.root / ".ci" / "locks" / "run.txt")]
     assert project[-2:] == ["--editable", str(checkout.root)]
     assert {"--no-deps", "--no-build-isolation"} <= set(project)
     said = capsys.readouterr().out.splitlines()
@@ -129,7 +129,7 @@ def test_an_environment_that_somebody_else_made_is_filled_and_not_made_again(che
     environment.make_ready(checkout, "test")
     assert not any("--clear" in command for command in no_commands)
     assert [word for command in no_commands for word in command if word.endswith(".txt")] == [
-        str(checkout.root / "locks" / "run.txt"), str(checkout.root / "locks" / "test.txt")]
+        str(checkout.root / ".ci" / "locks" / "run.txt"), str(checkout.root / ".ci" / "locks" / "test.txt")]
     assert "3 locked packages" in capsys.readouterr().out
     assert checkout.is_ready("test")
     assert checkout.is_ready("run"), "the test environment holds what the other command needs"
@@ -137,7 +137,7 @@ def test_an_environment_that_somebody_else_made_is_filled_and_not_made_again(che
 
 @pytest.mark.parametrize(
     ("changed", "stale"),
-    [("locks/run.txt", {"run", "test"}), ("locks/test.txt", {"test"}), ("pyproject.toml", {"run", "test"})],
+    [(".ci/locks/run.txt", {"run", "test"}), (".ci/locks/test.txt", {"test"}), ("pyproject.toml", {"run", "test"})],
 )
 def test_a_changed_lock_makes_stale_what_was_installed_from_it(checkout, changed, stale):
     fill(checkout, "run", "test")
@@ -148,7 +148,7 @@ def test_a_changed_lock_makes_stale_what_was_installed_from_it(checkout, changed
 
 def test_line_endings_of_a_checkout_are_no_change(checkout):
     fill(checkout, "run")
-    lock = checkout.root / "locks" / "run.txt"
+    lock = checkout.root / ".ci" / "locks" / "run.txt"
     lock.write_bytes(lock.read_bytes().replace(b"\n", b"\r\n"))
     assert checkout.is_ready("run")
 
@@ -157,14 +157,14 @@ def test_a_moved_checkout_is_installed_again(checkout, tmp_path):
     fill(checkout, "run")
     moved = tmp_path / "elsewhere"
     moved.mkdir()
-    for name in (".venv", "locks", "pyproject.toml"):
+    for name in (".venv", ".ci", "pyproject.toml"):
         (tmp_path / name).rename(moved / name)
     assert not Checkout(moved).is_ready("run")
 
 
 def test_an_installation_that_fails_leaves_no_stamp_and_tells_the_reason(checkout, monkeypatch):
     fill(checkout, "run")
-    lock = checkout.root / "locks" / "run.txt"
+    lock = checkout.root / ".ci" / "locks" / "run.txt"
     lock.write_text("nowhere==1.0\n")
 
     def fail(command):

@@ -17,7 +17,7 @@ PROJECT = tomllib.loads((ROOT / "pyproject.toml").read_text("utf-8"))
 
 def locked(name: str) -> dict[str, Requirement]:
     """The packages of one lock file by name."""
-    lines = (ROOT / "locks" / name).read_text("ascii").splitlines()
+    lines = (ROOT / ".ci" / "locks" / name).read_text("ascii").splitlines()
     requirements = [Requirement(line) for line in lines if not line.startswith("#")]
     return {canonicalize_name(requirement.name): requirement for requirement in requirements}
 
@@ -27,7 +27,7 @@ def test_every_locked_package_has_one_exact_version_and_no_address(name):
     for requirement in locked(name).values():
         assert re.fullmatch(r"==[^*,]+", str(requirement.specifier)), requirement
         assert requirement.url is None
-    assert "://" not in (ROOT / "locks" / name).read_text("ascii").lower()
+    assert "://" not in (ROOT / ".ci" / "locks" / name).read_text("ascii").lower()
 
 
 @pytest.mark.parametrize(("declared", "files"), [("run", ["run.txt"]), ("test", ["run.txt", "test.txt"])])

@@ -1,10 +1,10 @@
-"""Write locks/run.txt and locks/test.txt: the exact version of every package that both commands install.
+"""Write .ci/locks/run.txt and .ci/locks/test.txt: the exact version of every package that both commands install.
 
 Run it by the Python of an environment that holds the versions wanted, for example a fresh one:
 
     python3 -m venv fresh
     fresh/bin/python -m pip install ".[test]" setuptools colorama
-    fresh/bin/python locks/refresh.py
+    fresh/bin/python .ci/locks/refresh.py
 
 The requirements of each installed package are followed for Linux, macOS and Windows and for each
 Python in PYTHONS, so one file serves them all: a package that only some of them need carries a marker.
@@ -31,7 +31,7 @@ SYSTEMS = {
     "win32": {"os_name": "nt", "platform_system": "Windows", "platform_machine": "AMD64"},
 }
 BUILD_BACKEND = "setuptools"  # the project itself is installed without asking the network for its builder
-HEADING = "# Made by locks/refresh.py; see there. {what}\n"
+HEADING = "# Made by .ci/locks/refresh.py; see there. {what}\n"
 
 
 def targets() -> dict[tuple[str, str], dict[str, str]]:
@@ -97,7 +97,7 @@ def locked_lines(requirements: list[str], without: set[str]) -> list[str]:
 
 
 def main() -> int:
-    project = tomllib.loads((HERE.parent / "pyproject.toml").read_text("utf-8"))["project"]
+    project = tomllib.loads((HERE.parent.parent / "pyproject.toml").read_text("utf-8"))["project"]
     run = [*project["dependencies"], BUILD_BACKEND]
     test = [*run, *project["optional-dependencies"]["test"]]
     try:
