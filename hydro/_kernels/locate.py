@@ -26,11 +26,18 @@ def _cells(xy, triangles, x0, y0, size, nx, ny, start, items, filling):
 
 
 def seed_grid(xy, triangles):
-    """Grid (geometry, cell starts, triangles in each cell) with about two triangles a cell."""
+    """Grid (geometry, cell starts, triangles in each cell), about two triangles to a cell that holds any.
+
+    A river fills little of its bounding box: the cell follows the triangles' own area, as far as the grid
+    keeps to twenty cells a triangle.
+    """
     low, high = xy.min(axis=0), xy.max(axis=0)
     span = np.maximum(high - low, 1e-300)
-    size = float(np.sqrt(span[0] * span[1] / max(len(triangles) / 2, 1)))
-    size = max(size, float(span.max()) / 8192)
+    p = xy[triangles]
+    one, two = p[:, 1] - p[:, 0], p[:, 2] - p[:, 0]
+    area = float(np.abs(one[:, 0] * two[:, 1] - one[:, 1] * two[:, 0]).sum()) / 2
+    size = float(np.sqrt(2 * area / max(len(triangles), 1)))
+    size = max(size, float(np.sqrt(span[0] * span[1] / (20 * len(triangles) + 100))))
     nx, ny = int(span[0] / size) + 1, int(span[1] / size) + 1
     start = np.zeros(nx * ny + 1, np.int64)
     _cells(xy, triangles, low[0], low[1], size, nx, ny, start, np.empty(0, np.int32), False)
