@@ -9,6 +9,7 @@ from __future__ import annotations
 from collections.abc import Iterable
 from dataclasses import dataclass, replace
 from functools import cached_property
+from typing import Any
 
 import numpy as np
 
@@ -148,9 +149,9 @@ def face_bed_and_node_bed(mesh: Mesh, node_bed: np.ndarray | None, face_bed: np.
 
     Node values give faces their area mean; face values give nodes by the linear-exact rule.
     """
-    if node_bed is None and face_bed is None:
-        raise ValueError("the run has no bed level; map a variable to bed in the review, or export it.")
     if face_bed is None:
+        if node_bed is None:
+            raise ValueError("the run has no bed level; map a variable to bed in the review, or export it.")
         face_bed = mesh.triangle_to_face(of_corners(mesh, node_bed))
     if node_bed is None:
         node_bed = to_nodes(mesh, face_bed[:, None], np.ones(mesh.n_faces, bool))[:, 0]
@@ -176,9 +177,7 @@ def make_frame(
     """
     if kind not in KINDS:
         raise ValueError(f"kind of frame is {kind!r}; say one of {', '.join(KINDS)}.")
-    if raw.unit_discharge is None and raw.edge_discharge is None:
-        raise ValueError("the frame has no velocity, unit discharge or edge discharge; export one of them.")
-    if raw.stored_on == "node":
+    if raw.stored_on == "node" and raw.unit_discharge is not None:
         depth = np.maximum(np.nan_to_num(raw.depth), 0.0)
         q = np.nan_to_num(raw.unit_discharge)
         face_depth = mesh.triangle_to_face(of_corners(mesh, depth))
@@ -187,11 +186,13 @@ def make_frame(
         face_depth = np.maximum(np.nan_to_num(raw.depth), 0.0)
         face_q = _face_flow(mesh, raw)
         depth, q = _nodes_from_faces(mesh, node_bed, face_bed, face_depth, face_q, wet_depth_m)
-    arrays = [node_bed, depth, q, face_bed, face_depth, face_q, raw.edge_discharge]
-    for a in arrays:
+    for a in (node_bed, depth, q, face_bed, face_depth, face_q, raw.edge_discharge):
         if a is not None:
             a.setflags(write=False)
-    return Frame(mesh, index, seconds, time, kind, interval_s, raw.stored_on, *arrays, wet_depth_m)
+    return Frame(
+        mesh, index, seconds, time, kind, interval_s, raw.stored_on, node_bed, depth, q, face_bed, face_depth, face_q,
+        raw.edge_discharge, wet_depth_m,
+    )
 
 
 def mean_frame(frames: Iterable[tuple[Frame, float]]) -> Frame:
@@ -207,7 +208,7 @@ def mean_frame(frames: Iterable[tuple[Frame, float]]) -> Frame:
     ValueError
         No frames, a maximum among them, or no positive weight.
     """
-    sums: list[np.ndarray] | None = None
+    sums: list[np.ndarray | None] | None = None
     total, first, last = 0.0, None, None
     for frame, weight in frames:
         if frame.kind == "maximum":
@@ -221,7 +222,7 @@ def mean_frame(frames: Iterable[tuple[Frame, float]]) -> Frame:
         total, last = total + weight, frame
     if sums is None or first is None or last is None or not total > 0:
         raise ValueError("there is no frame to average in this window; widen it.")
-    means = {n: (None if s is None else s / total) for n, s in zip(_MEAN_OF, sums, strict=True)}
+    means: dict[str, Any] = {n: (None if s is None else s / total) for n, s in zip(_MEAN_OF, sums, strict=True)}
     return replace(first, kind="mean", interval_s=total, seconds=last.seconds, time=last.time, index=last.index, **means)
 
 
@@ -236,6 +237,8 @@ def _velocity(depth: np.ndarray, q: np.ndarray, wet: float) -> np.ndarray:
 def _face_flow(mesh: Mesh, raw: RawFrame) -> np.ndarray:
     if raw.unit_discharge is not None:
         return np.nan_to_num(raw.unit_discharge)
+    if raw.edge_discharge is None:
+        raise ValueError("the frame has no velocity, unit discharge or edge discharge; export one of them.")
     return flow_from_edges(mesh, raw.edge_discharge)
 
 

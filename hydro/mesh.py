@@ -123,13 +123,14 @@ class Mesh:
         return float(low[0]), float(low[1]), float(high[0]), float(high[1])
 
     @cached_property
-    def _locator(self) -> tuple[np.ndarray, ...]:
+    def _locator(self) -> tuple[np.ndarray, np.ndarray, np.ndarray]:
         return locate.seed_grid(self.node_xy, self.triangles)
 
     def find(self, xy: np.ndarray) -> np.ndarray:
         """Triangle (k,) int32 that holds each local point (k, 2); -1 outside the mesh."""
         points = np.ascontiguousarray(np.atleast_2d(xy), dtype=np.float64)
-        return locate.find_points(self.node_xy, self.triangles, self.neighbours, *self._locator, points)
+        grid, start, items = self._locator
+        return locate.find_points(self.node_xy, self.triangles, self.neighbours, grid, start, items, points)
 
     def to_local(self, xy: np.ndarray) -> np.ndarray:
         """World coordinates (..., 2) to local ones, m."""
@@ -210,12 +211,14 @@ def build_mesh(
     neighbours = topology.triangle_neighbours(triangles, start, order)
     triangle_face = np.repeat(np.arange(len(faces), dtype=np.int32), np.diff(first))
     triangle_edges = _triangle_edges(triangles, triangle_face, faces, count, side_edge)
-    arrays = (xy, faces, count, edges, edge_faces, triangles, triangle_face, first, neighbours, triangle_edges)
-    arrays = tuple(_frozen(a) for a in arrays)
-    return Mesh(
-        arrays[0], (float(place[0]), float(place[1])), *arrays[1:],
-        _frozen(file_node), _frozen(file_face), _frozen(file_edge), turned,
+    made = Mesh(
+        xy, (float(place[0]), float(place[1])), faces, count, edges, edge_faces, triangles, triangle_face, first, neighbours,
+        triangle_edges, file_node, file_face, file_edge, turned,
     )
+    for array in vars(made).values():
+        if isinstance(array, np.ndarray):
+            _frozen(array)
+    return made
 
 
 def _frozen(array: np.ndarray) -> np.ndarray:

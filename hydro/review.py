@@ -294,6 +294,15 @@ def open_any(path: Path | str, *, settings: Settings | None = None) -> tuple[Rev
     return None, open_run([given], settings=settings)
 
 
+def open_results(path: Path | str, *, settings: Settings | None = None) -> tuple[Review | None, Run]:
+    """Results that a command was given, with the review that lists them; a review folder itself is refused."""
+    review, run = open_any(path, settings=settings)
+    if run is None:
+        files = ", ".join(f for e in review.runs for f in e.files) if review else ""
+        raise ValueError(f"{path} is a review; give one of its results files: {files}.")
+    return review, run
+
+
 def new_review(folder: Path | str, title: str) -> Review:
     """Make an empty review folder; an existing one is refused."""
     folder = Path(folder)

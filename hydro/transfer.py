@@ -53,8 +53,8 @@ class Transfer:
     def _at(self) -> tuple[np.ndarray, np.ndarray]:
         """Source triangle of each target node (-1: none) and its corner weights."""
         xy, tri, b = self._source_xy, self.source.triangles, self.source
-        grid = locate.seed_grid(xy, tri)
-        t = locate.find_points(xy, tri, b.neighbours, *grid, np.ascontiguousarray(self.target.node_xy))
+        grid, start, items = locate.seed_grid(xy, tri)
+        t = locate.find_points(xy, tri, b.neighbours, grid, start, items, np.ascontiguousarray(self.target.node_xy))
         return t, barycentric(xy, tri[np.maximum(t, 0)], self.target.node_xy)
 
     def interpolate(self, node_values: np.ndarray) -> np.ndarray:

@@ -21,7 +21,8 @@ def run(args: argparse.Namespace) -> int:
     from hydro.arrival.ask import request_sheet, write_sheet
     from hydro.review import write_whole
 
-    reports, last = [], (None, None, [])
+    reports: list = []
+    last: tuple = (None, None, [])
     for name, opened, reach in _runs(args.file):
         print(f"leewater: reading {name}", file=sys.stderr)
         found = audit(opened, reach)
@@ -46,10 +47,13 @@ def _runs(paths):
         review, opened = open_any(path)
         if opened is not None:
             yield opened.name, opened, review.reach_for(opened) if review else Reach(opened.mesh.origin)
-            continue
-        for entry in review.runs:
-            one = review.open(entry.id)
-            yield entry.label, one, review.reach_for(one)
+        for entry in review.runs if review is not None and opened is None else ():
+            yield entry.label, *_of(review, entry)
+
+
+def _of(review, entry):
+    run = review.open(entry.id)
+    return run, review.reach_for(run)
 
 
 def _report(name, opened, found):

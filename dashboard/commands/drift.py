@@ -52,7 +52,7 @@ def _entries(review, wanted):
 
 
 def _progress(label: str):
-    last = {}
+    last: dict[str, int] = {}
 
     def say(what: str, share: float) -> None:
         tenth = int(10 * share)

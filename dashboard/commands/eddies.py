@@ -27,12 +27,9 @@ def arguments(parser: argparse.ArgumentParser) -> None:
 
 def run(args: argparse.Namespace) -> int:
     from hydro.ledger import FrameReader, reach_of
-    from hydro.review import open_any
+    from hydro.review import open_results
 
-    review, run = open_any(args.file)
-    if run is None:
-        files = [f for entry in review.runs for f in entry.files]
-        raise ValueError(f"{args.file} is a review; give one of its results files: {', '.join(files) or 'it lists none yet'}.")
+    review, run = open_results(args.file)
     reach = reach_of(review, run)
     if args.all:
         return _all(args, run, reach)

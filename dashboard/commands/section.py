@@ -27,14 +27,12 @@ def arguments(parser: argparse.ArgumentParser) -> None:
 
 def run(args: argparse.Namespace) -> int:
     from hydro.ledger.report import source_of
-    from hydro.review import open_any, write_whole
+    from hydro.review import open_results, write_whole
     from hydro.section.table import section_table
 
     from . import frame_index
 
-    review, run_ = open_any(args.file)
-    if run_ is None:
-        raise ValueError(f"{args.file} is a review; give one of its results files: {', '.join(f for e in review.runs for f in e.files)}.")
+    review, run_ = open_results(args.file)
     lines = _lines(args.line, review, run_)
     if args.profile:
         return _profiles(args, run_, lines)
@@ -83,7 +81,7 @@ def _psi_of(run_, review):
     from hydro.ledger.frames import depth_rate, plan_for
     from hydro.streamfunction import stream_function
 
-    plans = []
+    plans: list = []
 
     def psi(index):
         frame = run_.frame(index)

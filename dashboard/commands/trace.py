@@ -29,12 +29,10 @@ def arguments(parser: argparse.ArgumentParser) -> None:
 
 def run(args: argparse.Namespace) -> int:
     from hydro.ledger.report import source_of
-    from hydro.review import open_any, write_whole
+    from hydro.review import open_results, write_whole
     from hydro.tracks.export import write_tracks
 
-    review, opened = open_any(args.file)
-    if opened is None:
-        raise ValueError(f"{args.file} is a review; give one of its results files: {', '.join(f for e in review.runs for f in e.files)}.")
+    review, opened = open_results(args.file)
     reach = review.reach_for(opened) if review else None
     traced = _traced(args, opened, reach)
     if args.out:

@@ -80,7 +80,7 @@ class Material:
     def where(self, at: np.ndarray) -> str:
         """The place in words: chainage and side, or world coordinates."""
         p = self.place(at)
-        if p.chainage_m is None:
+        if p.chainage_m is None or p.offset_m is None:
             return f"{p.x:.1f} E, {p.y:.1f} N"
         side = "left" if p.offset_m >= 0 else "right"
         return f"chainage {p.chainage_m:.0f} m, {abs(p.offset_m):.0f} m {side} of the centre line"

@@ -6,7 +6,7 @@ import numpy as np
 
 from ..figure import Figure
 from ..ledger.frames import depth_rate
-from ..reach import automatic_sections
+from ..reach import CentreLine, automatic_sections
 from ..section import cut, section_figures
 from .finding import Finding, Material, point
 
@@ -92,7 +92,7 @@ def _sections(m: Material, index: int) -> list[Finding]:
     rows = []
     face_s = centre.locate(frame.mesh.face_centroid)[0]
     inlets = [(float(centre.locate(_middle(m, b.edges))[0][0]), b.discharge_m3_s) for b in sf.open_boundaries]
-    inlets += _links(m, index)
+    inlets += _links(m, centre, index)
     for chainage, line in automatic_sections(centre, frame.mesh.node_xy, spacing):
         try:
             q = section_figures(cut(frame, line)).discharge_m3_s
@@ -102,17 +102,17 @@ def _sections(m: Material, index: int) -> list[Finding]:
         if rate is not None:
             due -= float((rate * frame.mesh.face_area)[face_s < chainage].sum())
         rows.append((chainage, q - due))
-    return _steps(m, index, np.array(rows), spacing) if len(rows) > 4 else []
+    return _steps(m, centre, index, np.array(rows), spacing) if len(rows) > 4 else []
 
 
-def _links(m: Material, index: int) -> list[tuple[float, float]]:
+def _links(m: Material, centre: CentreLine, index: int) -> list[tuple[float, float]]:
     """What declared links take out and give back: (chainage, m3/s into the model)."""
     out = []
     for link in m.reach.structures:
         if link.represented_as == "link" and link.discharge_variable in m.run.series:
             q = float(m.run.series[link.discharge_variable][index])
             ends = np.asarray(link.geometry.coords)[[0, -1], :2]
-            taken, given = m.reach.centre_line.locate(ends)[0]
+            taken, given = centre.locate(ends)[0]
             out += [(float(taken), -q), (float(given), q)]
     return out
 
@@ -122,7 +122,7 @@ def _middle(m: Material, edges: np.ndarray) -> np.ndarray:
     return mesh.node_xy[mesh.edge_nodes[edges]].mean(axis=(0, 1))[None]
 
 
-def _steps(m: Material, index: int, rows: np.ndarray, spacing: float) -> list[Finding]:
+def _steps(m: Material, centre: CentreLine, index: int, rows: np.ndarray, spacing: float) -> list[Finding]:
     """Lasting steps of the surplus along the chainage: the mean of three sections after minus three before."""
     sf = m.sf(index)
     chainage, surplus = rows.T
@@ -136,7 +136,7 @@ def _steps(m: Material, index: int, rows: np.ndarray, spacing: float) -> list[Fi
     least = max(SOURCE_SHARE * sf.through_discharge_m3_s, 6 * noise) + 0.5 * abs(sf.storage_m3_s or 0.0)
     if at is None or abs(best) <= least:
         return []
-    xy = m.reach.centre_line.at(np.array([at]))[0]
+    xy = centre.at(np.array([at]))[0]
     word = "appear" if best > 0 else "vanish"
     return [Finding(
         "undeclared source", "resolve before use",

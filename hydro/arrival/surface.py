@@ -5,7 +5,7 @@ from __future__ import annotations
 import numpy as np
 
 from ..figure import Figure
-from ..reach import automatic_sections
+from ..reach import CentreLine, automatic_sections
 from ..section import cut, section_figures
 from .finding import Finding, Material, point
 
@@ -96,19 +96,19 @@ def _heads(m: Material, index: int) -> list[Finding]:
             rows.append((chainage, f.head_m, f.mean_velocity_m_s, f.mean_depth_m))
     if len(rows) < 5:
         return []
-    rows = np.array(rows)
-    found = [_friction(m, index, rows)]
+    table = np.array(rows, float)
+    found = [_friction(m, index, table)]
     if frame.kind == "mean" or m.run.n_frames == 1:
-        found.append(_rise(m, index, rows))
+        found.append(_rise(m, centre, index, table))
     return [f for f in found if f is not None]
 
 
-def _rise(m: Material, index: int, rows: np.ndarray) -> Finding | None:
+def _rise(m: Material, centre: CentreLine, index: int, rows: np.ndarray) -> Finding | None:
     step = np.diff(rows[:, 1])
     i = int(step.argmax())
     if step[i] <= RISE_M:
         return None
-    at = m.reach.centre_line.at(np.array([(rows[i, 0] + rows[i + 1, 0]) / 2]))[0]
+    at = centre.at(np.array([(rows[i, 0] + rows[i + 1, 0]) / 2]))[0]
     return Finding(
         "head rises", "resolve before use", f"The section head rises by {step[i]:.3f} m between chainage {rows[i, 0]:.0f} and {rows[i + 1, 0]:.0f} m.",
         "In steady flow the head of the whole section falls downstream: bed, datum or depth has a step there.", "Do bed and level share one datum on both sides?",

@@ -32,7 +32,12 @@ class ZoneChange:
 
     @property
     def name(self) -> str:
-        return str((self.b or self.a).name)
+        return str(self.zone.name)
+
+    @property
+    def zone(self) -> Any:
+        """The zone as it is after the change, or was before it went."""
+        return self.a if self.b is None else self.b
 
 
 def match_zones(a: Sequence[Any], b: Sequence[Any], shift: tuple[float, float] = (0.0, 0.0)) -> list[ZoneChange]:

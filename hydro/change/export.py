@@ -15,6 +15,7 @@ from ..ledger.export import write_package
 from ..ledger.report import source_of, time_text
 from ..review import write_whole
 from ..run import Run
+from .levels import LevelChange
 from .report import Change
 
 SCHEMA = "leewater/change/1"
@@ -58,7 +59,7 @@ def write_change(folder: Path, change: Change) -> list[Path]:
     out = []
     if change.levels is not None:
         path = folder / "levels.csv"
-        write_whole(path, levels_table(change).to_csv(index=False))
+        write_whole(path, levels_table(change.levels).to_csv(index=False))
         out.append(path)
     path = folder / "change.gpkg"
     layers = {
@@ -70,9 +71,8 @@ def write_change(folder: Path, change: Change) -> list[Path]:
     return [*out, path]
 
 
-def levels_table(change: Change) -> pd.DataFrame:
+def levels_table(levels: LevelChange) -> pd.DataFrame:
     """One row a section: chainage, both levels, rise, and whether it stands outside the works."""
-    levels = change.levels
     return pd.DataFrame({
         "chainage_m": levels.chainage, "level_a_m": levels.level_a, "level_b_m": levels.level_b, "rise_m": levels.rise,
         "outside_the_works": levels.outside,
@@ -93,7 +93,7 @@ def _levels(change: Change) -> dict[str, Any] | None:
         "told_apart": bool(levels.told_apart), "noise_m": levels.noise_m,
         "inflow_difference_m3_s": levels.inflow_difference_m3_s,
         "downstream_level_difference_m": levels.downstream_level_difference_m,
-        "sections": levels_table(change).to_dict("records"),
+        "sections": levels_table(levels).to_dict("records"),
     }
 
 

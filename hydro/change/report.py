@@ -8,7 +8,7 @@ from dataclasses import dataclass
 import numpy as np
 
 from ..ledger import FrameLedger, frame_ledger
-from ..reach import Reach
+from ..reach import CentreLine, Reach
 from ..run import Run
 from ..section.crossings import Opening, bridge_openings
 from .eddies import ZoneChange, match_zones
@@ -72,8 +72,8 @@ def compare(
             inflows=(la.sf.inflow_m3_s, lb.sf.inflow_m3_s),
         )
     maps = map_change(la.frame, lb.frame)
-    zones = tuple(match_zones(la.zones.zones, lb.zones.zones, np.subtract(b.mesh.origin, a.mesh.origin)))
-    openings = tuple(_openings(f.frame, r) for f, r in ((la, reach_a), (lb, reach_b)))
+    zones = tuple(match_zones(la.zones.zones, lb.zones.zones, (b.mesh.origin[0] - a.mesh.origin[0], b.mesh.origin[1] - a.mesh.origin[1])))
+    openings = (_openings(la.frame, reach_a), _openings(lb.frame, reach_b))
     findings = _findings(levels, maps, zones, openings, above_m, reach_a)
     return Change(a, b, pair, la, lb, setup, levels, maps, zones, openings, tuple(findings))
 
@@ -106,8 +106,8 @@ def _meets(frame, line) -> bool:
 
 def _findings(levels, maps, zones, openings, above_m, reach) -> list[Finding]:
     out = []
-    if levels is not None and levels.headline >= 0:
-        out.append(_afflux(levels, above_m, reach))
+    if levels is not None and levels.headline >= 0 and reach.centre_line is not None:
+        out.append(_afflux(levels, above_m, reach.centre_line))
     for change in zones:
         out.append(_zone(change))
     for words, area in (("becomes wet", maps.newly_wet_m2), ("is no longer wet", maps.no_longer_wet_m2)):
@@ -117,10 +117,10 @@ def _findings(levels, maps, zones, openings, above_m, reach) -> list[Finding]:
     return sorted(out, key=lambda f: -(f.over_noise if f.over_noise is not None else 1.0))
 
 
-def _afflux(levels: LevelChange, above_m: float, reach: Reach) -> Finding:
+def _afflux(levels: LevelChange, above_m: float, centre_line: CentreLine) -> Finding:
     i = levels.headline
     rise, noise = float(levels.rise[i]), levels.noise_m
-    x, y = reach.centre_line.at(levels.chainage[i : i + 1])[0]
+    x, y = centre_line.at(levels.chainage[i : i + 1])[0]
     at = f"chainage {levels.chainage[i]:.0f} m"
     if not levels.told_apart:
         text = f"The greatest rise of level outside the works, {rise:+.3f} m at {at}, is not distinguishable from the noise of {noise:.3f} m."
@@ -137,7 +137,7 @@ def _afflux(levels: LevelChange, above_m: float, reach: Reach) -> Finding:
 
 
 def _zone(change: ZoneChange) -> Finding:
-    zone = change.b or change.a
+    zone = change.zone
     at = (float(zone.centre[0]), float(zone.centre[1]))
     size = f"{zone.area_m2:.0f} m2"
     if change.state in ("new", "gone"):
@@ -147,7 +147,7 @@ def _zone(change: ZoneChange) -> Finding:
         text = f"The eddy {zone.name} ({size}) changes by {change.area_change_m2:+.0f} m2, which is not distinguishable from none."
         return Finding(text, 0.5, at, ("change", "wake-detail"))
     text = f"The eddy {zone.name} has {change.state}"
-    text += f" by {abs(change.area_change_m2):.0f} m2 to {size}." if change.state != "moved" else f" by {change.moved_m:.1f} m."
+    text += f" by {abs(change.area_change_m2 or 0.0):.0f} m2 to {size}." if change.state != "moved" else f" by {change.moved_m:.1f} m."
     return Finding(text, None, at, ("change", "wake-detail"))
 
 

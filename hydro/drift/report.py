@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Callable, Mapping
 from dataclasses import asdict, dataclass
+from functools import partial
 from pathlib import Path
 from typing import Any
 
@@ -80,7 +81,7 @@ def study(
             break
         answers[name] = drift(
             run, releases, piers=piers, openings=reach.layer("openings"), boundaries=boundaries, rules=chosen, seed=seed, stop=stop,
-            progress=lambda share, name=name: progress(name, share),
+            progress=partial(progress, name),
         )
     base = answers.pop("as chosen")
     return DriftAnswer(entry, run, reach, base, answers)

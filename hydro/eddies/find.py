@@ -68,7 +68,8 @@ def find_zones(
     reach = reach or Reach(sf.frame.mesh.origin)
     if not sf.drawn:
         return ZoneSet((), notes=("storage explains more than half of the flow; psi is not drawn and holds no zones",))
-    kept, small = [], []
+    kept: list = []
+    small: list = []
     for region in closed_regions(sf):
         found = _candidate(sf, region, settings)
         (kept if isinstance(found, _Candidate) else small).append(found)
@@ -153,7 +154,7 @@ def _zone(
     depth = shape.volume_m3 / shape.area_m2
     free = shape.polygon.length - (contact.length_m if contact else 0.0)
     return Zone(
-        id="", name="", kind=kind, wall=sf.walls[wall].id if wall is not None else structure and structure.name,
+        id="", name="", kind=kind, wall=sf.walls[wall].id if wall is not None else structure.name if structure is not None else None,
         rotation=_rotation(region), centre=c.centre, chainage_m=chainage, offset_m=offset,
         area_m2=shape.area_m2, volume_m3=shape.volume_m3, length_m=extent.length_m, width_m=extent.width_m,
         mean_depth_m=depth, max_depth_m=shape.max_depth_m,
@@ -174,8 +175,8 @@ def _zone(
 
 
 def _outline(sf: StreamFunction, wall: int | None, structure: Structure | None) -> np.ndarray:
-    if wall is not None:
-        return sf.frame.mesh.node_xy[sf.walls[wall].nodes]
+    if wall is not None or structure is None:
+        return sf.frame.mesh.node_xy[sf.walls[wall or 0].nodes]
     return shapely.get_coordinates(structure.geometry)
 
 

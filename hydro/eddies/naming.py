@@ -83,11 +83,14 @@ def named(sf: StreamFunction, reach: Reach, zones: list[Zone]) -> tuple[Zone, ..
     def place(zone: Zone) -> tuple[float, float]:
         # To the millimetre, left first, so that round-off cannot change the order of twins.
         x, y = zone.centre
-        along, left = (x, y) if zone.chainage_m is None else (zone.chainage_m, zone.offset_m)
+        along, left = x, y
+        if zone.chainage_m is not None and zone.offset_m is not None:
+            along, left = zone.chainage_m, zone.offset_m
         return round(float(along), 3), -round(float(left), 3)
 
     ordered = sorted(zones, key=place)
-    made, used = [], {}
+    made: list[Zone] = []
+    used: dict[str, int] = {}
     for k, zone in enumerate(ordered):
         name = _name(sf, reach, zone)
         used[name] = used.get(name, 0) + 1

@@ -9,7 +9,7 @@ from dataclasses import dataclass
 from pathlib import Path
 
 from ..reach import Reach
-from ..review import Review, open_any
+from ..review import Review, open_results
 from ..run import Run
 from ..settings import Settings
 from .frames import FrameLedger, FrameReader
@@ -85,7 +85,7 @@ def _read_one(job: Job, index: int) -> FrameSummary:
     """In a worker: the run is opened once and kept."""
     key = (str(job.path), job.settings.digest() if job.settings else "", job.sensitivity)
     if key not in _readers:
-        review, run = open_any(job.path)
+        review, run = open_results(job.path)
         reader = FrameReader(run, reach=reach_of(review, run), settings=job.settings, sensitivity=job.sensitivity)
         _readers[key] = run, reader
     run, reader = _readers[key]

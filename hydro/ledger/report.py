@@ -39,10 +39,11 @@ def ledger_json(
     stopped_after : frames done, where the work was stopped before its end
     """
     entries = [f.values if isinstance(f, FrameSummary) else frame_json(run, f) for f in frames]
-    for entry in entries if instants else ():
+    known = instants or {}
+    for entry in entries:
         for zone in entry["zones"]:
-            if zone["id"] in instants:
-                zone["instants"] = _plain(asdict(instants[zone["id"]]))
+            if zone["id"] in known:
+                zone["instants"] = _plain(asdict(known[zone["id"]]))
     whole: dict[str, Any] = {
         "schema": SCHEMA,
         "source": source_of(run),

@@ -4,13 +4,14 @@ from __future__ import annotations
 
 import shutil
 from pathlib import Path
+from typing import Any
 
 import typst
 
 from .model import Record
 
 TEMPLATES = Path(__file__).parent / "templates"
-STANDARDS = ["ua-1", "a-2a"]
+STANDARDS: list[Any] = ["ua-1", "a-2a"]
 
 
 def template(name: str, review_folder: Path | None = None) -> Path:

@@ -57,7 +57,7 @@ def sections(readings: Sequence[Reading]) -> Part:
     tables = []
     for r in readings:
         at = source(r.run, r.ledger.frame)
-        rows = []
+        rows: list[tuple[str | Figure, ...]] = []
         for line in r.reach.layer("sections"):
             section = cut(r.ledger.frame, np.asarray(line.geometry.coords)[:, :2], centre_line=r.reach.centre_line)
             found = asdict(section_figures(section, sf=r.ledger.sf, settings=r.run.settings))
@@ -141,7 +141,7 @@ def drift_part(answers: Sequence[DriftAnswer]) -> Part:
         def share(name: str, s) -> Figure:
             return Figure(name, 100 * s.value, "%", 100 * s.low, 100 * s.high, cautions=DRIFT_CAUTIONS)
 
-        rows = [(p.name, share("touch", base.touches(i)), share("lodge", base.lodges(i)), "") for i, p in enumerate(base.piers)]
+        rows: list[tuple[str | Figure, ...]] = [(p.name, share("touch", base.touches(i)), share("lodge", base.lodges(i)), "") for i, p in enumerate(base.piers)]
         rows += [(o.name, "", "", share("pass", base.passes(i))) for i, o in enumerate(base.openings)]
         tables.append(Table(f"drift-{one.entry.id}", f"Of {len(base.state):,} modelled logs, {label}", ("Where", "Touch, %", "Lodge, %", "Pass, %"), tuple(rows)))
     return Part("drift", "Floating wood", tuple(says), tuple(tables), cautions=DRIFT_CAUTIONS)

@@ -45,9 +45,9 @@ class System:
         """The unknowns (size,) for a right-hand side (size,)."""
         if not self.size:
             return np.zeros(0)
-        if self._factor is None:
-            self._factor = _factor(self.matrix, self.tolerance)
-        return self._factor(right)
+        factor = self._factor or _factor(self.matrix, self.tolerance)
+        self._factor = factor
+        return factor(right)
 
     def load(self, field: np.ndarray) -> np.ndarray:
         """Right-hand side of a field (m, 2): sum of area * grad N . field."""

@@ -197,7 +197,9 @@ class FramePair:
     """The two frames round a time; a frame is read once while it is needed."""
 
     def __init__(self, run: Run) -> None:
-        self.run, self._frames, self._held = run, {}, {}
+        self.run = run
+        self._frames: dict[int, Frame] = {}
+        self._held: dict[int, np.ndarray] = {}
 
     def stops(self, t0: float, t1: float) -> list[float]:
         """Times of frames strictly between, then t1: no step goes over a frame."""
