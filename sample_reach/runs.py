@@ -23,10 +23,10 @@ from .solver import Drive, Model, Topology, carry, cell_flow, topology
 
 ALPHA = 0.15  # eddy viscosity nu = ALPHA h u*
 LOW, BANKFULL, FLOOD_START = (6.0, 0.6), (104.0, 8.0), (38.0, 3.5)  # river and tributary, m3/s
-# Short and gate-like: river and tributary against seconds. The peak stands long enough for six shedding periods.
+# Short and gate-like: seconds, river, tributary. The pond above the weir spreads it: the bridge has its peak at 420 s.
 FLOOD = np.array([[0, 38, 3.5], [30, 38, 3.5], [170, 124, 9.5], [300, 124, 9.5], [450, 62, 6.0], [600, 38, 3.5]], float)
 FLOOD_FRAMES = np.arange(0.0, 600.1, 10.0)
-BURST_FRAMES = np.arange(470.0, 555.01, 1.0)  # the discharge at the bridge peaks there: pond and reach have filled by then
+BURST_FRAMES = np.arange(370.0, 460.01, 1.0)  # the discharge at the bridge peaks at 420 s, when the pond has filled
 SETTLE, MEAN = {"low": 320.0, "bankfull": 240.0}, {"low": 120.0, "bankfull": 90.0}
 # The fine weir passes low flow at a slightly lower level than the coarse one; taken off the pond at the carry,
 # this saves half an hour of settling.
