@@ -70,12 +70,7 @@ def summary_of(run: Run, entry: FrameLedger) -> FrameSummary:
 
 def reach_of(review: Review | None, run: Run) -> Reach | None:
     """The review's lines for the design that a run belongs to."""
-    if review is None:
-        return None
-    files = {p.resolve() for p in run.files}
-    designs = [e.design for e in review.runs if any((review.folder / f).resolve() in files for f in e.files)]
-    reach = review.reach
-    return Reach(reach.origin, reach.centre_line, reach.structures_of(next(iter(designs), None) or None), reach.layers)
+    return review.reach_for(run) if review is not None else None
 
 
 _readers: dict[tuple, tuple[Run, FrameReader]] = {}
