@@ -321,6 +321,20 @@ def traced(parent, last):
 
 
 @njit(cache=True, nogil=True)
+def triangles_between(path, net):
+    """The triangle (k - 1,) that each link of a path (k,) of points lies in, as the search took it."""
+    n_nodes = net.node_start.shape[0] - 1
+    most = _widest(net)
+    to, within = np.empty(most, np.int32), np.empty(most, np.int32)
+    out = np.full(path.shape[0] - 1, -1, np.int32)
+    for i in range(path.shape[0] - 1):
+        for c in range(links_of(path[i], net, n_nodes, to, within)):
+            if to[c] == path[i + 1]:
+                out[i] = within[c]
+    return out
+
+
+@njit(cache=True, nogil=True)
 def walked(points, within, resting, drops, swimmer):
     """Every link of a route: (k - 1, 7) fatigue, seconds, speed through the water, ground speed at its middle, and what
     bars it (speed excess, depth deficit, drop).

@@ -34,6 +34,8 @@ class Leg:
         Swimming time.
     path : (k, 2) float64
         Local m.
+    within : (k - 1,) int32
+        The mesh's triangle that each link of the path lies in.
     """
 
     from_area: Area
@@ -41,6 +43,7 @@ class Leg:
     fatigue: float
     seconds: float
     path: np.ndarray
+    within: np.ndarray
 
 
 @dataclass(frozen=True, eq=False)
@@ -115,8 +118,9 @@ class Search:
     def _only_leg(self, areas: Areas, found: kernel.Chain) -> Leg:
         """The leg from start to goal where there is no other area."""
         goal = Areas.GOAL
-        path = self.water.points[found.paths[found.path_start[goal] : found.path_end[goal]][::-1], :2]
-        return Leg(areas.items[0], areas.items[1], float(found.fatigue[goal]), float(found.seconds[goal]), path)
+        points = np.ascontiguousarray(found.paths[found.path_start[goal] : found.path_end[goal]][::-1])
+        cost = float(found.fatigue[goal]), float(found.seconds[goal])
+        return Leg(areas.items[0], areas.items[1], *cost, *_path(self.water, points))
 
     def _quickest(self, areas: Areas, label: np.ndarray, bound: float, relaxed: bool) -> tuple[Leg, ...]:
         """Dijkstra over areas by time; a leg over the limit of 1 is taken only where nothing else leads on."""
@@ -142,8 +146,8 @@ class Search:
                 when = arrival[at] + seconds + _OVER * max(0.0, fatigue - 1.0)
                 if other not in done and when < arrival.get(other, math.inf):
                     arrival[other], sources[other] = when, entry[other : other + 1]
-                    path = points[kernel.traced(parent, entry[other]), :2]
-                    into[other] = at, Leg(areas.items[at], areas.items[other], float(fatigue), float(seconds), path)
+                    path = _path(self.water, kernel.traced(parent, entry[other]))
+                    into[other] = at, Leg(areas.items[at], areas.items[other], float(fatigue), float(seconds), *path)
                     heapq.heappush(queue, (when, other))
         legs = []
         at = Areas.GOAL
@@ -186,8 +190,7 @@ class Search:
     def _leg_again(self, areas: Areas, leg: Leg, begin: np.ndarray | None, share: float, relaxed: bool) -> Leg | None:
         """A leg on a denser net in a band round it, from ``begin`` or anywhere in the start; None if it fails."""
         mesh = self.water.frame.mesh
-        under = mesh.find((leg.path[1:] + leg.path[:-1]) / 2)
-        routes = make_routes(mesh, _BAND_POINTS, around(mesh, under[under >= 0], _BAND_RINGS if share == 0.5 else 1))
+        routes = make_routes(mesh, _BAND_POINTS, around(mesh, leg.within, _BAND_RINGS if share == 0.5 else 1))
         if share < 0.5:
             routes = gathered(routes, leg.path, share)
         water = make_water(routes, self.water.frame, self.drops, self.water.flow)
@@ -204,8 +207,14 @@ class Search:
         )
         if entry[target] < 0:
             return None
-        path = water.points[kernel.traced(parent, entry[target]), :2]
-        return Leg(leg.from_area, leg.to_area, float(cost[entry[target], 0]), float(cost[entry[target], 1]), path)
+        fatigue, seconds = cost[entry[target]]
+        path = _path(water, kernel.traced(parent, entry[target]))
+        return Leg(leg.from_area, leg.to_area, float(fatigue), float(seconds), *path)
+
+
+def _path(water: Water, points: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
+    """Coordinates of points, and the mesh's triangles that the links between them lie in."""
+    return water.points[points, :2], water.routes.triangles[kernel.triangles_between(points, water.routes.net)]
 
 
 def prepare(

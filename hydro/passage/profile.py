@@ -7,6 +7,7 @@ from dataclasses import dataclass
 import numpy as np
 
 from .._kernels import route as kernel
+from .._kernels.swim import LEAST_DEPTH
 from .legs import LegChain, Search
 from .water import barycentric
 
@@ -114,7 +115,7 @@ def profile(search: Search, chain: LegChain) -> Profile:
 def _leg_profile(search: Search, leg, index: int) -> dict[str, np.ndarray]:
     frame, mesh = search.water.frame, search.water.frame.mesh
     path = leg.path
-    within = mesh.find((path[1:] + path[:-1]) / 2)
+    within = leg.within
     own = search.areas.items.index(leg.from_area)
     resting = np.concatenate([[True], search.areas.of_triangle[within] == own])
     at = np.concatenate([within[:1], within])
@@ -124,6 +125,7 @@ def _leg_profile(search: Search, leg, index: int) -> dict[str, np.ndarray]:
     u = np.where(h[:, None] > _THIN_M, q / np.maximum(h, _THIN_M)[:, None], 0.0)
     points = np.column_stack([path, h, u])
     swimmer = search.fish.swimmer(search.settings)
+    swimmer[LEAST_DEPTH] *= 1 - 1e-9  # a route along the very limit is not barred by round-off
     links = kernel.walked(points, within, resting[1:], search.drops.barred, swimmer)
     links = np.vstack([np.zeros((1, 7)), links])
     links[0, 2:4] = links[min(1, len(links) - 1), 2:4]
