@@ -110,14 +110,12 @@ class Reading:
         return self.results.get(("run", run_id), lambda: self._opened_run(matter, run_id), label="Reading the run's mesh.")
 
     def reach(self, run_id: str) -> Reach:
-        """The reach with the structures of the run's design; its centre line is proposed where there is none."""
+        """The reach as it is in the run's design; its centre line is proposed where there is none."""
         matter, run = self.matter(), self.run(run_id)
 
         def make() -> Reach:
-            reach = matter.reach
-            structures = reach.structures_of(matter.design(run_id))
-            centre = reach.centre_line or self._proposed(run)
-            return Reach(run.mesh.origin, centre, structures, reach.layers)
+            reach = matter.reach.of_design(matter.design(run_id))
+            return reach if reach.centre_line else replace(reach, origin=run.mesh.origin, centre_line=self._proposed(run))
 
         return self.results.get(("reach", run_id), make, label="Placing the review's lines.")
 
