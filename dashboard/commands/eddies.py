@@ -29,6 +29,8 @@ def run(args: argparse.Namespace) -> int:
     from hydro.ledger import FrameReader, reach_of
     from hydro.review import open_results
 
+    from . import frame_index
+
     review, run = open_results(args.file)
     reach = reach_of(review, run)
     if args.all:
@@ -36,7 +38,7 @@ def run(args: argparse.Namespace) -> int:
     reader = FrameReader(run, reach=reach)
     if args.mean:
         return _mean(args, reader)
-    entry = reader.frame(_index(run, args))
+    entry = reader.frame(frame_index(run, args))
     _write(args, run, [entry])
     _frame_table(entry, args)
     return 0
@@ -101,25 +103,6 @@ def _progress(done: int, whole: int) -> None:
     if sys.stderr.isatty() or done in (0, whole) or done % max(1, whole // 10) == 0:
         end = "\n" if done == whole or not sys.stderr.isatty() else "\r"
         print(f"leewater: frame {done} of {whole}", end=end, file=sys.stderr, flush=True)
-
-
-def _index(run, args: argparse.Namespace) -> int:
-    import numpy as np
-
-    if args.time is None:
-        return -1 if args.frame is None else args.frame
-    try:
-        return run.nearest(float(args.time))
-    except ValueError:
-        pass
-    if run.times.instants is None:
-        raise ValueError(f"{args.time!r} is no number of seconds, and this run has no dates; give seconds from its start.")
-    try:
-        asked = np.datetime64(args.time.removesuffix("Z"))
-    except ValueError:
-        raise ValueError(f"{args.time!r} is no time; write seconds, or a date such as 2031-03-02T06:00:00.") from None
-    gap = (run.times.instants - asked) / np.timedelta64(1, "s")
-    return int(np.abs(gap).argmin())
 
 
 def _write(args: argparse.Namespace, run, frames, **more) -> None:

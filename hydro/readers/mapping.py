@@ -13,7 +13,7 @@ quantity. What it names is taken before anything that the file's metadata sugges
     roughness = {variable = "n", unit = "s m-1/3"}
     time = {variable = "t", unit = "s"}
     datum = "Invented Datum 2031"                        # name of the vertical datum
-    crs = "EPSG:2193"                                    # where the file names none
+    crs = "EPSG:CODE"                                    # or WKT, where the file names none
 
 ``unit`` is needed where the file gives none, and overrules the one it gives. ``positive`` of edge
 discharge is "left to right" of the edge, walking from its first node to its second (the default), or
