@@ -19,6 +19,7 @@ from .raster import View
 from .reading import STORY
 from .results import Working
 from .screen import Screen
+from .stops import Stop, keep, stops_of
 from .studies import QUERIES, SHARES, TRIED, Studies
 from .views.figure import MapFigure
 from .wire import Wire
@@ -52,6 +53,7 @@ class Page:
         self.sizes = Sizes()
         self.own_section = start.section is not None
         self.push, self.sent = False, 0
+        self.stop: int | None = None  # the saved view that is shown
         self.map = MapFigure((0.0, 0.0, 100.0, 54.0), moved=self._moved)
         self.wire = Wire(self.hear)
         self.screen = Screen()
@@ -67,6 +69,10 @@ class Page:
     @property
     def question(self) -> Question:
         return QUESTIONS[self.choices.question]
+
+    @property
+    def stops(self) -> tuple[Stop, ...]:
+        return stops_of(self.reading.matter().review)
 
     def close(self) -> None:
         """The viewer has left."""
@@ -91,6 +97,7 @@ class Page:
 
     def choose(self, **changed: object) -> None:
         """Take new choices into the history."""
+        self.stop = None
         self.push = self.history.go(self.choices.with_(**changed)) and not set(changed) <= {"seconds", "view", "section"}
 
     def on_question(self, key: str) -> None:
@@ -144,6 +151,23 @@ class Page:
 
     def on_try(self, _: str) -> None:
         self.studies.try_settings(self.desk().run_id)
+
+    def on_keep(self, form: dict) -> None:
+        review = self.reading.matter().review
+        if review is None:
+            raise ValueError("stops are kept in a review; open one to keep views.")
+        self.reading.take(keep(review, self.choices, str(form.get("sentence", "")), who="the desk"))
+        self.stop = len(self.stops) - 1
+        self.reading.results.tell(QUERIES)
+
+    def on_step(self, step: str) -> None:
+        if not self.stops:
+            raise ValueError("there are no stops yet; keep a view first.")
+        at = int(step) - (1 if self.stop is None and int(step) > 0 else 0) + (self.stop or 0)
+        at = min(max(at, 0), len(self.stops) - 1)
+        self.push = self.history.go(self.stops[at].choices(self.choices))
+        self.own_section = self.choices.section is not None
+        self.stop = at
 
     def on_follow(self, query: str) -> None:
         self.choose(**{f.name: getattr(from_query(query), f.name) for f in fields(Choices)})

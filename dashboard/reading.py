@@ -104,6 +104,10 @@ class Reading:
         """The review or the file; raises what opening it raised."""
         return self.results.get("matter", lambda: _opened(self.path), label=f"Opening {self.path.name}.")
 
+    def take(self, review: Review) -> None:
+        """Go on with a review that was saved and opened anew; its runs stay as they are."""
+        self.results.put("matter", replace(self.matter(), review=review))
+
     def run(self, run_id: str) -> Run:
         matter = self.matter()
         run_id = run_id or matter.runs[0][0]

@@ -79,6 +79,11 @@ class Results:
                 raise Working(key, label)
         return self._do(job)  # the worker itself needs it: made on the spot
 
+    def put(self, key: Hashable, value: Any) -> None:
+        """Take a result that was made elsewhere in place of the one there is."""
+        with self._changed:
+            self._made[key] = (value, None, False)
+
     def have(self, key: Hashable) -> bool:
         """Whether the result is ready (or has failed)."""
         with self._changed:

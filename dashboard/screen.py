@@ -37,6 +37,7 @@ class Screen:
         self._question = ""
         self._dressed: Look | None = None
         self._hidden = 0
+        self.at_stop = False
         self._scene: Scene | None = None
 
     def awaits(self, key: Hashable) -> bool:
@@ -174,6 +175,7 @@ class Screen:
                 rows.append((key, q.word, "waiting for the results"))
         self._put("rail", frame_words.rail(rows, choices.question))
         self._put("asks", question.asks)
+        self.at_stop = False
         if self.failed:
             self._put("status", f'<span class="trouble">{frame_words.trouble(self.failed)}</span>')
         else:
@@ -187,6 +189,9 @@ class Screen:
             self._put("title", f"<b>Leewater</b><span>{text.safe(page.reading.path.name)}</span>")
             self._put("foot", "")
             return
+        if page.stop is not None and page.stop < len(page.stops):
+            self.at_stop = True
+            self._put("asks", text.safe(page.stops[page.stop].sentence))
         place = matter.review.contents.place if matter.review else ""
         self._put("title", f"<b>Leewater</b><span>{text.safe(matter.title)}{'. ' + text.safe(place) if place else ''}</span>")
         self._put("foot", _foot(page, desk, matter.runs))
@@ -224,7 +229,7 @@ class Screen:
         state: dict[str, Any] = {
             "mode": choices.mode, "view": "hall" if choices.hall else "desk", "question": choices.question,
             "query": choices.query(), "push": page.push, "title": f"{page.question.word} \u00b7 Leewater",
-            "working": "yes" if self.said else "no", "ends": None, "time": None,
+            "stop": "yes" if self.at_stop else "", "working": "yes" if self.said else "no", "ends": None, "time": None,
             "arrangement": "map" if page.question.has_map else "words",
         }
         if all(isinstance(key, tuple) and key[0] == "followed" for key in self.waits.get("map", ())):
@@ -263,10 +268,22 @@ def _foot(page: Page, desk: Desk, runs: tuple[tuple[str, str], ...]) -> str:
     )
     units = "".join(f'<option{" selected" if u == choices.units else ""}>{u}</option>' for u in UNITS)
     night = choices.mode == "night"
+    stops = len(page.stops)
+    where = f"Stop {page.stop + 1} of {stops}" if page.stop is not None else f"{stops} {'stop' if stops == 1 else 'stops'}"
+    walk = (
+        f"<div><span>{where}</span> {word('step', '-1', 'before', page.stop in (None, 0))} "
+        f"{word('step', '1', 'next', page.stop == stops - 1)}</div>" if stops else ""
+    )
+    kept = (
+        '<details><summary class="word">Keep this view</summary><form data-send="keep"><label for="keep-sentence">What you will '
+        'say here</label><input type="text" name="sentence" id="keep-sentence" data-once required>'
+        '<button type="submit" class="plain">Keep</button></form></details>'
+    )
     return (
-        f"<div>{word('undo', '', 'Undo', not page.history.can_undo)} {word('redo', '', 'Redo', not page.history.can_redo)}</div>"
+        f"{walk}<div>{word('undo', '', 'Undo', not page.history.can_undo)} {word('redo', '', 'Redo', not page.history.can_redo)}</div>"
         f"<div>{word('hall', 'no' if choices.hall else 'yes', 'Desk view' if choices.hall else 'Hall view')} "
         f"{word('mode', 'day' if night else 'night', 'Day' if night else 'Night')}</div>"
         f'<div><label for="units">Units</label> <select class="word" id="units" data-choose="units">{units}</select></div>'
         f'<div><label for="run">Run</label> <select class="word" id="run" data-choose="run">{options}</select></div>'
+        f"{kept if page.reading.matter().review is not None else ''}"
     )

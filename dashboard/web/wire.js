@@ -34,7 +34,7 @@ class Desk {
     }
     this.state = state;
     if (state.seen === this.sent) this.release();
-    for (const name of ["mode", "view", "arrangement", "question", "working"]) root.dataset[name] = state[name] ?? "";
+    for (const name of ["mode", "view", "arrangement", "question", "working", "stop"]) root.dataset[name] = state[name] ?? "";
     document.title = state.title;
     this.address(state);
     this.time(state);
@@ -173,6 +173,12 @@ class Desk {
     if ((e.ctrlKey || e.metaKey) && e.key.toLowerCase() === "z" && !typing?.matches("[type=text], textarea")) {
       e.preventDefault();
       this.tell(e.shiftKey ? "redo" : "undo", "");
+    }
+    // In the hall the arrow keys walk through the saved views, unless a control has them.
+    const step = { ArrowRight: "1", PageDown: "1", ArrowLeft: "-1", PageUp: "-1" }[e.key];
+    if (step && root.dataset.view === "hall" && !e.target.closest("input, textarea, select, button, #map")) {
+      e.preventDefault();
+      this.tell("step", step);
     }
     if (e.target.id === "map") {
       const step = { ArrowLeft: [-1, 0], ArrowRight: [1, 0], ArrowUp: [0, 1], ArrowDown: [0, -1] }[e.key];

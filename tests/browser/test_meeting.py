@@ -102,3 +102,27 @@ def test_the_section_on_screen_agrees_with_the_command(page: Page, mine: Server,
     (row,) = json.loads(ran.stdout)["sections"]
     assert float(shown[1]) == pytest.approx(row["discharge_m3_s"], rel=6e-3)
     assert float(shown[2]) == pytest.approx(row["discharge_psi_m3_s"], rel=6e-3)
+
+
+def test_kept_views_are_walked_through_with_arrow_keys_in_the_hall(page: Page, mine: Server, copy: Path):
+    open_desk(page, mine.address)
+    for shade, sentence in (("speed", "First the speed."), ("depth", "Then the depth.")):
+        page.select_option("#choose-shade", shade)
+        page.wait_for_function("shade => shade === 'speed' || location.search.includes('depth')", arg=shade)
+        settled(page)
+        page.click("summary:has-text('Keep this view')")
+        page.fill("#keep-sentence", sentence)
+        page.click("form[data-send=keep] button")
+        expect(page.locator(".asks")).to_have_text(sentence)
+    page.click("button[data-do=hall]")
+    expect(page.locator("html")).to_have_attribute("data-view", "hall")
+    page.evaluate("document.activeElement.blur()")
+    page.keyboard.press("ArrowRight")
+    expect(page.locator(".asks")).to_have_text("First the speed.")
+    page.keyboard.press("ArrowRight")
+    expect(page.locator(".asks")).to_have_text("Then the depth.")
+    expect(page.locator(".foot")).to_contain_text("Stop 2 of 2")
+    expect(page.locator(".key")).to_contain_text("Depth")
+    settled(page)
+    assert faults(page) == []
+    assert (copy / "review.toml").read_text(encoding="utf-8").count("[[views]]") == 2
