@@ -38,7 +38,8 @@ class Change(Question):
         change = desk.reading.known(("change", desk.run_id, desk.index, other))
         if change is None:
             return f"against {desk.reading.label(other)}"
-        return f"{len(change.ledger_b.zones.zones)} eddies, were {len(change.ledger_a.zones.zones)}"
+        now = len(change.ledger_b.zones.zones)
+        return f"{now} {'eddy' if now == 1 else 'eddies'}, were {len(change.ledger_a.zones.zones)}"
 
     def sentence(self, desk: Desk) -> str:
         if not self.other(desk):
@@ -101,7 +102,8 @@ class Change(Question):
         if not bounds:
             return None
         b = np.array(bounds)
-        return common.view_of(desk, (*b[:, :2].min(axis=0), *b[:, 2:].max(axis=0)), None)
+        x, y, width = common.view_of(desk, (*b[:, :2].min(axis=0), *b[:, 2:].max(axis=0)), None)
+        return x, y, max(width, 90.0)  # the works' surroundings belong to the answer
 
     def caption(self, desk: Desk, scene: Scene, view: View) -> str:
         runs = dict(desk.reading.matter().runs)

@@ -26,6 +26,7 @@ from .base import Desk, footnote
 
 Ends = tuple[tuple[float, float], tuple[float, float]]
 UNDER_RESOLVED = "under-resolved"
+_WIDEST = 240.0  # m: a first map that shows a thing is no wider because of it
 _REACH = 150.0  # m to each side of the centre line that a first section may go
 _PIER = 12.0  # m of dry ground that a section steps over
 _BANK = 2.0  # m that it goes up each bank
@@ -114,12 +115,14 @@ def _readable(direction: np.ndarray) -> float:
 
 def view_of(desk: Desk, bounds, ends) -> tuple[float, float, float]:
     """Centre and width, m, of a map that holds a thing and the section through it, with room round them."""
-    boxes = np.array([bounds] + ([[*np.min(ends, axis=0), *np.max(ends, axis=0)]] if ends else []))
+    thing = max(bounds[2] - bounds[0], bounds[3] - bounds[1])
+    across = [*np.min(ends, axis=0), *np.max(ends, axis=0)] if ends else bounds
+    # An eddy along a whole bank is looked at where its section is: the rest of it would show nothing.
+    boxes = np.array([across, bounds] if thing < _WIDEST / 2 else [across])
     west, south = boxes[:, :2].min(axis=0)
     east, north = boxes[:, 2:].max(axis=0)
     columns, rows = desk.sizes.map
-    thing = max(bounds[2] - bounds[0], bounds[3] - bounds[1])
-    width = max(1.5 * (east - west), 1.5 * (north - south) * columns / rows, 4.0 * thing, 40.0)
+    width = max(1.5 * (east - west), 1.5 * (north - south) * columns / rows, min(4.0 * thing, _WIDEST), 40.0)
     return float((west + east) / 2), float((south + north) / 2), float(width)
 
 

@@ -34,7 +34,7 @@ def north() -> str:
 def scale_bar(step_m: float, units: Units, *, label: float = 13.0) -> str:
     """A bar half ink half paper of a round length; ``step_m`` is m a pixel."""
     f = units.factor("m")
-    length = round_step(130 * step_m * f)
+    length = round_step(10 * label * step_m * f)
     px = length / f / step_m
     high = 0.4 * label
     return (
