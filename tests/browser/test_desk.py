@@ -139,8 +139,9 @@ def test_every_control_is_reached_by_tab_and_shows_its_focus(page: Page, server:
     """Tab from the top meets each button, list and slider once; each has an outline while it is there."""
     open_desk(page, server.address)
     wanted = page.evaluate(
-        """() => [...document.querySelectorAll('button, select, input, #map, a[href]')]
-            .filter((e) => !e.disabled && e.getClientRects().length && getComputedStyle(e).visibility === 'visible').length"""
+        """() => [...document.querySelectorAll('button, select, input, summary, #map, a[href]')]
+            .filter((e) => !e.disabled && (e.tagName === 'SUMMARY' || !e.closest('details:not([open])'))
+                && e.getClientRects().length && getComputedStyle(e).visibility === 'visible').length"""
     )
     met = set()
     page.evaluate("document.activeElement.blur()")
