@@ -15,6 +15,11 @@ from ..transfer import Transfer
 
 BED_STEP_M = 0.01  # smaller differences of bed are rounding in storage (common practice, no source)
 ROUGHNESS_STEP = 0.005  # relative
+# Statements that say which run it is, not how it was made: they differ between any two runs.
+_LABELS = {
+    "title", "comment", "history", "links", "local_origin", "design", "event", "references", "institution", "date_created",
+    "id", "uuid", "_NCProperties", "mesh_note",
+}
 
 
 @dataclass(frozen=True, slots=True)
@@ -133,7 +138,7 @@ def _times(a: Run, b: Run) -> list[Difference]:
 def _settings(a: Run, b: Run) -> list[Difference]:
     """Statements of the files about themselves that differ: code version, eddy viscosity and the like."""
     out = []
-    for key in sorted({*a.statements, *b.statements}):
+    for key in sorted({*a.statements, *b.statements} - _LABELS):
         here, there = a.statements.get(key, "not stated"), b.statements.get(key, "not stated")
         if here != there:
             out.append(Difference("statement", f"{key}: {here} in one run, {there} in the other."))
