@@ -136,7 +136,6 @@ class Studies:
     def _let_go(self, run_id: str, tried: bool) -> DriftAnswer:
         review = self.reading.matter().review
         assert review is not None  # has_wood says so
-        self._stopped.discard(run_id)
         told = [-1]
 
         def progress(_: str, share: float) -> None:
@@ -151,6 +150,7 @@ class Studies:
                 progress=progress,
             )
         finally:
+            self._stopped.discard(run_id)  # only now: a stop may be asked for before the first step
             self.shares.pop(run_id, None)
             self.reading.long.tell(SHARES)
 
