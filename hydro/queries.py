@@ -8,6 +8,8 @@ from __future__ import annotations
 
 import csv
 import io
+import json
+import math
 from collections.abc import Iterable, Mapping
 from dataclasses import asdict, dataclass, field, fields
 from pathlib import Path
@@ -19,6 +21,8 @@ STATES = ("asked", "answered", "accepted", "carried as a limitation", "withdrawn
 IMPORTANCE = ("could change the decision", "clarify", "editorial")
 _LOG = "queries.jsonl"
 _ANSWERS = ("answer", "file_received", "state")
+_WRITTEN = "leewater/pack-queries/1"  # schema of the file that a team's pack lets its readers download
+_LONGEST = 2000
 
 
 @dataclass(frozen=True, slots=True)
@@ -159,6 +163,63 @@ def read_answers(folder: Path, path: Path, *, who: str) -> list[int]:
     for number, new in changes.items():
         change(folder, number, who=who, **new)
     return list(changes)
+
+
+def read_written(folder: Path, path: Path) -> list[int]:
+    """Take queries that were written in a team's pack into the review's log; those it holds already are passed over.
+
+    Returns
+    -------
+    list of int
+        Numbers of the new queries.
+
+    Raises
+    ------
+    ValueError
+        A file that no pack wrote, or a query that cannot be read: nothing is written then.
+    """
+    try:
+        content = json.loads(path.read_text(encoding="utf-8"))
+    except (UnicodeDecodeError, json.JSONDecodeError) as error:
+        raise ValueError(f"{path.name} cannot be read as JSON ({error}); download the queries from the pack again.") from error
+    if not isinstance(content, dict) or content.get("schema") != _WRITTEN or not isinstance(content.get("queries"), list):
+        raise ValueError(f"{path.name} holds no queries of a pack; it should say schema {_WRITTEN}.")
+    written = [_written(entry, i, path) for i, entry in enumerate(content["queries"], 1)]
+    held = {_same(asdict(q)) for q in queries(folder)}
+    numbers = []
+    for details in written:
+        if _same(details) not in held:
+            held.add(_same(details))
+            query = ask(folder, details["text"], who=details["author"], **{k: details[k] for k in ("importance", "run", "x", "y", "seconds")})
+            numbers.append(query.number)
+    return numbers
+
+
+def _written(entry: Any, i: int, path: Path) -> dict[str, Any]:
+    """One query of a pack's file, checked: whoever held the file may have changed it."""
+    def wrong(what: str) -> ValueError:
+        return ValueError(f"{path.name}, query {i}: {what}; nothing was read.")
+
+    if not isinstance(entry, dict):
+        raise wrong("it is no table of text, importance and place")
+    words = {k: entry.get(k, "") for k in ("text", "importance", "author", "run")}
+    for name, value in words.items():
+        if not isinstance(value, str) or len(value) > _LONGEST:
+            raise wrong(f"its {name} is no text of up to {_LONGEST} letters")
+    if not words["text"].strip():
+        raise wrong("it has no text")
+    if words["importance"] not in IMPORTANCE:
+        raise wrong(f"importance {words['importance']!r} is not known; say one of: {', '.join(IMPORTANCE)}")
+    numbers = {k: entry.get(k) for k in ("x", "y", "seconds")}
+    for name, value in numbers.items():
+        if value is not None and (isinstance(value, bool) or not isinstance(value, (int, float)) or not math.isfinite(value)):
+            raise wrong(f"its {name} is {value!r}, which is no number")
+    return {**words, "author": words["author"].strip() or "a reader of the pack", **numbers}
+
+
+def _same(details: Mapping[str, Any]) -> tuple[Any, ...]:
+    """What makes two queries one: read a second time, a file adds nothing."""
+    return tuple(details[k] for k in ("text", "author", "run", "x", "y", "seconds"))
 
 
 def _number(row: Mapping[str, Any], i: int, path: Path) -> int:

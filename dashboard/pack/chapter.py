@@ -26,7 +26,7 @@ from . import fields
 from .items import block
 
 CAUTIONS = ("sensitivity", "wake-detail", "rotation-time", "section-discharge", "no-roller", "tracing", "public-water")
-_WIDE, _NARROW = Sizes(ribbon=752, section=372), Sizes(window=390, ribbon=358, section=358)
+_WIDE, _NARROW = Sizes(ribbon=860, section=440), Sizes(window=390, ribbon=358, section=358)
 _CURSOR = "<g data-cursor"
 
 
