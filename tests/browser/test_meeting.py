@@ -15,7 +15,7 @@ import pytest
 from playwright.sync_api import Browser, Page, expect
 
 from .conftest import ROOT, Server, running_dashboard
-from .desk import PATIENCE, answer, colours, faults, open_desk, plain, settled
+from .desk import PATIENCE, colours, faults, open_desk, plain, settled
 
 pytestmark = pytest.mark.browser
 COARSE = "existing_bankfull_coarse"
