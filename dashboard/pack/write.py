@@ -51,7 +51,7 @@ def write_folder(pack: Pack, folder: Path) -> list[Path]:
     written = []
     # The page comes last: a pack that is half there has no way in.
     for name, content in {**files, "index.html": page}.items():
-        write_whole(folder / name, content)
+        _put(folder / name, content)
         written.append(folder / name)
     return [*written, *(folder / name for name in copied)]
 
@@ -64,8 +64,14 @@ def write_single(pack: Pack, file: Path) -> list[Path]:
     styles = "\n".join([theme.stylesheet(), _with_fonts((_DESK / "desk.css").read_text("utf-8")), (WEB / "pack.css").read_text("utf-8")])
     data = "".join(f'<script type="application/octet-stream" id="data-{name}">{text}</script>\n' for name, text in pack.items.items())
     parts = {"head": f"<style>{styles}</style>", "scripts": data + "".join(f"<script>{s}</script>\n" for s in scripts)}
-    write_whole(file, _page(pack, parts, hashes))
+    _put(file, _page(pack, parts, hashes))
     return [file]
+
+
+def _put(path: Path, content: str | bytes) -> None:
+    """A file written whole, for everybody to read: a pack is made to be passed on and served."""
+    write_whole(path, content)
+    path.chmod(0o644)
 
 
 def _refuse_other_things(folder: Path) -> None:

@@ -63,7 +63,7 @@
     moved += Math.hypot(now[0] - before[0], now[1] - before[1]);
     if (fingers.size === 1 && moved > 6) {
       const { step } = PAGE.view();
-      PAGE.look_at(state.x - (now[0] - before[0]) * step, state.y + (now[1] - before[1]) * step, state.width);
+      PAGE.lookAt(state.x - (now[0] - before[0]) * step, state.y + (now[1] - before[1]) * step, state.width);
     } else if (fingers.size === 2) {
       const [[ax, ay], [bx, by]] = fingers.values(), apart = Math.hypot(bx - ax, by - ay);
       if (spread > 0 && apart > 0) PAGE.zoom(spread / apart, (ax + bx) / 2, (ay + by) / 2);
@@ -85,8 +85,8 @@
   on("map", (event) => {
     const { width } = state, pan = PAN * width;
     const does = {
-      ArrowLeft: () => PAGE.look_at(state.x - pan, state.y, width), ArrowRight: () => PAGE.look_at(state.x + pan, state.y, width),
-      ArrowUp: () => PAGE.look_at(state.x, state.y + pan, width), ArrowDown: () => PAGE.look_at(state.x, state.y - pan, width),
+      ArrowLeft: () => PAGE.lookAt(state.x - pan, state.y, width), ArrowRight: () => PAGE.lookAt(state.x + pan, state.y, width),
+      ArrowUp: () => PAGE.lookAt(state.x, state.y + pan, width), ArrowDown: () => PAGE.lookAt(state.x, state.y - pan, width),
       "+": () => PAGE.zoom(1 / ZOOM), "=": () => PAGE.zoom(1 / ZOOM), "-": () => PAGE.zoom(ZOOM), Enter: () => PAGE.letGo(state.x, state.y),
     }[event.key];
     if (!does || event.ctrlKey || event.metaKey || event.altKey) return;

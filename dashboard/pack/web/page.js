@@ -133,13 +133,14 @@ const PAGE = (() => {
     for (const z of zones) if (z !== chosen) MARKS.zone(ctx, v, z, false, look);
     if (chosen) MARKS.zone(ctx, v, chosen, true, look);
     const line = head.sections[state.section], taken = line ? MARKS.section(ctx, v, line.ends, look) : [];
-    taken.push([0, 0, 200, 96], [v.w - 44, 0, v.w, 64], [v.w - 190, v.h - 44, v.w, v.h]); // key, north, scale
+    const { offsetLeft: left, offsetTop: top, offsetWidth: wide, offsetHeight: high } = $("key");
+    taken.push([left, top, left + wide, top + high], [v.w - 44, 0, v.w, 64], [v.w - 190, v.h - 44, v.w, v.h]); // key, north, scale
     names(ctx, v, taken);
     const hidden = MARKS.tags(ctx, v, zones, state.subject, taken, look);
     $("hidden").textContent = hidden ? `${hidden} more ${hidden === 1 ? "eddy finds" : "eddies find"} no room for a name here.` : "";
     for (const track of state.parcels) MARKS.parcel(ctx, v, track, head.seconds.length > 1 ? seconds() : Infinity, look);
     for (const pin of QUERIES.pins(pack.runs[state.run].id, head.corner)) MARKS.query(ctx, v, pin, look);
-    PLATE.flow(ctx, v, head.centre, look);
+    PLATE.flow(ctx, v, head.centre, taken, look);
     PLATE.frame(ctx, v, look, pack.length);
   }
 
@@ -156,7 +157,7 @@ const PAGE = (() => {
     }
   }
 
-  function look_at(x, y, width) {
+  function lookAt(x, y, width) {
     const most = 1.6 * Math.max(head.size[0], (head.size[1] * size()[0]) / size()[1]);
     Object.assign(state, {
       x: Math.min(Math.max(x, 0), head.size[0]), y: Math.min(Math.max(y, 0), head.size[1]), width: Math.min(Math.max(width, 2), most),
@@ -166,22 +167,28 @@ const PAGE = (() => {
 
   function whole() {
     const [w, h] = size();
-    look_at(head.size[0] / 2, head.size[1] / 2, 1.06 * Math.max(head.size[0], (head.size[1] * w) / h));
+    lookAt(head.size[0] / 2, head.size[1] / 2, 1.06 * Math.max(head.size[0], (head.size[1] * w) / h));
+  }
+
+  function boxOf(points) {
+    const xs = points.map((p) => p[0]), ys = points.map((p) => p[1]);
+    return points.length ? [Math.min(...xs), Math.min(...ys), Math.max(...xs), Math.max(...ys)] : null;
   }
 
   // The subject and the section through it, with room round them.
   function near() {
-    const [w, h] = size(), points = [...(zone()?.rings.flat() ?? []), ...(head.sections[state.section]?.ends ?? [])];
-    if (!points.length) return whole();
-    const xs = points.map((p) => p[0]), ys = points.map((p) => p[1]);
-    const [west, east, south, north] = [Math.min(...xs), Math.max(...xs), Math.min(...ys), Math.max(...ys)];
-    return look_at((west + east) / 2, (south + north) / 2, Math.max(1.5 * (east - west), (1.5 * (north - south) * w) / h, 40));
+    const [w, h] = size(), eddy = boxOf(zone()?.rings.flat() ?? []), line = boxOf(head.sections[state.section]?.ends ?? []);
+    if (!eddy && !line) return whole();
+    const apart = eddy && line && (line[0] > eddy[2] || line[2] < eddy[0] || line[1] > eddy[3] || line[3] < eddy[1]);
+    const boxes = apart ? [eddy] : [eddy, line].filter(Boolean);
+    const [west, south] = [0, 1].map((k) => Math.min(...boxes.map((b) => b[k]))), [east, north] = [2, 3].map((k) => Math.max(...boxes.map((b) => b[k])));
+    return lookAt((west + east) / 2, (south + north) / 2, Math.max(1.5 * (east - west), (1.5 * (north - south) * w) / h, 40));
   }
 
   // Change the scale about a point of the map, px; it stays where it is.
   function zoom(factor, px = size()[0] / 2, py = size()[1] / 2) {
     const [x, y] = view().at(px, py);
-    look_at(x + (state.x - x) * factor, y + (state.y - y) * factor, state.width * factor);
+    lookAt(x + (state.x - x) * factor, y + (state.y - y) * factor, state.width * factor);
   }
 
   // ---- parcels ----
@@ -241,7 +248,7 @@ const PAGE = (() => {
     const nearest = saved.seconds === null ? head.opening :
       head.seconds.reduce((best, s, i) => (Math.abs(s - saved.seconds) < Math.abs(head.seconds[best] - saved.seconds) ? i : best), 0);
     await show(nearest, saved.subject);
-    if (saved.view) look_at(saved.view[0] - head.corner[0], saved.view[1] - head.corner[1], saved.view[2]);
+    if (saved.view) lookAt(saved.view[0] - head.corner[0], saved.view[1] - head.corner[1], saved.view[2]);
     else near();
     $("stop-words").textContent = saved.sentence;
     $("stop-number").textContent = `Stop ${number + 1} of ${pack.stops.length}`;
@@ -254,13 +261,15 @@ const PAGE = (() => {
     dressed();
     QUERIES.begin(pack, () => ({ run: pack.runs[state.run].id, seconds: head ? seconds() : null, x: state.x + head.corner[0], y: state.y + head.corner[1] }), draw);
     listeners.push(parcelWords);
+    $("stops").hidden = pack.stops.length === 0;
+    $("stop-number").textContent = `${pack.stops.length} saved ${pack.stops.length === 1 ? "view" : "views"}`;
     await open(0);
     near();
     root.dataset.ready = "yes";
   }
 
   return {
-    $, root, state, begin, open, show, draw, dressed, section, ribbon, cursor, zoom, near, whole, look_at, letGo, stop, view, size,
+    $, root, state, begin, open, show, draw, dressed, section, ribbon, cursor, zoom, near, whole, lookAt, letGo, stop, view, size,
     get pack() { return pack; }, get head() { return head; }, get mesh() { return mesh; }, get item() { return item; }, places: () => strip(),
   };
 })();

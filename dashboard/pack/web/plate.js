@@ -61,15 +61,18 @@ const PLATE = (() => {
     const [west, south, east, north] = view.box, edge = 12 * view.step, line = new Path2D(), ticks = new Path2D();
     let at = 0;
     for (const count of counts) {
-      let until = 0, long = true, open = false;
+      let until = 0, long = true, open = false, x1 = xs[at] * worth, y1 = ys[at] * worth;
       for (let i = at + 1; i < at + count; i += 1) {
-        const x1 = xs[i - 1] * worth, y1 = ys[i - 1] * worth, x2 = xs[i] * worth, y2 = ys[i] * worth;
+        const x2 = xs[i] * worth, y2 = ys[i] * worth;
+        // Points closer than 3 px only roughen the line and turn its ticks about.
+        if (i < at + count - 1 && Math.abs(x2 - x1) + Math.abs(y2 - y1) < 3 * view.step) continue;
         const away = Math.max(x1, x2) < west - edge || Math.min(x1, x2) > east + edge || Math.max(y1, y2) < south - edge || Math.min(y1, y2) > north + edge;
+        const ax = view.px(x1), ay = view.py(y1), bx = view.px(x2), by = view.py(y2), length = Math.hypot(bx - ax, by - ay);
+        [x1, y1] = [x2, y2];
         if (away) {
           open = false;
           continue;
         }
-        const ax = view.px(x1), ay = view.py(y1), bx = view.px(x2), by = view.py(y2), length = Math.hypot(bx - ax, by - ay);
         if (!open) line.moveTo(ax, ay);
         line.lineTo(bx, by);
         open = true;
@@ -123,14 +126,15 @@ const PLATE = (() => {
     ctx.fillText(text, x, y);
   }
 
-  // "flow" with an arrow, where the centre line comes into view.
-  function flow(ctx, view, centre, look) {
+  // "flow" with an arrow, where the centre line comes into view and nothing of `taken` (boxes in px) stands.
+  function flow(ctx, view, centre, taken, look) {
     const inside = centre.map(([x, y]) => [view.px(x), view.py(y)]);
     for (let i = 1; i < inside.length; i += 1) {
       const [[ax, ay], [bx, by]] = [inside[i - 1], inside[i]], length = Math.hypot(bx - ax, by - ay) || 1;
       for (let s = 0; s < length; s += 12) {
         const x = ax + (s / length) * (bx - ax), y = ay + (s / length) * (by - ay);
         if (x < 60 || y < 60 || x > view.w - 60 || y > view.h - 60) continue;
+        if (taken.some((b) => x > b[0] - 50 && x < b[2] + 50 && y > b[1] - 50 && y < b[3] + 50)) continue;
         let angle = Math.atan2(by - ay, bx - ax);
         const back = Math.abs(angle) > Math.PI / 2;
         ctx.save();
