@@ -26,7 +26,12 @@ from . import fields
 from .items import block
 
 CAUTIONS = ("sensitivity", "wake-detail", "rotation-time", "section-discharge", "no-roller", "tracing", "public-water")
-_WIDE, _NARROW = Sizes(ribbon=860, section=440), Sizes(window=390, ribbon=358, section=358)
+# Three ways to look at the page, each with drawings of its own: a label keeps its size on every screen.
+WAYS = {
+    "wide": (Sizes(ribbon=860, section=440), theme.look("day")),
+    "narrow": (Sizes(window=390, ribbon=358, section=358), theme.look("day")),
+    "hall": (Sizes(ribbon=860, section=440), theme.look("day", hall=True)),
+}
 _CURSOR = "<g data-cursor"
 
 
@@ -74,16 +79,17 @@ class Chapter:
 
     def __init__(self, reading: Reading, run_id: str, units: str = "SI") -> None:
         self.reading, self.run_id, self.question = reading, run_id, PackQuestion()
-        self.studies, self.look = Studies(reading), theme.look("day")
+        self.studies = Studies(reading)
         self.run = reading.run(run_id)
         self.start = Choices(run=run_id, units=units)
         self.opening = 0 if self.run.n_frames == 1 else self._fullest()
         self.lines = self._lines()
 
-    def desk(self, index: int, sizes: Sizes = _WIDE, **chosen: Any) -> Desk:
-        """The desk at one frame."""
+    def desk(self, index: int, way: str = "wide", **chosen: Any) -> Desk:
+        """The desk at one frame, looked at in one of ``WAYS``."""
+        sizes, look = WAYS[way]
         choices = self.start.with_(seconds=float(self.run.times.seconds[index]), **chosen)
-        return Desk(choices, self.reading, self.studies, self.look, sizes)
+        return Desk(choices, self.reading, self.studies, look, sizes)
 
     def head(self) -> str:
         """The run's own item: its mesh, moments, structures, ribbon and sections."""
@@ -96,7 +102,7 @@ class Chapter:
             "size": [mesh.bounds[2] - mesh.bounds[0], mesh.bounds[3] - mesh.bounds[1]],
             "seconds": self.run.times.seconds.tolist(), "moments": self._moments(), "opening": self.opening,
             "wet": self._wet(), "top": top, "key": ramp_key(desk) + marks.hatch_key(),
-            "ribbon": [self._ribbon(_WIDE), self._ribbon(_NARROW)],
+            "ribbon": {way: self._ribbon(way) for way in WAYS},
             "structures": [
                 {"name": s.name, "kind": s.kind, "solid": s.solid, "closed": s.shape.geom_type.endswith("Polygon"),
                  "rings": fields.ring_lists(s.shape, mesh)} for s in structures(desk)
@@ -110,28 +116,37 @@ class Chapter:
         """A frame's item: its field, waterline, zones and everything that is said of it."""
         desk, mesh = self.desk(index), self.run.mesh
         frame = self.reading.frame(self.run_id, index)
-        content: dict[str, Any] = {"cursor": [self._cursor(index, s) for s in (_WIDE, _NARROW)]}
         try:
             entry = self.reading.ledger(self.run_id, index)
         except ValueError as error:  # a frame of maxima, or one without water: the sentence says so
-            scale, arrays = fields.frame_arrays(frame, None)
-            said = frame_words.trouble(str(error))
-            content |= {"tube": 0, "zones": [], "subject": "", "sentences": {"": said}, "table": "", "alternative": text.safe(str(error)),
-                        "sections": ["" for _ in self.lines]}
             shore: Sequence[np.ndarray] = ()
+            scale, arrays = fields.frame_arrays(frame, None)
+            content = {"tube": 0.0, "zones": [], "subject": "", "alternative": text.safe(str(error))}
+            content["said"] = {way: self._unsaid(index, way, error) for way in WAYS}
         else:
-            zones = entry.zones.zones
-            _, tube = self.reading.tubes(self.run_id, index, desk.choices.tubes)
-            scale, arrays = fields.frame_arrays(frame, entry.sf if entry.sf.drawn else None)
+            sf = entry.sf if entry.sf.drawn else None
             shore = self.reading.shore(self.run_id, index)
-            content |= {
-                "tube": tube if entry.sf.drawn else 0.0, "zones": [self._zone(z) for z in zones], "subject": self.question.subject_id(desk),
-                "sentences": {z: self.question.sentence(self.desk(index, subject=z)) for z in ([z.id for z in zones] or [""])},
-                "table": self.question.table(desk), "alternative": self.question.alternative(desk),
-                "sections": [self._section(index, line) for line in self.lines],
+            scale, arrays = fields.frame_arrays(frame, sf)
+            _, tube = self.reading.tubes(self.run_id, index, desk.choices.tubes)
+            content = {
+                "tube": tube if sf else 0.0, "zones": [self._zone(z) for z in entry.zones.zones], "subject": self.question.subject_id(desk),
+                "alternative": self.question.alternative(desk), "said": {way: self._said(index, way) for way in WAYS},
             }
         step, lines = fields.line_arrays(shore, mesh, "shore")
         return block(content | {"scale": scale | {"shore": step}}, arrays | lines)
+
+    def _said(self, index: int, way: str) -> dict[str, Any]:
+        """All that is said of a frame in one way: a sentence for each eddy that may be its subject, table, sections, cursor."""
+        zones = self.question.ledger(self.desk(index)).zones.zones
+        subjects = [z.id for z in zones] or [""]
+        return {
+            "sentences": {z: self.question.sentence(self.desk(index, way, subject=z)) for z in subjects},
+            "table": self.question.table(self.desk(index, way)), "cursor": self._cursor(index, way),
+            "sections": [self._section(index, line, way) for line in self.lines],
+        }
+
+    def _unsaid(self, index: int, way: str, error: ValueError) -> dict[str, Any]:
+        return {"sentences": {"": frame_words.trouble(str(error))}, "table": "", "cursor": self._cursor(index, way), "sections": []}
 
     def opening_html(self) -> dict[str, str]:
         """What the page holds before any script has run."""
@@ -139,7 +154,7 @@ class Chapter:
         try:
             return {
                 "answer": self.question.sentence(desk), "table": self.question.table(desk), "alternative": self.question.alternative(desk),
-                "section": self._section(self.opening, self.lines[0]) if self.lines else "",
+                "section": self._section(self.opening, self.lines[0], "wide") if self.lines else "",
             }
         except ValueError as error:
             return {"answer": frame_words.trouble(str(error)), "table": "", "alternative": text.safe(str(error)), "section": ""}
@@ -169,27 +184,31 @@ class Chapter:
 
     def _moments(self) -> list[str]:
         """Each frame's moment in words with its discharge: what the slider says aloud."""
-        course = self._course(_WIDE)
+        course = self._course("wide")
         return [ribbon.words(replace(course, index=i), self.desk(i).units) for i in range(self.run.n_frames)]
 
-    def _course(self, sizes: Sizes) -> ribbon.Course:
-        desk = self.desk(self.opening, sizes)
+    def _course(self, way: str) -> ribbon.Course:
+        desk = self.desk(self.opening, way)
         try:
             return self.question.course(desk)
         except ValueError:
             times = self.run.times
             return ribbon.Course(times.seconds, times.instants, np.full(self.run.n_frames, np.nan), (), self.opening)
 
-    def _ribbon(self, sizes: Sizes) -> dict[str, Any]:
-        course, box = self._course(sizes), ribbon.Box(sizes.ribbon)
+    def _ribbon(self, way: str) -> dict[str, Any]:
+        course, box = self._course(way), self._box(way)
         svg = ribbon.draw(course, box, self.desk(self.opening).units)
-        return {"svg": svg, "width": sizes.ribbon, "places": np.round(ribbon.places(course, box), 1).tolist()}
+        return {"svg": svg, "width": box.width, "places": np.round(ribbon.places(course, box), 1).tolist()}
 
-    def _cursor(self, index: int, sizes: Sizes) -> str:
+    def _cursor(self, index: int, way: str) -> str:
         """The cursor's part of the ribbon at one frame; empty where the run has one frame only."""
-        drawn = ribbon.draw(replace(self._course(sizes), index=index), ribbon.Box(sizes.ribbon), self.desk(index).units)
+        drawn = ribbon.draw(replace(self._course(way), index=index), self._box(way), self.desk(index).units)
         begin = drawn.find(_CURSOR)
         return drawn[begin : drawn.rindex("</svg>")] if begin >= 0 else ""
+
+    def _box(self, way: str) -> ribbon.Box:
+        sizes, look = WAYS[way]
+        return ribbon.Box(sizes.ribbon, look.label_px)
 
     def _lines(self) -> tuple[Line, ...]:
         """The section through the largest eddy of the opening frame, then the review's own."""
@@ -206,8 +225,8 @@ class Chapter:
         desk = self.desk(self.opening, section=line.ends)
         return fields.point_list(np.array(self.question.section_ends(desk)), self.run.mesh)
 
-    def _section(self, index: int, line: Line) -> str:
-        desk = self.desk(index, section=line.ends)
+    def _section(self, index: int, line: Line, way: str) -> str:
+        desk = self.desk(index, way, section=line.ends)
         subject = self.question.subject(desk)
         ends = self.question.section_ends(desk)
         outline = subject.contour if subject is not None else None

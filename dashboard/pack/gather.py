@@ -126,7 +126,9 @@ def _head(matter: Matter, told: Sequence[Chapter], stops, log: Sequence[Query], 
         "schema": "leewater/pack/1", "title": matter.title, "digest": data, "team": team,
         "runs": [{"key": f"r{k}", "id": c.run_id, "label": c.reading.label(c.run_id)} for k, c in enumerate(told)],
         "length": {"factor": units.factor("m"), "label": units.label("m")}, "stops": stops,
+        "flow": {"factor": units.factor("m3/s"), "label": units.label("m3/s")},
         "palettes": {name: list(theme.water_palette(p)) for name, p in (("day", theme.LIGHT), ("hall", theme.HALL), ("night", theme.DARK))},
+        "cautions": {way: frame_words.cautions(chapters.CAUTIONS, short=way == "hall") for way in chapters.WAYS},
         "queries": [{k: v for k, v in asdict(q).items() if k in _PINNED} for q in log],
     }
 

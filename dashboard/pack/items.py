@@ -28,10 +28,11 @@ class Quantised:
 
 
 def quantised(values: np.ndarray) -> Quantised:
-    """Values as uint16 from their least to their greatest; half a step is the greatest error."""
+    """Values as uint16 from their least to their greatest; half a step is the greatest error, and 0 stays 0."""
     low, high = (float(values.min()), float(values.max())) if values.size else (0.0, 0.0)
-    step = (high - low) / 65535 or 1.0
-    return Quantised(np.round((values - low) / step).astype(np.uint16), low, step)
+    step = (high - low) / 65534 or 1.0
+    first = np.floor(low / step)
+    return Quantised((np.round(values / step) - first).astype(np.uint16), float(first * step), step)
 
 
 def signed(values: np.ndarray) -> Quantised:

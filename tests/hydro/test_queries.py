@@ -4,10 +4,11 @@ from __future__ import annotations
 
 import csv
 import io
+import json
 
 import pytest
 
-from hydro.queries import ask, change, queries, read_answers, to_csv, to_xlsx
+from hydro.queries import ask, change, find, queries, read_answers, read_written, to_csv, to_xlsx
 from hydro.review import append_line, read_log
 
 
@@ -86,3 +87,39 @@ def test_an_empty_query_and_an_unknown_number_are_refused(folder):
         ask(folder, "  ", who="A")
     with pytest.raises(ValueError, match="no query 9"):
         change(folder, 9, who="A", state="accepted")
+
+
+def _file(tmp_path, *entries, schema="leewater/pack-queries/1"):
+    path = tmp_path / "queries.json"
+    path.write_text(json.dumps({"schema": schema, "queries": list(entries)}))
+    return path
+
+
+def test_queries_written_in_a_pack_are_taken_once_with_their_place(tmp_path):
+    ask(tmp_path, "Was the bed surveyed?", who="A")
+    entry = {"text": "Does it silt up?", "importance": "clarify", "author": "R. Reader", "run": "flood", "x": 50000.5, "y": 3.0, "seconds": 20}
+    path = _file(tmp_path, entry, {"text": "And here?", "importance": "editorial", "author": ""})
+    assert read_written(tmp_path, path) == [2, 3]
+    taken = find(tmp_path, 2)
+    assert (taken.text, taken.author, taken.run, taken.x, taken.seconds) == ("Does it silt up?", "R. Reader", "flood", 50000.5, 20)
+    assert read_written(tmp_path, path) == []
+    assert len(queries(tmp_path)) == 3
+
+
+@pytest.mark.parametrize(("bad", "words"), [
+    ({"text": " ", "importance": "clarify"}, "no text"),
+    ({"text": "x", "importance": "urgent"}, "urgent"),
+    ({"text": "x", "importance": "clarify", "x": "12"}, "no number"),
+    ({"text": "x" * 5000, "importance": "clarify"}, "2000 letters"),
+    ("x", "no table"),
+])
+def test_one_bad_query_of_a_pack_and_none_is_taken(tmp_path, bad, words):
+    path = _file(tmp_path, {"text": "good", "importance": "clarify"}, bad)
+    with pytest.raises(ValueError, match=f"query 2.*{words}"):
+        read_written(tmp_path, path)
+    assert queries(tmp_path) == []
+
+
+def test_a_file_that_no_pack_wrote_is_refused(tmp_path):
+    with pytest.raises(ValueError, match="schema"):
+        read_written(tmp_path, _file(tmp_path, schema="other/1"))

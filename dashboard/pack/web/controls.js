@@ -127,7 +127,6 @@
     else delete root.dataset[name];
     $(button).setAttribute("aria-pressed", pressed);
     PAGE.dressed();
-    PAGE.draw();
   }
   on("night", () => dress("mode", "night", "night", root.dataset.mode !== "night"));
   on("hall", () => dress("view", "hall", "hall", root.dataset.view !== "hall"));
@@ -141,10 +140,7 @@
     PAGE.stop(to);
   });
 
-  matchMedia("(max-width: 639px)").addEventListener("change", () => {
-    PAGE.ribbon();
-    PAGE.cursor();
-  });
+  PAGE.narrow.addEventListener("change", PAGE.dressed);
   new ResizeObserver(PAGE.draw).observe($("map"));
   if (matchMedia("(prefers-color-scheme: dark)").matches) root.dataset.mode = "night";
   $("night").setAttribute("aria-pressed", root.dataset.mode === "night");

@@ -62,8 +62,12 @@ const PAGE = (() => {
 
   // ---- words and drawings that were made with the pack ----
 
+  const way = () => (root.dataset.view === "hall" ? "hall" : narrow.matches ? "narrow" : "wide");
+  const said = () => item.content.said[way()];
+
   function sentence() {
-    $("answer").innerHTML = item.content.sentences[state.subject] ?? item.content.sentences[""] ?? "";
+    const { sentences } = said();
+    $("answer").innerHTML = sentences[state.subject] ?? sentences[""] ?? "";
     for (const row of document.querySelectorAll("#table tr[data-value]")) {
       const mine = row.dataset.value === state.subject;
       row.classList.toggle("subject", mine);
@@ -73,10 +77,12 @@ const PAGE = (() => {
 
   function say() {
     const focused = document.activeElement?.dataset?.key;
-    $("table").innerHTML = item.content.table;
+    $("table").innerHTML = said().table;
     sentence();
     section();
     $("alternative").innerHTML = item.content.alternative;
+    const { factor, label } = pack.flow, { tube } = item.content;
+    $("tubes").textContent = tube > 0 ? `Speed in tubes of ${Number((tube * factor).toPrecision(2))}\u00a0${label} each: narrow is fast.` : "Speed of the water; no tubes in this frame.";
     $("map-picture").setAttribute("aria-label", $("alternative").textContent);
     $("time").value = state.index;
     $("time").setAttribute("aria-valuetext", head.moments[state.index]);
@@ -85,10 +91,10 @@ const PAGE = (() => {
   }
 
   function section() {
-    $("section").innerHTML = item.content.sections[state.section] ?? "";
+    $("section").innerHTML = said().sections[state.section] ?? "";
   }
 
-  const strip = () => head.ribbon[narrow.matches ? 1 : 0];
+  const strip = () => head.ribbon[way()];
 
   function ribbon() {
     $("ribbon-picture").innerHTML = strip().svg;
@@ -96,15 +102,21 @@ const PAGE = (() => {
 
   function cursor() {
     const place = $("ribbon-picture").querySelector("[data-cursor]");
-    if (place) place.outerHTML = item.content.cursor[narrow.matches ? 1 : 0];
+    if (place) place.outerHTML = said().cursor;
   }
 
   // ---- the map ----
 
+  // After the way of looking has changed: other sizes, colours, drawings and words.
   function dressed() {
     look = PLATE.looks();
     const night = root.dataset.mode === "night", hall = root.dataset.view === "hall";
     palette = PLATE.pixelsOf(pack.palettes[night ? "night" : hall ? "hall" : "day"]);
+    $("cautions").innerHTML = pack.cautions[way()];
+    if (!item) return;
+    ribbon();
+    say();
+    draw();
   }
 
   function draw() {
@@ -269,7 +281,7 @@ const PAGE = (() => {
   }
 
   return {
-    $, root, state, begin, open, show, draw, dressed, section, ribbon, cursor, zoom, near, whole, lookAt, letGo, stop, view, size,
+    $, root, state, begin, open, show, draw, dressed, section, zoom, near, whole, lookAt, letGo, stop, view, size, narrow,
     get pack() { return pack; }, get head() { return head; }, get mesh() { return mesh; }, get item() { return item; }, places: () => strip(),
   };
 })();

@@ -71,14 +71,17 @@ const WATER = (() => {
     // Whether triangle t is water however shallow: it carries part of the discharge.
     carries(t) { return this.domain !== null && ((this.domain[t >> 3] >> (t & 7)) & 1) === 1; }
 
-    // Depth, speed and psi of the nodes, made when first wanted.
-    get nodes() {
+    // Depth, speed and psi of the nodes, made when first wanted; psi is no number where no triangle of its domain is.
+    on(mesh) {
       if (!this.made) {
-        const n = this.h.length, depth = new Float32Array(n), speed = new Float32Array(n), psi = new Float32Array(n);
+        const n = this.h.length, depth = new Float32Array(n), speed = new Float32Array(n), psi = new Float32Array(n).fill(NaN);
         for (let i = 0; i < n; i += 1) {
           depth[i] = this.depth(i);
           speed[i] = this.speed(i);
-          psi[i] = this.psi ? this.psiLow + this.psiStep * this.psi[i] : 0;
+        }
+        for (let k = 0; this.psi && k < mesh.triangles.length; k += 1) {
+          const i = mesh.triangles[k];
+          if (this.carries(Math.floor(k / 3))) psi[i] = this.psiLow + this.psiStep * this.psi[i];
         }
         this.made = { depth, speed, psi };
       }
@@ -87,10 +90,10 @@ const WATER = (() => {
   }
 
   // Paint a frame into pixels (Uint32, rows from the north) of a view {west, north, step, columns, rows}.
-  // `palette`: 0 no water, 1-127 even tubes from slow to fast, 128-254 odd tubes.
+  // `palette`: 0 no water, 1-127 even tubes from slow to fast, 128-254 odd tubes; water without psi counts as even.
   function paint(pixels, view, mesh, field, top, palette) {
     pixels.fill(0);
-    const { x, y, triangles } = mesh, { depth, speed, psi } = field.nodes, { west, north, step, columns, rows } = view;
+    const { x, y, triangles } = mesh, { depth, speed, psi } = field.on(mesh), { west, north, step, columns, rows } = view;
     const east = west + columns * step, south = north - rows * step;
     const scale = 126.999 / top, perTube = field.tube > 0 ? 1 / field.tube : 0;
     for (let t = 0; t < mesh.count; t += 1) {
@@ -135,7 +138,7 @@ const WATER = (() => {
   // Calls line(x1, y1, x2, y2) for each piece of the lines between tubes inside the box.
   function tubeLines(mesh, field, [west, south, east, north], line) {
     if (!(field.tube > 0)) return;
-    const { x, y, triangles } = mesh, { psi } = field.nodes, corner = [0, 0, 0], cut = [0, 0, 0, 0];
+    const { x, y, triangles } = mesh, { psi } = field.on(mesh), corner = [0, 0, 0], cut = [0, 0, 0, 0];
     for (let t = 0; t < mesh.count; t += 1) {
       if (!field.carries(t)) continue;
       for (let k = 0; k < 3; k += 1) corner[k] = triangles[3 * t + k];
