@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import argparse
+import json
 import sys
 from pathlib import Path
 
@@ -18,11 +19,12 @@ def arguments(parser: argparse.ArgumentParser) -> None:
     )
     parser.add_argument("--single", action="store_true", help="one file, DIR/pack.html, in place of the folder")
     parser.add_argument("--team", action="store_true", help="with the review's queries and names, and a place to write new queries")
+    parser.add_argument("--json", metavar="FILE", help="write what the pack holds as JSON (- for standard output)")
     parser.add_argument("--take", metavar="FILE", help="read the queries that were written in a team's pack into the review")
 
 
 def run(args: argparse.Namespace) -> int:
-    from hydro.review import open_any
+    from hydro.review import open_any, write_whole
 
     review, _ = open_any(args.review)
     if args.take:
@@ -32,12 +34,23 @@ def run(args: argparse.Namespace) -> int:
     folder = Path(args.out or (review.folder if review else Path(args.review).resolve().parent) / "pack")
     pack = gather(args.review, args.runs, team=args.team, progress=lambda text: print(text, file=sys.stderr))
     written = write_single(pack, folder / "pack.html") if args.single else write_folder(pack, folder)
+    if args.json:
+        text = json.dumps(_listed(pack, folder, written), indent=1)
+        if args.json == "-":
+            print(text)
+            return 0
+        write_whole(Path(args.json), text + "\n")
     size = sum(p.stat().st_size for p in written) / 1e6
     opening = written[0] if args.single else folder / "index.html"
     print(f"{len(written)} {'file' if len(written) == 1 else 'files'}, {size:.1f} MB. Open {opening} in a browser.")
     if not args.team:
         print("No query, person or path of the review is in it; --team puts the queries in.")
     return 0
+
+
+def _listed(pack, folder: Path, written: list[Path]) -> dict:
+    files = [{"name": p.relative_to(folder).as_posix(), "size_bytes": p.stat().st_size} for p in written]
+    return {"schema": "leewater/pack-files/1", "title": pack.title, "digest": pack.digest, "team": pack.team, "files": files}
 
 
 def _take(review, file: Path) -> int:

@@ -93,8 +93,7 @@ def _page(pack: Pack, parts: dict[str, str], scripts: str) -> str:
     """The template with its places filled, all at once, so that nothing filled in is read again."""
     filled = pack.places | parts | {"policy": _POLICY.format(scripts=scripts), "mark": _MARK}
     text = (WEB / "index.html").read_text("utf-8")
-    for name, keep in (("team", pack.team), ("several", pack.places["runs"].count("<option") > 1)):
-        text = re.sub(rf"<!--{name}-->(.*?)<!--/{name}-->", r"\1" if keep else "", text, flags=re.DOTALL)
+    text = re.sub(r"<!--team-->(.*?)<!--/team-->", r"\1" if pack.team else "", text, flags=re.DOTALL)
     return re.sub(r"\{\{(\w+)\}\}", lambda found: filled[found[1]], text)
 
 
