@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import contextlib
+import re
 import threading
 from collections.abc import Callable, Hashable, Sequence
 from dataclasses import dataclass, replace
@@ -14,9 +15,12 @@ from hydro.eddies import Zone
 
 from .. import text, theme
 from ..choices import Choices
-from ..questions.base import Desk, Sizes
+from ..questions.base import Desk, Question, Sizes
+from ..questions.change import Change
 from ..questions.common import ramp_key, section_html, structures, zone_mark
+from ..questions.drift import Drift
 from ..questions.eddies import Eddies
+from ..questions.passage import Passage
 from ..reading import Reading
 from ..results import Results
 from ..studies import Studies
@@ -109,6 +113,7 @@ class Chapter:
             ],
             "centre": fields.point_list(reach.centre_line.points, mesh) if reach.centre_line is not None else [],
             "sections": [{"name": line.name, "ends": self._page_ends(line)} for line in self.lines],
+            "also": self.also(),
         }
         return block(content, fields.mesh_arrays(mesh, boundaries))
 
@@ -154,10 +159,36 @@ class Chapter:
         try:
             return {
                 "answer": self.question.sentence(desk), "table": self.question.table(desk), "alternative": self.question.alternative(desk),
-                "section": self._section(self.opening, self.lines[0], "wide") if self.lines else "",
+                "section": self._section(self.opening, self.lines[0], "wide") if self.lines else "", "also": self.also(),
             }
         except ValueError as error:
-            return {"answer": frame_words.trouble(str(error)), "table": "", "alternative": text.safe(str(error)), "section": ""}
+            return {"answer": frame_words.trouble(str(error)), "table": "", "alternative": text.safe(str(error)), "section": "", "also": self.also()}
+
+    def also(self) -> str:
+        """What the review's other questions answer in the opening frame, each with its table and its own cautions.
+
+        A question that the review holds nothing for (no wood, no fish, no second design) is left out.
+        """
+        change = Change()
+        asked = (
+            (Drift(), self.studies.has_wood()), (Passage(), bool(self.studies.fish())),
+            (change, bool(change.other(self.desk(self.opening, question=change.key)))),
+        )
+        return "".join(self._answer(question) for question, held in asked if held)
+
+    def _answer(self, question: Question) -> str:
+        desk = self.desk(self.opening, question=question.key)
+        try:
+            sentence, table = question.sentence(desk), question.side(desk).get("table", "")
+        except ValueError as error:
+            sentence, table = frame_words.trouble(str(error)), ""
+        cautions = frame_words.cautions(question.cautions(desk))
+        when = text.moment(self.reading.frame(self.run_id, self.opening).time, float(self.run.times.seconds[self.opening]))
+        html = (
+            f'<section aria-label="{question.word}"><p class="asks">{question.asks} <span>{when}</span></p>'
+            f'<h2 class="answer">{sentence}</h2><div class="evidence">{_without_controls(table)}</div><div class="own">{cautions}</div></section>'
+        )
+        return html.replace("caution-", f"{question.key}-caution-")  # footnotes point to the list beside them
 
     def prepare(self, progress: Callable[[int, int], None]) -> None:
         """Find every frame's eddies and follow them through the run, so that they have lasting names."""
@@ -244,3 +275,10 @@ class Chapter:
             "rotation": mark.rotation, "centre": place(mark.centre), "coarse": mark.coarse, "travelling": mark.travelling,
             "leaves": place(mark.separation), "returns": place(mark.reattachment),
         }
+
+
+def _without_controls(html: str) -> str:
+    """A table whose rows take the reader nowhere: the desk's buttons in it become plain words, its forms go."""
+    html = re.sub(r'<button type="button" class="row"[^>]*>(.*?)</button>', r"\1", html, flags=re.DOTALL)
+    html = re.sub(r"<(button|select|form)\b.*?</\1>", "", html, flags=re.DOTALL)
+    return re.sub(r' data-(?:do|value|key)="[^"]*"', "", html)

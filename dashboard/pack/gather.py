@@ -68,6 +68,7 @@ def gather(
         A run that the review does not list, or a review that cannot be read.
     """
     reading = Reading(path, AtOnce())
+    reading.long = AtOnce()
     matter = reading.matter()
     stops = stops_of(matter.review)
     chosen = [_known(matter, r) for r in runs] or _default_runs(reading, matter, stops)

@@ -25,6 +25,7 @@ const PAGE = (() => {
     state.section = 0;
     $("sections").replaceChildren(...head.sections.map((s, i) => new Option(s.name, i)));
     $("key").innerHTML = head.key;
+    $("also").innerHTML = head.also;
     const last = head.seconds.length - 1;
     $("time").max = last;
     for (const id of ["time", "run-on"]) $(id).hidden = last === 0;

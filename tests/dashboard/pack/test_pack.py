@@ -6,6 +6,7 @@ import base64
 import gzip
 import json
 import re
+import shutil
 from pathlib import Path
 
 import numpy as np
@@ -161,3 +162,18 @@ def test_one_file_asks_for_no_other(pack, tmp_path):
 def test_an_unknown_run_lists_the_known_ones(review):
     with pytest.raises(ValueError, match="flood"):
         gather(review.folder, ["drought"])
+
+
+def test_other_questions_of_the_review_are_answered_with_their_own_cautions(review, tmp_path):
+    """A second run of the same event makes Change answer; its footnotes point to the list beside them."""
+    folder = tmp_path / "review"
+    shutil.copytree(review.folder, folder)
+    document = (folder / "review.toml").read_text("utf-8")
+    again = '[[runs]]\nid = "later"\nname = "Proposed one"\ndesign = "proposed"\nfile = "secret-folder-name.nc"\n'
+    (folder / "review.toml").write_text(f"{document}\n{again}", "utf-8")
+    answers = gather(folder, ["flood"]).places["also"]
+    assert "Proposed one" in answers and "<table>" in answers
+    assert "Where does floating wood go" not in answers  # the review lets no wood go
+    for target in re.findall(r'href="#([^"]+)"', answers):
+        assert f'id="{target}"' in answers
+    assert "<button" not in answers and "data-do" not in answers
