@@ -40,6 +40,21 @@ class Note:
 
 
 @dataclass(frozen=True, eq=False)
+class StoredLevel:
+    """The file's own water level where it also stores depth: kept for the audit, used by no figure.
+
+    ``read(i)`` gives it at frame i on every "face" or "node" of the mesh, m above the run's datum, NaN where
+    missing; ``name`` is the file's. ``beside_depth``: depth is stored on the same places, so that bed plus depth
+    is not carried from others.
+    """
+
+    name: str
+    location: str
+    read: Callable[[int], np.ndarray]
+    beside_depth: bool = True
+
+
+@dataclass(frozen=True, eq=False)
 class Run:
     """Results of one model run.
 
@@ -70,6 +85,8 @@ class Run:
         What the file says of itself (global attributes), as text.
     series : dict
         Discharges that depend on time alone, (frames,) m3/s by the file's name: what links carry.
+    stored_level : StoredLevel or None
+        The file's own level beside its depth; level in every figure is bed + depth.
     """
 
     name: str
@@ -88,6 +105,7 @@ class Run:
     depth_is: str = "mean"
     statements: dict[str, str] = field(default_factory=dict)
     series: dict[str, np.ndarray] = field(default_factory=dict)
+    stored_level: StoredLevel | None = None
 
     @property
     def n_frames(self) -> int:

@@ -86,7 +86,7 @@ class Draft:
                 narrow = {"int64": "int32", "uint32": "int32", "bool": "int8"}.get(values.dtype.name, values.dtype.name)
                 made = file.createVariable(name, np.dtype(narrow), dimensions or ("one",))
                 for key, value in attributes.items():
-                    setattr(made, key, value)
+                    setattr(made, key, np.int32(value) if isinstance(value, np.int64) else value)
                 made[:] = values.astype(narrow) if dimensions else [values]
 
 

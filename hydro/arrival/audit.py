@@ -10,6 +10,7 @@ from ..figure import Figure
 from ..reach import Reach
 from ..run import Run
 from .finding import GRADES, Finding, Material, point
+from .levels import level_findings
 from .mass import mass_findings
 from .mesh import mesh_findings
 from .structures import structure_findings
@@ -47,6 +48,7 @@ _GROUPS: dict[str, Callable[[Material], list[Finding]]] = {
     "structures": structure_findings,
     "times": time_findings,
     "water balance": mass_findings,
+    "levels": level_findings,
     "surface": surface_findings,
     "boundaries": lambda m: _distance(m),
 }

@@ -96,3 +96,12 @@ def fullest(run: Run) -> int:
 def point(xy: np.ndarray) -> tuple[float, float]:
     """A local point as plain numbers."""
     return float(xy[0]), float(xy[1])
+
+
+def first_of_each(found: list[Finding]) -> list[Finding]:
+    """One finding of a kind: the gravest, then the first."""
+    best: dict[str, Finding] = {}
+    for f in found:
+        if f.id not in best or GRADES.index(f.grade) > GRADES.index(best[f.id].grade):
+            best[f.id] = f
+    return list(best.values())

@@ -8,7 +8,7 @@ from ..figure import Figure
 from ..ledger.frames import depth_rate
 from ..reach import CentreLine, automatic_sections
 from ..section import cut, section_figures
-from .finding import Finding, Material, point
+from .finding import Finding, Material, first_of_each, point
 
 WALL_SHARE = 0.01  # of the through-discharge
 SOURCE_SHARE = 0.01
@@ -23,7 +23,7 @@ def mass_findings(m: Material) -> list[Finding]:
     out: list[Finding] = []
     for index in m.chosen():
         out += _frame(m, index)
-    return [*_first_of_each(out), *_storage(m)]
+    return [*first_of_each(out), *_storage(m)]
 
 
 def _maxima() -> Finding:
@@ -175,14 +175,3 @@ def _storage(m: Material) -> list[Finding]:
 def _net(m: Material, index: int) -> float:
     sf = m.sf(index)
     return sf.inflow_m3_s - sf.outflow_m3_s
-
-
-def _first_of_each(found: list[Finding]) -> list[Finding]:
-    """One finding of a kind: the gravest, then the first."""
-    from .finding import GRADES
-
-    best: dict[str, Finding] = {}
-    for f in found:
-        if f.id not in best or GRADES.index(f.grade) > GRADES.index(best[f.id].grade):
-            best[f.id] = f
-    return list(best.values())

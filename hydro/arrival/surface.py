@@ -7,7 +7,7 @@ import numpy as np
 from ..figure import Figure
 from ..reach import CentreLine, automatic_sections
 from ..section import cut, section_figures
-from .finding import Finding, Material, point
+from .finding import Finding, Material, first_of_each, point
 
 SPIKE = 3.0  # times the greatest speed among the faces round it (common practice, no source)
 GREATEST_SPEED = 12.0  # m/s; above it, units are doubted (common practice, no source)
@@ -23,9 +23,7 @@ def surface_findings(m: Material) -> list[Finding]:
     found = []
     for index in m.chosen():
         found += [f for f in (_absurd(m, index), _spike(m, index), _jump(m, index), *_heads(m, index)) if f is not None]
-    from .mass import _first_of_each
-
-    return _first_of_each(found)
+    return first_of_each(found)
 
 
 def _absurd(m: Material, index: int) -> Finding | None:

@@ -11,7 +11,7 @@ import numpy as np
 
 from ..frame import RawFrame, face_bed_and_node_bed, flow_from_edges, of_corners, to_nodes
 from ..mesh import Mesh
-from ..run import Note, Run, TimeAxis
+from ..run import Note, Run, StoredLevel, TimeAxis
 from ..settings import Settings
 from . import faults
 from .crs import Ground
@@ -79,7 +79,7 @@ def make_run(parts: Parts) -> Run:
     return Run(
         parts.name, parts.files, parts.mesh, parts.times, node_bed, face_bed, parts.ground.crs, parts.ground.datum,
         frames, parts.settings, _roughness(parts), parts.boundary_sets, (*parts.ground.notes, *parts.notes), parts.depth_is,
-        parts.statements,
+        parts.statements, stored_level=_stored_level(parts),
     )
 
 
@@ -210,7 +210,7 @@ def _derivations(parts: Parts) -> list[Note]:
     elif level is None:
         notes.append(Note("level = bed + depth", source.name))
     else:
-        notes.append(Note(f"level = bed + depth; the file's own level {level.name} is not used", source.name))
+        notes.append(Note(f"level = bed + depth; the file's own level {level.name} is kept for the audit alone", source.name))
     if source.location != flow.place:
         rule = "the area mean of nodes" if flow.place == "face" else "carried from faces exactly for linear fields"
         text = f"{source.name} stands on {source.location}s and the flow on {flow.stored_on}s: depth is {rule}"
@@ -226,6 +226,16 @@ def _derivations(parts: Parts) -> list[Note]:
         text = "edge discharge counts positive from left to right of an edge, walking from its first node to its second"
         notes.append(Note(text, edge.name))
     return notes
+
+
+def _stored_level(parts: Parts) -> StoredLevel | None:
+    """The file's level, where depth is what the run is made of."""
+    level, depth = parts.fields.get("level"), parts.fields.get("depth")
+    if level is None or depth is None or level.location == "edge":
+        return None
+    read, order = level.read, _order(parts.mesh, level.location)
+    beside = level.location == depth.location == _flow(parts).place
+    return StoredLevel(level.name, level.location, lambda index: read(index, order), beside)
 
 
 def _order(mesh: Mesh, location: str) -> np.ndarray:

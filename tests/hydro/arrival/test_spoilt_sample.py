@@ -14,7 +14,7 @@ from hydro.arrival.ask import request_sheet
 from hydro.frame import RawFrame
 from hydro.mesh import build_mesh
 from hydro.review import SAMPLE, open_review
-from hydro.run import Run, TimeAxis
+from hydro.run import Run, StoredLevel, TimeAxis
 
 STILL, FLOOD = "existing_bankfull_coarse", "existing_flood"
 
@@ -134,6 +134,16 @@ def single_precision(run):
     )
 
 
+def storing_level(run, more=0.0):
+    """The run as from a file that stores its level too, ``more`` (m) above bed plus depth."""
+    return replace(run, stored_level=StoredLevel("level", "face", lambda i: run.face_bed + run.read(i).depth + more))
+
+
+def shifted_level(run):
+    """0.3 m too high on 20 m of the river, about chainage 400 m."""
+    return storing_level(run, 0.3 * (np.abs(_chainage(run) - 400) < 10))
+
+
 def link_left_out(run):
     return replace(run, series={})
 
@@ -173,6 +183,7 @@ SPOILT = [
     (STILL, undeclared_source, "undeclared source", (270, 330)),
     (STILL, speed_spike, "speed spike", (650, 750)),
     (STILL, single_precision, "coordinate step", None),
+    (STILL, shifted_level, "level against depth", (390, 410)),
     (STILL, link_left_out, "link left out", (480, 600)),
     (FLOOD, maximum_envelope, "no continuity", None),
     (FLOOD, missing_frames, "missing frames", None),
@@ -195,6 +206,15 @@ def test_every_spoiling_is_named_at_its_place(name, spoil, named, chainages):
 def test_the_sample_as_it_is_raises_none_of_them(name):
     run, reach = sample(name)
     assert not {f.id for f in audit(run, reach)} & {named for _, _, named, _ in SPOILT}
+
+
+def test_a_stored_level_is_audited_by_its_number_and_one_that_agrees_raises_nothing():
+    """The number is the shift that was put in; rounding as in a file of single precision is no fault."""
+    run, reach = sample(STILL)
+    found = {f.id: f for f in audit(shifted_level(run), reach)}["level against depth"]
+    assert found.figure.value == pytest.approx(0.3, abs=1e-9) and "+0.30 m from bed plus depth" in found.sentence
+    rounding = np.random.default_rng(2).uniform(-5e-6, 5e-6, run.mesh.n_faces)
+    assert "level against depth" not in {f.id for f in audit(storing_level(run, rounding), reach)}
 
 
 def test_the_request_sheet_names_the_frames_spacing_of_each_pier():

@@ -238,6 +238,18 @@ def test_level_and_unit_discharge_give_depth_and_velocity(tmp_path):
     np.testing.assert_allclose(run.frame(2).face_velocity[:, 0], u[2][run.mesh.file_face], rtol=1e-9)
 
 
+def test_a_level_beside_depth_is_kept_and_changes_no_frame(tmp_path):
+    draft = drafts.sound()
+    level = 100 * (draft.values("h") + 30.0)
+    draft.put("wl", ("time", "face"), level, units="cm", long_name="water level", mesh="reach", location="face")
+    run = open_run(draft.write(tmp_path / "run.nc"))
+    same_run(run)
+    kept = run.stored_level
+    assert (kept.name, kept.location, kept.beside_depth) == ("wl", "face", True)
+    np.testing.assert_allclose(kept.read(2), draft.values("h")[2][run.mesh.file_face] + 30.0, atol=1e-9)
+    assert said(run, "the file's own level wl is kept for the audit alone")
+
+
 def test_bed_from_level_less_depth_where_the_file_has_none(tmp_path):
     draft = drafts.sound()
     xy, faces = np.column_stack([draft.values("node_x"), draft.values("node_y")]), draft.values("face_nodes")
