@@ -42,6 +42,9 @@ class Mesh:
         The file's number (from 0) of each node, face and edge here; nodes that no face uses are not here.
     turned_faces : int
         Faces that the file listed clockwise and that were turned.
+    stepped : bool
+        Whether the outline is no model's own but stair steps of cells, or the outermost of joined points: banks
+        and piers then stand up to a cell away from where they are.
     """
 
     node_xy: np.ndarray
@@ -59,6 +62,7 @@ class Mesh:
     file_face: np.ndarray
     file_edge: np.ndarray
     turned_faces: int = 0
+    stepped: bool = False
 
     @property
     def n_nodes(self) -> int:
@@ -168,6 +172,7 @@ def build_mesh(
     *,
     edge_nodes: np.ndarray | None = None,
     origin: tuple[float, float] | None = None,
+    stepped: bool = False,
 ) -> Mesh:
     """A mesh from world coordinates and faces.
 
@@ -182,6 +187,8 @@ def build_mesh(
         an error.
     origin : pair of floats, optional
         World coordinates of the local origin; default :func:`default_origin`.
+    stepped : bool
+        See :class:`Mesh`.
 
     Raises
     ------
@@ -213,7 +220,7 @@ def build_mesh(
     triangle_edges = _triangle_edges(triangles, triangle_face, faces, count, side_edge)
     made = Mesh(
         xy, (float(place[0]), float(place[1])), faces, count, edges, edge_faces, triangles, triangle_face, first, neighbours,
-        triangle_edges, file_node, file_face, file_edge, turned,
+        triangle_edges, file_node, file_face, file_edge, turned, stepped,
     )
     for array in vars(made).values():
         if isinstance(array, np.ndarray):

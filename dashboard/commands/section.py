@@ -4,7 +4,6 @@ from __future__ import annotations
 
 import argparse
 import json
-import sys
 from pathlib import Path
 
 HELP = "a cross-section or a profile: discharge three ways, area, levels, head"
@@ -51,7 +50,7 @@ def run(args: argparse.Namespace) -> int:
             print(text)
             return 0
         write_whole(Path(args.json), text + "\n")
-    _print(table)
+    _print(table, run_.mesh.stepped)
     return 0
 
 
@@ -114,12 +113,12 @@ def _profiles(args, run_, lines) -> int:
     return 0
 
 
-def _print(table) -> None:
+def _print(table, stepped: bool) -> None:
     from hydro.cautions import caution
     from hydro.figure import printed
 
     shown = {
-        "discharge_m3_s": "Q m3/s", "discharge_psi_m3_s": "by psi", "discharge_mid_section_m3_s": "mid-section", "area_m2": "area m2",
+        "discharge_m3_s": "Q m3/s", "discharge_error_m3_s": "read within", "discharge_psi_m3_s": "by psi", "discharge_mid_section_m3_s": "mid-section", "area_m2": "area m2",
         "width_m": "width m", "mean_velocity_m_s": "mean m/s", "froude": "Froude", "mean_level_m": "level m", "head_m": "head m",
     }
     print("".join(f"{h:>14}" for h in ("section", "time", *shown.values())))
@@ -127,4 +126,7 @@ def _print(table) -> None:
         when = (row["time"] or f"{row['seconds']:g} s")[-9:]
         levels = {k: f"{row[k]:.3f}" if row[k] == row[k] and row[k] is not None else "n/a" for k in ("mean_level_m", "head_m")}
         print("".join(f"{v:>14}" for v in (str(row["section"])[:13], when, *(levels.get(k) or printed(row[k]) for k in shown))))
-    print(f"  {caution('section-discharge').text}", file=sys.stdout)
+    banks = " and for banks that are stair steps or joined points, which may miss a cell's width at each" if stepped else ""
+    print(f"  Read within: error of reading Q from this file, by two readings compared{banks}.")
+    for id_ in ("section-discharge", "sensitivity"):
+        print(f"  {caution(id_).text}")

@@ -83,7 +83,8 @@ class Sections(Question):
         u, ids = desk.units, self.cautions(desk)
         note = footnote(ids, "section-discharge")
         rows: tuple[tuple[str, float | None, str], ...] = (
-            (f"Discharge by the field{note}", f.discharge_m3_s, "m3/s"), ("Discharge by psi", f.discharge_psi_m3_s, "m3/s"),
+            (f"Discharge by the field{note}", f.discharge_m3_s, "m3/s"),
+            ("Error of reading it", f.discharge_error_m3_s, "m3/s"), ("Discharge by psi", f.discharge_psi_m3_s, "m3/s"),
             ("Discharge, mid-section", f.discharge_mid_section_m3_s, "m3/s"),
             ("Discharge, mean-section", f.discharge_mean_section_m3_s, "m3/s"),
             ("Width of water", f.width_m, "m"), ("Area", f.area_m2, "m2"), ("Hydraulic radius A/P", f.hydraulic_radius_m, "m"),

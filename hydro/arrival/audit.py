@@ -13,6 +13,7 @@ from .finding import GRADES, Finding, Material, point
 from .levels import level_findings
 from .mass import mass_findings
 from .mesh import mesh_findings
+from .reading import section_findings
 from .structures import structure_findings
 from .surface import surface_findings
 from .times import time_findings
@@ -50,6 +51,7 @@ _GROUPS: dict[str, Callable[[Material], list[Finding]]] = {
     "water balance": mass_findings,
     "levels": level_findings,
     "surface": surface_findings,
+    "sections": section_findings,
     "boundaries": lambda m: _distance(m),
 }
 

@@ -9,7 +9,7 @@ import numpy as np
 
 from ..figure import Figure, Place
 from ..ledger.frames import depth_rate, plan_for
-from ..reach import Reach
+from ..reach import CentreLine, Reach, proposed_centre_line
 from ..run import Run
 from ..streamfunction import Plan, StreamFunction, stream_function
 
@@ -68,6 +68,11 @@ class Material:
     def chosen(self) -> list[int]:
         """Frames that stand for the run: the first, the fullest, and the last."""
         return sorted({0, self.run.n_frames - 1, fullest(self.run)})
+
+    @cached_property
+    def axis(self) -> CentreLine:
+        """The centre line, else a straight one along the mean flow of the first frame."""
+        return self.reach.centre_line or proposed_centre_line(self.run.mesh.node_xy, self.run.frame(0).unit_discharge.mean(axis=0) + [1e-12, 0])
 
     def place(self, at: np.ndarray) -> Place:
         """World place of a local point with chainage and offset."""

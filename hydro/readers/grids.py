@@ -155,7 +155,7 @@ def _mesh(store, grid: Grid, cells: bool, has_bed: np.ndarray, factor: float, or
     faults.check_coordinates(file, names, xy, faces)
     faults.check_faces(file, xy, faces)
     try:
-        mesh = build_mesh(xy, faces.astype(np.int32), origin=origin)
+        mesh = build_mesh(xy, faces.astype(np.int32), origin=origin, stepped=True)
     except ValueError as error:
         raise ValueError(f"{file}: {error}") from None
     faults.check_mesh(file, mesh)

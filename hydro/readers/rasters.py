@@ -70,7 +70,7 @@ def open_rasters(files: list[Path], asked: Asked) -> Run:
     system = _system(first, said)
     factor = 1.0 if system is None else system_factor(system)
     place = ground(system, factor, said.plain.get("datum", ""), "", files[0].name)
-    mesh = build_mesh(_corners(first) * factor, quads(*first.shape)[kept].astype(np.int32), origin=asked.origin)
+    mesh = build_mesh(_corners(first) * factor, quads(*first.shape)[kept].astype(np.int32), origin=asked.origin, stepped=True)
     faults.check_coordinates(files[0].name, "of the raster", mesh.to_world(mesh.node_xy), mesh.face_nodes)
     size = float(np.sqrt(np.median(mesh.face_area)))
     text = f"cells of a raster, {size:.3g} m wide: banks and piers are stair steps, there are no edges of the model"

@@ -136,7 +136,7 @@ def mesh_of_points(file: str, xy: np.ndarray, origin: tuple[float, float] | None
         )
         notes = [Note(text, "", spanning)]
     faults.check_coordinates(file, "x, y", xy, cells)
-    mesh = build_mesh(xy, cells.astype(np.int32), origin=origin)
+    mesh = build_mesh(xy, cells.astype(np.int32), origin=origin, stepped=True)
     if mesh.n_nodes < len(xy):
         notes.append(Note("points that belong to no face are left out", "", len(xy) - mesh.n_nodes))
     return mesh, "node", notes

@@ -25,7 +25,7 @@ from .eddies import Reading, source
 from .model import Part, Table
 
 _SECTION = (
-    ("discharge_m3_s", "m3/s"), ("discharge_psi_m3_s", "m3/s"), ("discharge_mid_section_m3_s", "m3/s"), ("area_m2", "m2"),
+    ("discharge_m3_s", "m3/s"), ("discharge_error_m3_s", "m3/s"), ("discharge_psi_m3_s", "m3/s"), ("discharge_mid_section_m3_s", "m3/s"), ("area_m2", "m2"),
     ("width_m", "m"), ("mean_velocity_m_s", "m/s"), ("froude", "-"), ("mean_level_m", "m"), ("head_m", "m"),
 )
 
@@ -64,7 +64,7 @@ def sections(readings: Sequence[Reading]) -> Part:
             rows.append((line.name, *(
                 Figure(name, found[name], unit, cautions=("section-discharge",), source=at, note="not available") for name, unit in _SECTION
             )))
-        columns = ("Section", "Q, m3/s", "Q by psi, m3/s", "Q mid-section, m3/s", "Area, m2", "Width, m", "Mean speed, m/s", "Froude", "Level, m", "Head, m")
+        columns = ("Section", "Q, m3/s", "Read within, m3/s", "Q by psi, m3/s", "Q mid-section, m3/s", "Area, m2", "Width, m", "Mean speed, m/s", "Froude", "Level, m", "Head, m")
         tables.append(Table(f"sections-{r.entry.id}", f"Sections, {r.entry.label}", columns, tuple(rows)))
     formulas = Table("formulas", "How the figures of a section are made", ("Figure", "Formula"), tuple(FORMULAS.items()))
     return Part("sections", "Sections", (), (*tables, formulas), cautions=("section-discharge",))

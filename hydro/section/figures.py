@@ -16,6 +16,7 @@ from ..settings import Settings
 from ..streamfunction import StreamFunction
 from ..transfer import barycentric
 from .cut import Section
+from .error import reading_error
 
 # Three-point Gauss rule on [0, 1]: exact for the cubes of linear depth and flow.
 _AT = 0.5 + np.array([-np.sqrt(0.6), 0.0, np.sqrt(0.6)]) / 2
@@ -23,6 +24,7 @@ _WEIGHT = np.array([5.0, 8.0, 5.0]) / 18
 
 FORMULAS = {
     "discharge_m3_s": "sum of the frame's own unit discharge across the line times the length of each piece",
+    "discharge_error_m3_s": "two readings of the file compared over each face, doubled; with stepped banks a cell of flow at each",
     "discharge_psi_m3_s": "psi at the left end minus psi at the right end",
     "discharge_mid_section_m3_s": "sum of v d (b[i+1] - b[i-1]) / 2 (ISO 748)",
     "discharge_mean_section_m3_s": "sum of (v[i] + v[i+1])/2 (d[i] + d[i+1])/2 (b[i+1] - b[i]) (ISO 748)",
@@ -49,6 +51,7 @@ class SectionFigures:
     """
 
     discharge_m3_s: float
+    discharge_error_m3_s: float
     discharge_psi_m3_s: float | None
     discharge_mid_section_m3_s: float
     discharge_mean_section_m3_s: float
@@ -95,7 +98,7 @@ def section_figures(section: Section, *, sf: StreamFunction | None = None, setti
     if area > 0 and alpha is not None and alpha > 0:
         froude = abs(discharge) / area * float(np.sqrt(alpha * top / (g * area)))
     return SectionFigures(
-        discharge, psi_discharge(section, sf), mid, mean, top, area, perimeter,
+        discharge, reading_error(section).total_m3_s, psi_discharge(section, sf), mid, mean, top, area, perimeter,
         area / perimeter if perimeter > 0 else None, area / top if top > 0 else None,
         float(depth.max(initial=0.0)), discharge / area if area > 0 else None, float(np.abs(v).max(initial=0.0)),
         froude, alpha, beta,
