@@ -10,6 +10,7 @@ from urllib.parse import parse_qsl, urlencode
 QUESTIONS = ("arrival", "eddies", "drift", "passage", "sections", "change", "record")
 SHADES = ("speed", "depth")
 TUBES = (11, 22, 44)
+COURSES = ("discharge", "level", "head", "speed", "area")  # of a section, through time
 UNITS = ("SI", "US survey feet", "international feet")
 MODES = ("day", "night")
 
@@ -18,8 +19,10 @@ MODES = ("day", "night")
 class Choices:
     """Everything a view depends on; two people with the same choices see the same.
 
-    ``seconds`` counts from the run's first frame (None: the question's own choice). ``section`` is the
-    world (x, y) of its left and right end and ``view`` the world centre and width of the map in m, None
+    ``seconds`` counts from the run's first frame (None: the question's own choice); ``window`` is the time
+    from and to, counted alike, whose mean flow is looked at in place of one moment. ``section`` is the
+    world (x, y) of its left and right end, ``beside`` the name of a second one to compare it with, ``course``
+    the figure of it that the ribbon shows, and ``view`` the world centre and width of the map in m, None
     where the question chooses. ``run`` and ``against`` are ids of the review, ``subject`` names what the
     map and the sentence speak of.
     """
@@ -28,8 +31,11 @@ class Choices:
     run: str = ""
     against: str = ""
     seconds: float | None = None
+    window: tuple[float, float] | None = None
     subject: str = ""
     section: tuple[float, float, float, float] | None = None
+    beside: str = ""
+    course: str = "discharge"
     view: tuple[float, float, float] | None = None
     shade: str = "speed"
     tubes: int = 22
@@ -60,7 +66,7 @@ class Choices:
         return urlencode(pairs, safe=",:")
 
 
-_OFFERED = {"question": QUESTIONS, "shade": SHADES, "units": UNITS, "mode": MODES, "tubes": TUBES}
+_OFFERED = {"question": QUESTIONS, "shade": SHADES, "units": UNITS, "mode": MODES, "tubes": TUBES, "course": COURSES}
 
 
 def from_query(query: str, start: Choices | None = None) -> Choices:
@@ -126,7 +132,7 @@ class History:
 
 
 _SWEPT = frozenset({"seconds", "view", "section"})
-_NUMBERS = {"section": 4, "view": 3}
+_NUMBERS = {"section": 4, "view": 3, "window": 2}
 
 
 def _written(value: object) -> str:
@@ -143,7 +149,7 @@ def _read(name: str, text: str) -> object:
     try:
         if name in _NUMBERS:
             values = tuple(_finite(v) for v in text.split(","))
-            if len(values) != _NUMBERS[name] or (name == "view" and values[2] <= 0):
+            if len(values) != _NUMBERS[name] or (name == "view" and values[2] <= 0) or (name == "window" and values[0] >= values[1]):
                 raise ValueError
             return values
         if name == "seconds":

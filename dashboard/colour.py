@@ -24,6 +24,11 @@ def hexed(colour: np.ndarray) -> str:
     return "#" + "".join(f"{int(round(v * 255)):02x}" for v in np.clip(colour, 0, 1))
 
 
+def mixed(first: str, second: str, share: float) -> str:
+    """"#rrggbb" of two colours mixed in sRGB, ``share`` of the first."""
+    return hexed(share * rgb(first) + (1 - share) * rgb(second))
+
+
 def lab(colour: np.ndarray) -> np.ndarray:
     """CIELAB (..., 3) of sRGB (..., 3); IEC 61966-2-1 and CIE 15."""
     linear = np.where(colour <= 0.04045, colour / 12.92, ((colour + 0.055) / 1.055) ** 2.4)

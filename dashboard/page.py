@@ -9,16 +9,19 @@ from typing import Any
 
 import numpy as np
 
-from hydro.queries import ask
+from hydro.queries import ask, change
 
 from . import theme
 from .choices import Choices, History, from_query
-from .questions import QUESTIONS
+from .questions import QUESTIONS, saving
 from .questions.base import Desk, Question, Sizes
+from .questions.moments import window_for, window_of
+from .questions.stations import typed_ends
 from .raster import View
 from .reading import STORY
 from .results import Working
 from .screen import Screen
+from .sheets import File
 from .stops import Stop, keep, stops_of
 from .studies import QUERIES, SHARES, TRIED, Studies
 from .views.figure import MapFigure
@@ -45,6 +48,7 @@ class Page:
     def __init__(self, studies: Studies, query: str, later: Callable[[Callable[[], None]], None]) -> None:
         self.studies, self.reading, self.later = studies, studies.reading, later
         self.trouble = ""
+        self.name = ""  # of the reader, once given
         try:
             start = from_query(query)
         except ValueError as error:
@@ -54,6 +58,8 @@ class Page:
         self.own_section = start.section is not None
         self.push, self.sent = False, 0
         self.stop: int | None = None  # the saved view that is shown
+        self.file: File | None = None  # to be handed to the reader with the next drawing
+        self.files_sent = 0
         self.map = MapFigure((0.0, 0.0, 100.0, 54.0), moved=self._moved)
         self.wire = Wire(self.hear)
         self.screen = Screen()
@@ -98,7 +104,7 @@ class Page:
     def choose(self, **changed: object) -> None:
         """Take new choices into the history."""
         self.stop = None
-        self.push = self.history.go(self.choices.with_(**changed)) and not set(changed) <= {"seconds", "view", "section"}
+        self.push = self.history.go(self.choices.with_(**changed)) and not set(changed) <= {"seconds", "window", "view", "section"} or bool(changed.get("window"))
 
     def on_question(self, key: str) -> None:
         self.choose(question=key)
@@ -109,12 +115,24 @@ class Page:
     def on_run(self, run_id: str) -> None:
         if run_id not in [id_ for id_, _ in self.reading.matter().runs]:
             raise ValueError(f"there is no run {run_id!r} in this review.")
-        self.choose(run=run_id, seconds=None)
+        self.choose(run=run_id, seconds=None, window=None)
 
     def on_frame(self, value: dict) -> None:
         self.sent = int(value.get("sent", 0))
         times = self.question.times(self.desk())
-        self.choose(seconds=float(times[int(np.clip(int(value["index"]), 0, len(times) - 1))]))
+        self.choose(seconds=float(times[int(np.clip(int(value["index"]), 0, len(times) - 1))]), window=None)
+
+    def on_seconds(self, value: str) -> None:
+        self.choose(seconds=float(value), window=None)
+
+    def on_moment(self, word: str) -> None:
+        desk, eddies = self.desk(), QUESTIONS["eddies"]
+        self.choose(window=window_for(desk, word, eddies.subject(desk)))  # type: ignore[attr-defined]
+
+    def on_window(self, form: dict) -> None:
+        window = window_of(form)
+        self.desk().run.window(*window)  # raises where it holds no frame
+        self.choose(window=window)
 
     def on_section(self, value: dict) -> None:
         self.sent = int(value.get("sent", 0))
@@ -124,6 +142,16 @@ class Page:
         world = self.desk().run.mesh.to_world(local).round(2)
         self.own_section = True
         self.choose(section=tuple(float(v) for v in world.ravel()))
+
+    def on_ends(self, form: dict) -> None:
+        self.own_section = True
+        self.choose(section=tuple(round(v, 2) for v in typed_ends(form)), view=None)
+
+    def on_beside(self, name: str) -> None:
+        self.choose(beside=name)
+
+    def on_course(self, value: str) -> None:
+        self.choose(course=value)
 
     def on_line(self, name: str) -> None:
         found = QUESTIONS["sections"].named(self.desk())  # type: ignore[attr-defined]
@@ -140,10 +168,36 @@ class Page:
         if review is None:
             raise ValueError("queries are kept in a review; open one to write them.")
         x, y = self.choices.view[:2] if self.choices.view else (None, None)
+        self.name = str(form.get("who", ""))[:200]
         ask(
-            review.folder, str(form.get("text", ""))[:2000], who=str(form.get("who", ""))[:200], run=self.desk().run_id,
-            x=x, y=y, seconds=self.choices.seconds, view=self.choices.query(),
+            review.folder, str(form.get("text", ""))[:2000], who=self.name, run=self.desk().run_id, x=x, y=y,
+            seconds=self.choices.seconds, view=self.choices.query(),
+            **{name: str(form[name])[:200] for name in ("importance", "asked_of", "due") if form.get(name)},
         )
+        self.reading.results.tell(QUERIES)
+
+    def on_raise(self, number: str) -> None:
+        """Make a finding a query."""
+        desk, review = self.desk(), self.reading.matter().review
+        if review is None:
+            raise ValueError("queries are kept in a review; open one to write them.")
+        finding = QUESTIONS["arrival"].findings(desk)[int(number) - 1]  # type: ignore[attr-defined]
+        x, y = desk.run.mesh.to_world(np.array(finding.at)) if finding.at is not None else (None, None)
+        grave = finding.grade == "resolve before use"
+        ask(
+            review.folder, f"{finding.sentence} {finding.question}"[:2000], who=self.name or "the desk", run=desk.run_id, x=x, y=y,
+            seconds=self.choices.seconds, view=self.choices.with_(subject=number, view=None).query(),
+            importance="could change the decision" if grave else "clarify",
+        )
+        self.reading.results.tell(QUERIES)
+
+    def on_answer(self, form: dict) -> None:
+        review = self.reading.matter().review
+        if review is None:
+            raise ValueError("queries are kept in a review; open one to answer them.")
+        self.name = str(form.get("who", ""))[:200]
+        told = {name: str(form[name])[:2000] for name in ("state", "answer", "file_received") if form.get(name)}
+        change(review.folder, int(form["number"]), who=self.name, **told)
         self.reading.results.tell(QUERIES)
 
     def on_record(self, _: str) -> None:
@@ -171,6 +225,18 @@ class Page:
 
     def on_follow(self, query: str) -> None:
         self.choose(**{f.name: getattr(from_query(query), f.name) for f in fields(Choices)})
+
+    def on_save(self, what: str) -> None:
+        view = self.view()
+        self.file = saving.file_of(self.question, self.desk(view), view, what)
+
+    def file_to_send(self) -> dict[str, object] | None:
+        """The file asked for, once."""
+        file, self.file = self.file, None
+        if file is None:
+            return None
+        self.files_sent += 1
+        return {"number": self.files_sent, "name": file.name, "text": file.text, "picture": file.picture}
 
     def on_shade(self, value: str) -> None:
         self.choose(shade=value)

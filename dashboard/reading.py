@@ -12,14 +12,26 @@ from pathlib import Path
 from typing import Any
 
 import numpy as np
+from shapely.geometry.base import BaseGeometry
 
 from hydro.contours import contour_lines, tube_levels
 from hydro.eddies import Zone
 from hydro.frame import Frame
-from hydro.ledger import FrameLedger, FrameReader, Life, follow, lumped_area
+from hydro.ledger import (
+    FrameLedger,
+    FrameReader,
+    FrameSummary,
+    Instants,
+    Life,
+    follow,
+    instants_of,
+    lumped_area,
+    twin_of,
+)
 from hydro.reach import CentreLine, Reach, proposed_centre_line
 from hydro.review import Review, open_any
 from hydro.run import Run
+from hydro.section import SectionFigures, cut, section_figures
 
 from .raster import Canvas, IndexRaster, View, canvas
 from .results import AHEAD, NOW, Results, Working
@@ -27,6 +39,8 @@ from .views.shore import shoreline
 
 _PIXELS_KEPT = 12_000_000  # triangles held in remembered frames, over all of them
 STORY = "story"
+Ends = tuple[tuple[float, float], tuple[float, float]]  # of a section, local m, left bank first
+Moment = int | tuple[float, float]  # a frame's index, or the mean between two times, s from the first frame
 
 
 @dataclass(frozen=True, eq=False)
@@ -87,6 +101,14 @@ class Story:
         return self.done == len(self.beats)
 
 
+@dataclass(frozen=True, eq=False)
+class Instances:
+    """The single moments of a window: what they say about each eddy of the mean, by id, and its outline in each."""
+
+    found: dict[str, Instants]
+    outlines: dict[str, tuple[BaseGeometry, ...]]
+
+
 class Reading:
     """Results for one path, shared by all who look at it.
 
@@ -123,17 +145,23 @@ class Reading:
 
         return self.results.get(("reach", run_id), make, label="Placing the review's lines.")
 
-    def frame(self, run_id: str, index: int) -> Frame:
+    def frame(self, run_id: str, moment: Moment) -> Frame:
         run = self.run(run_id)
-        return self.results.get(("frame", run_id, index), lambda: run.frame(index), label="Reading the frame.", heavy=True)
+        if isinstance(moment, tuple):
+            return self.entry(run_id, moment).frame
+        return self.results.get(("frame", run_id, moment), lambda: run.frame(moment), label="Reading the frame.", heavy=True)
 
-    def ledger(self, run_id: str, index: int) -> FrameLedger:
-        """Stream function and eddies of one frame.
+    def ledger(self, run_id: str, moment: Moment) -> FrameLedger:
+        """Stream function and eddies of one frame or of a mean flow.
 
-        Eddies have lasting ids (E1, E2 ...) once they were followed through the run; until then they are
-        numbered within the frame (1, 2 ...).
+        Eddies of a frame have lasting ids (E1, E2 ...) once they were followed through the run; until then they
+        are numbered within the frame (1, 2 ...). Those of a mean flow are M1, M2 ...
         """
-        entry = self.entry(run_id, index)
+        entry = self.entry(run_id, moment)
+        if isinstance(moment, tuple):
+            zones = tuple(replace(z, id=f"M{k + 1}") for k, z in enumerate(entry.zones.zones))
+            return replace(entry, zones=replace(entry.zones, zones=zones))
+        index = moment
         if self.run(run_id).n_frames == 1:
             return entry
         followed = self.results.peek(("followed", run_id))
@@ -143,32 +171,50 @@ class Reading:
             zones = tuple(replace(z, id=str(k + 1)) for k, z in enumerate(entry.zones.zones))
         return replace(entry, zones=replace(entry.zones, zones=zones))
 
-    def entry(self, run_id: str, index: int, *, rank: int = NOW) -> FrameLedger:
-        """Stream function and eddies of one frame, numbered within it."""
+    def entry(self, run_id: str, moment: Moment, *, rank: int = NOW) -> FrameLedger:
+        """Stream function and eddies of one frame or of a mean flow, numbered within it."""
         run = self.run(run_id)
 
         def make() -> FrameLedger:
             if run_id not in self._readers:
                 self._readers[run_id] = FrameReader(run, reach=self.reach(run_id))
-            return self._readers[run_id].frame(index)
+            reader = self._readers[run_id]
+            return reader.mean(*moment) if isinstance(moment, tuple) else reader.frame(moment)
 
         return self.results.get(
-            ("ledger", run_id, index), make, label="Finding the stream function and its eddies.", rank=rank, heavy=True,
+            ("ledger", run_id, moment), make, label="Finding the stream function and its eddies.", rank=rank, heavy=True,
         )
 
-    def shore(self, run_id: str, index: int) -> tuple[np.ndarray, ...]:
+    def instants(self, run_id: str, window: tuple[float, float]) -> Instances | None:
+        """What the moments of a window say about each eddy of its mean flow; None until all were read."""
+        if self.results.peek(("followed", run_id)) is None:
+            return None
+        run, ledger = self.run(run_id), self.ledger(run_id, window)
+
+        def make() -> Instances:
+            chosen, _ = run.window(*window)
+            beats = [(int(i), self.results.peek(("beat", run_id, int(i)))) for i in chosen]
+            known = [FrameSummary(i, beat.seconds, {}, beat.zones) for i, beat in beats if beat is not None]
+            area = lumped_area(run.mesh)
+            twins = {z.id: [twin_of(z, s.zones, area) for s in known] for z in ledger.zones.zones}
+            outlines = {id_: tuple(t.contour for t in own if t is not None) for id_, own in twins.items()}
+            return Instances(instants_of(self._readers[run_id], ledger, known), outlines)
+
+        return self.results.get(("instants", run_id, window), make, label="Reading the moments of the mean.")
+
+    def shore(self, run_id: str, moment: Moment) -> tuple[np.ndarray, ...]:
         """The waterline, with the water on the left of its lines."""
 
         def make() -> tuple[np.ndarray, ...]:
-            boundaries = self.entry(run_id, index).sf.open_boundaries if self._has_psi(run_id, index) else ()
+            boundaries = self.entry(run_id, moment).sf.open_boundaries if self._has_psi(run_id, moment) else ()
             edges = [b.edges for b in boundaries]
-            return tuple(shoreline(self.frame(run_id, index), np.concatenate(edges) if edges else None))
+            return tuple(shoreline(self.frame(run_id, moment), np.concatenate(edges) if edges else None))
 
-        return self.results.get(("shore", run_id, index), make, label="Drawing the waterline.", heavy=True)
+        return self.results.get(("shore", run_id, moment), make, label="Drawing the waterline.", heavy=True)
 
-    def tubes(self, run_id: str, index: int, count: int) -> tuple[tuple[np.ndarray, ...], float]:
-        """Lines between the stream tubes of one frame, and the discharge of one tube, m3/s."""
-        ledger = self.entry(run_id, index)
+    def tubes(self, run_id: str, moment: Moment, count: int) -> tuple[tuple[np.ndarray, ...], float]:
+        """Lines between the stream tubes of one moment, and the discharge of one tube, m3/s."""
+        ledger = self.entry(run_id, moment)
 
         def make() -> tuple[tuple[np.ndarray, ...], float]:
             sf, mesh = ledger.sf, ledger.frame.mesh
@@ -176,7 +222,7 @@ class Reading:
             lines = [line for level in levels for line in contour_lines(mesh, sf.psi, level, sf.domain)]
             return tuple(lines), float(np.median(np.diff(levels))) if len(levels) > 1 else 0.0
 
-        return self.results.get(("tubes", run_id, index, count), make, label="Drawing the stream tubes.", heavy=True)
+        return self.results.get(("tubes", run_id, moment, count), make, label="Drawing the stream tubes.", heavy=True)
 
     def top(self, run_id: str, shade: str) -> float:
         """The end of the ramp for a run, one for all its frames: a round value above most of the water's."""
@@ -224,6 +270,20 @@ class Reading:
             followed = self.results.peek(("followed", run_id))
         return Story(tuple(beats), done, followed)
 
+    def stations(self, run_id: str, ends: Ends) -> list[SectionFigures | None]:
+        """Figures of a section (local m) in every frame, None where not known yet; asks for those to be made."""
+        run, centre = self.run(run_id), self.reach(run_id).centre_line
+
+        def make(index: int) -> SectionFigures:
+            return section_figures(cut(self.frame(run_id, index), np.array(ends), centre_line=centre), settings=run.settings)
+
+        known = []
+        for i in range(run.n_frames):
+            key = ("station", run_id, ends, i)
+            self.results.ahead(key, partial(make, i), label="Following the section.", group=STORY)
+            known.append(self.results.peek(key))
+        return known
+
     def label(self, run_id: str) -> str:
         """What a run is called."""
         return dict(self.matter().runs)[run_id]
@@ -254,8 +314,8 @@ class Reading:
         )
         return Followed(tuple(lives), dict(zip(known, zones)))
 
-    def _has_psi(self, run_id: str, index: int) -> bool:
-        return self.run(run_id).times.kinds[index] != "maximum"
+    def _has_psi(self, run_id: str, moment: Moment) -> bool:
+        return isinstance(moment, tuple) or self.run(run_id).times.kinds[moment] != "maximum"
 
     def _opened_run(self, matter: Matter, run_id: str) -> Run:
         run = matter.review.open(run_id) if matter.review is not None else matter.alone
@@ -286,4 +346,4 @@ def _round_up(value: float) -> float:
     return float(next(s * power for s in (1, 1.5, 2, 3, 4, 5, 8, 10) if s * power >= value * 0.999))
 
 
-__all__ = ["Beat", "Matter", "Reading", "Story", "Working"]
+__all__ = ["Beat", "Matter", "Moment", "Reading", "Story", "Working"]

@@ -7,9 +7,11 @@ from dataclasses import replace
 from functools import partial
 from typing import TYPE_CHECKING, Any
 
+import numpy as np
+
 from . import text
 from .choices import UNITS
-from .questions import QUESTIONS
+from .questions import QUESTIONS, saving
 from .questions.base import Desk
 from .raster import View
 from .reading import STORY
@@ -76,6 +78,9 @@ class Screen:
         ):
             self._part(name, due, partial(self._made, name, make))
         self._part("side", due, lambda: self.slots.update({"section": "", "table": "", "body": "", **question.side(desk)}))
+        awaited = _ready(question.awaited, desk)
+        if awaited:
+            self.waits.setdefault("ribbon", set()).update(awaited)
         self._standing(page, desk)
         self._story(page, desk)
         page.wire.param.update(slots=dict(self.slots), state=self._state(page, desk))
@@ -128,15 +133,7 @@ class Screen:
         self._scene = scene
         sheet = drawing.draw(scene, view, look)
         self._hidden = sheet.hidden
-        picture = picture_view = None
-        if scene.water is not None:
-            ratio = min(max(desk.sizes.ratio, 1.0), 2.0)
-            wide = view.widened(_PICTURE_SHARE)
-            picture_view = replace(wide, columns=round(wide.columns * ratio), rows=round(wide.rows * ratio))
-            raster = desk.reading.raster(desk.run_id, picture_view)
-            w = scene.water
-            picture = raster.paint(w.frame, w.value, w.top, psi=w.psi, tube=w.tube_m3_s, carries=w.carries)
-        page.map.show(sheet, picture, picture_view)
+        page.map.show(sheet, *picture_of(scene, desk, view))
         self._put("caption", self._caption(page, desk, view))
         self._put("scale", marks.scale_bar(view.step, desk.units, label=look.label_px) + marks.north())
         missing = self._missing(desk)
@@ -146,7 +143,7 @@ class Screen:
     def _missing(self, desk: Desk) -> Working | None:
         """The map shows only water until psi is there: then it is drawn again."""
         try:
-            desk.reading.tubes(desk.run_id, desk.index, desk.choices.tubes)
+            desk.reading.tubes(desk.run_id, desk.moment, desk.choices.tubes)
         except Working as working:
             return working
         except ValueError:
@@ -161,7 +158,7 @@ class Screen:
             f'<button type="button" class="word" data-do="zoom" data-value="{value}" data-key="zoom-{value}">{label}</button> '
             for value, label in (*page.question.places, ("nearer", "nearer"), ("farther", "farther"), ("whole", "whole reach"))
         )
-        return f"<span>{words}</span><span class=zoom>{zoom}</span>"
+        return f"<span>{words}</span><span class=zoom>{zoom}{saving.words(page.question)}</span>"
 
     # ---- what stands on every screen ----------------------------------------------------------------
 
@@ -230,7 +227,7 @@ class Screen:
             "mode": choices.mode, "view": "hall" if choices.hall else "desk", "question": choices.question,
             "query": choices.query(), "push": page.push, "title": f"{page.question.word} \u00b7 Leewater",
             "stop": "yes" if self.at_stop else "", "working": "yes" if self.said else "no", "ends": None, "time": None,
-            "arrangement": "map" if page.question.has_map else "words",
+            "arrangement": "map" if page.question.has_map else "words", "file": page.file_to_send(),
         }
         if all(isinstance(key, tuple) and key[0] == "followed" for key in self.waits.get("map", ())):
             state["seen"] = page.sent
@@ -238,6 +235,18 @@ class Screen:
         state["ends"] = [list(end) for end in ends] if ends else None
         state["time"] = _ready(page.question.moments, desk) if page.question.has_time else None
         return state
+
+
+def picture_of(scene: Scene, desk: Desk, view: View) -> tuple[np.ndarray | None, View | None]:
+    """The water's palette bytes, and the somewhat wider view that they fill; None where there is no water."""
+    w = scene.water
+    if w is None:
+        return None, None
+    ratio = min(max(desk.sizes.ratio, 1.0), 2.0)
+    wide = view.widened(_PICTURE_SHARE)
+    wide = replace(wide, columns=round(wide.columns * ratio), rows=round(wide.rows * ratio))
+    raster = desk.reading.raster(desk.run_id, wide)
+    return raster.paint(w.frame, w.value, w.top, psi=w.psi, tube=w.tube_m3_s, carries=w.carries), wide
 
 
 def _ready(make: Callable[[Desk], Any], desk: Desk) -> Any:

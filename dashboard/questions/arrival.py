@@ -7,17 +7,14 @@ from dataclasses import replace
 import numpy as np
 
 from hydro.arrival import Finding
-from hydro.queries import Query
 
 from .. import text
 from ..raster import View
+from ..views import query_log, table
 from ..views import ribbon as strip
-from ..views import table
 from ..views.scene import PointMark, Scene
 from . import common
 from .base import Desk, Question
-
-_WORDS = {"resolve before use": "resolve before use", "ask": "ask", "note": "note"}
 
 
 class Arrival(Question):
@@ -27,6 +24,7 @@ class Arrival(Question):
     word = "Arrival"
     asks = "What has arrived, and what must be asked?"
     places = (("subject", "the finding"),)
+    numbered = ("findings",)
 
     def summary(self, desk: Desk) -> str:
         found = desk.reading.known(("audit", desk.run_id))
@@ -86,9 +84,10 @@ class Arrival(Question):
         return common.moments(desk)
 
     def side(self, desk: Desk) -> dict[str, str]:
+        asks = desk.reading.matter().review is not None
         lines = [
             table.Line(
-                ((str(i), ""), (_WORDS[f.grade], ""), (text.safe(f.sentence), f"{text.safe(f.meaning)} <b>{text.safe(f.question)}</b>")),
+                ((str(i), ""), (f.grade, _ask(i) if asks else ""), (text.safe(f.sentence), f"{text.safe(f.meaning)} <b>{text.safe(f.question)}</b>")),
                 str(i) == desk.choices.subject, ("subject", str(i)), f"Show finding {i}",
             )
             for i, f in enumerate(self.findings(desk), 1)
@@ -102,18 +101,17 @@ class Arrival(Question):
         items = desk.studies.queries()
         if items is None:
             return '<h2>Queries</h2><p>Queries are kept in a review; this is a results file alone.</p>'
-        columns = (
-            table.Column("No.", figure=False), table.Column("Query", figure=False), table.Column("State", figure=False),
-            table.Column("By", figure=False),
-        )
-        lines = [_query(q) for q in items]
-        log = table.html(table.Table("Queries", f"{len(items)} in the log", "Queries of the review", columns, lines, "No query yet."))
-        form = (
-            '<form data-send="ask" class="ask"><label>Your name <input type="text" name="who" id="ask-who" autocomplete="name" '
-            'required></label><label>Query <input type="text" name="text" id="ask-text" data-once required></label>'
-            '<button type="submit" class="plain first">Write the query</button></form>'
-        )
-        return log + form
+        return query_log.html(items)
+
+    def numbers(self, desk: Desk, which: str) -> tuple[list[dict[str, object]], str]:
+        rows: list[dict[str, object]] = []
+        for number, f in enumerate(self.findings(desk), 1):
+            x, y = desk.run.mesh.to_world(np.array(f.at)) if f.at is not None else (None, None)
+            rows.append({
+                "number": number, "id": f.id, "grade": f.grade, "finding": f.sentence, "meaning": f.meaning, "ask": f.question,
+                "x": x, "y": y, "frame": f.frame,
+            })
+        return rows, f"leewater arrival {desk.run.files[0].name} --json FILE"
 
     def cautions(self, desk: Desk) -> tuple[str, ...]:
         return ("screening", "wake-detail", "no-roller")
@@ -123,10 +121,8 @@ class Arrival(Question):
         return desk.studies.audit(desk.run_id)
 
 
-def _query(q: Query) -> table.Line:
-    place = f"{q.x:.1f} E, {q.y:.1f} N" if q.x is not None and q.y is not None else ""
-    answer = f"Answer: {q.answer}" if q.answer else place
-    return table.Line(
-        ((str(q.number), ""), (text.safe(q.text), text.safe(answer)), (text.safe(q.state), text.safe(q.date)), (text.safe(q.author), "")),
-        go=("follow", q.view) if q.view else None, label=f"Open the view of query {q.number}",
+def _ask(number: int) -> str:
+    return (
+        f'<button type="button" class="word" data-do="raise" data-value="{number}" data-key="raise-{number}" '
+        f'aria-label="Make finding {number} a query">make it a query</button>'
     )

@@ -6,6 +6,7 @@ A question is given a :class:`Desk` and answers in words, marks and tables. Any 
 
 from __future__ import annotations
 
+from collections.abc import Hashable
 from dataclasses import dataclass, field
 
 import numpy as np
@@ -15,11 +16,13 @@ from hydro.run import Run
 
 from ..choices import Choices
 from ..raster import View
-from ..reading import Reading
+from ..reading import Moment, Reading
 from ..studies import Studies
 from ..theme import Look
 from ..units import Units
 from ..views.scene import Scene
+
+_OF_MEANS = ("eddies", "sections")  # questions that can be asked of a mean flow
 
 
 @dataclass(frozen=True, slots=True)
@@ -68,6 +71,12 @@ class Desk:
         run = self.run
         return run.n_frames - 1 if self.choices.seconds is None else run.nearest(self.choices.seconds)
 
+    @property
+    def moment(self) -> Moment:
+        """The chosen frame, or the chosen window of a run of several frames."""
+        window = self.choices.window if self.choices.question in _OF_MEANS else None
+        return window if window is not None and self.run.n_frames > 1 else self.index
+
 
 class Question:
     """The interface, and what holds where a question says nothing else."""
@@ -77,6 +86,8 @@ class Question:
     asks: str
     has_map = True
     has_time = True
+    has_section = False  # a section stands beside the map
+    numbered: tuple[str, ...] = ()  # tables of figures that can be saved
     places: tuple[tuple[str, str], ...] = (("subject", "the place"),)  # of the caption's words for where to look
 
     def summary(self, desk: Desk) -> str:
@@ -107,6 +118,10 @@ class Question:
         """The map in words, with its numbers."""
         return ""
 
+    def awaited(self, desk: Desk) -> set[Hashable]:
+        """Results that the ribbon still wants, beside those of the story."""
+        return set()
+
     def ribbon(self, desk: Desk) -> str:
         """SVG of the time ribbon."""
         return ""
@@ -126,6 +141,10 @@ class Question:
     def side(self, desk: Desk) -> dict[str, str]:
         """HTML for "section" (upper) and "table" (lower) beside the map."""
         return {}
+
+    def numbers(self, desk: Desk, which: str) -> tuple[list[dict[str, object]], str]:
+        """One of ``numbered``: rows of figures in SI units and full digits, and the command that gives them again."""
+        raise ValueError(f"{self.word} has no table {which!r} to save.")
 
     def cautions(self, desk: Desk) -> tuple[str, ...]:
         """Ids of the cautions that concern this screen's figures, in order of their letters."""

@@ -12,23 +12,23 @@ import shapely
 from hydro.eddies import Zone
 from hydro.ledger import FrameLedger
 from hydro.reach import CentreLine, Structure
-from hydro.section import Section, cut, section_figures
+from hydro.section import Section, SectionFigures, cut, section_figures
 from hydro.section.cut import runs_right_to_left
 from hydro.transfer import barycentric
 
 from .. import text
 from ..choices import SHADES, TUBES
-from ..reading import Story
+from ..reading import Ends, Story
 from ..results import Working
 from ..views import marks, ribbon, section
 from ..views.scene import Name, Scene, StructureMark, Water, ZoneMark
 from .base import Desk, footnote
 
-Ends = tuple[tuple[float, float], tuple[float, float]]
 UNDER_RESOLVED = "under-resolved"
 _WIDEST = 240.0  # m: a first map that shows a thing is no wider because of it
 _REACH = 150.0  # m to each side of the centre line that a first section may go
 _PIER = 12.0  # m of dry ground that a section steps over
+_NOTED = 0.02  # difference of two discharges of one section that is spoken of
 _BANK = 2.0  # m that it goes up each bank
 
 
@@ -42,18 +42,18 @@ def structures(desk: Desk) -> tuple[StructureMark, ...]:
 
 def water_scene(desk: Desk) -> Scene:
     """Water in its tubes, banks, structures and names; only the water's shade until psi is there."""
-    reading, run_id, index = desk.reading, desk.run_id, desk.index
-    frame, shade = reading.frame(run_id, index), desk.choices.shade
+    reading, run_id, moment = desk.reading, desk.run_id, desk.moment
+    frame, shade = reading.frame(run_id, moment), desk.choices.shade
     value = frame.speed if shade == "speed" else frame.depth
     water = Water(frame, value, reading.top(run_id, shade))
     scene = Scene(water=water, structures=structures(desk), names=names(desk))
     try:
-        ledger = reading.ledger(run_id, index)
-        lines, tube = reading.tubes(run_id, index, desk.choices.tubes)
+        ledger = reading.ledger(run_id, moment)
+        lines, tube = reading.tubes(run_id, moment, desk.choices.tubes)
     except (Working, ValueError):  # the sentence says which; the water is shown meanwhile
         return scene
     water = replace(water, psi=ledger.sf.psi, tube_m3_s=tube, carries=ledger.sf.domain, tube_lines=lines)
-    return replace(scene, water=water, shore=reading.shore(run_id, index))
+    return replace(scene, water=water, shore=reading.shore(run_id, moment))
 
 
 def zone_mark(zone: Zone, subject: bool) -> ZoneMark:
@@ -197,7 +197,7 @@ def _centre_line(desk: Desk) -> CentreLine:
 def across(desk: Desk, chainage: float, offset: float = 0.0) -> Ends:
     """A line square to the centre line through the water round an offset, from bank to bank."""
     centre, mesh = _centre_line(desk), desk.run.mesh
-    frame = desk.reading.frame(desk.run_id, desk.index)
+    frame = desk.reading.frame(desk.run_id, desk.moment)
     offsets = np.arange(_REACH, -_REACH - 0.5, -0.5)
     points = np.vstack([centre.at(np.array([chainage]), float(o)) for o in offsets])
     found = mesh.find(points)
@@ -224,7 +224,7 @@ def section_html(desk: Desk, ends, ledger: FrameLedger, subject: shapely.Geometr
     except ValueError as error:
         return f'{title}<p class="figures">{text.safe(error)}</p>'
     figures = section_figures(line, sf=ledger.sf, settings=desk.run.settings)
-    tube = desk.reading.known(("tubes", desk.run_id, desk.index, desk.choices.tubes))
+    tube = desk.reading.known(("tubes", desk.run_id, desk.moment, desk.choices.tubes))
     profile = profile_of(line, ledger, tube[1] if tube else 0.0, subject)
     box = section.Box(max(desk.sizes.section, 260), desk.look.label_px, 0.72 if desk.look.hall else 1.0)
     passes = f"Passes <b>{u.quantity(figures.discharge_m3_s, 'm3/s')}</b> by the field"
@@ -232,10 +232,25 @@ def section_html(desk: Desk, ends, ledger: FrameLedger, subject: shapely.Geometr
         passes += f", <b>{u.quantity(figures.discharge_psi_m3_s, 'm3/s')}</b> by psi"
     mean = f" at a mean of {u.quantity(figures.mean_velocity_m_s, 'm/s')}" if figures.mean_velocity_m_s is not None else ""
     flags = f" {text.safe('; '.join(figures.flags)).capitalize()}." if figures.flags else ""
+    flags += _why_they_differ(figures, ledger.sf.storage_m3_s, desk)
     return (
         f'{title}{section.draw(profile, box, u)}<p class="figures">{passes}{footnote(ids, "section-discharge")}; '
         f"{u.quantity(figures.area_m2, 'm2')} of water{mean}.{flags}</p>"
     )
+
+
+def _why_they_differ(figures: SectionFigures, storage: float | None, desk: Desk) -> str:
+    """Why the discharge by the field and by psi differ by more than a little; empty where they do not."""
+    if figures.discharge_psi_m3_s is None:
+        return ""
+    gap, u = figures.discharge_m3_s - figures.discharge_psi_m3_s, desk.units
+    if abs(gap) <= _NOTED * max(abs(figures.discharge_m3_s), abs(figures.discharge_psi_m3_s)):
+        return ""
+    if storage is None or abs(storage) < abs(gap) / 2:
+        return f" They differ by {u.quantity(abs(gap), 'm3/s')}: the field does not carry one discharge along the reach; see Arrival."
+    stored = u.quantity(abs(storage), "m3/s")
+    how = f"{stored} goes into storage along the reach as the water rises" if storage > 0 else f"{stored} comes out of storage as the water falls"
+    return f" They differ because {how}; psi leaves that out."
 
 
 def profile_of(line: Section, ledger: FrameLedger, tube: float, subject: shapely.Geometry | None) -> section.Profile:

@@ -5,19 +5,24 @@ from __future__ import annotations
 from dataclasses import replace
 
 import numpy as np
+from shapely import get_coordinates, get_parts
 
 from hydro.eddies import Zone
-from hydro.ledger import FrameLedger
+from hydro.eddies.sensitivity import range_outlines
+from hydro.ledger import FrameLedger, ledger_json
+from hydro.ledger.export import rows_of
 
 from .. import text
 from ..raster import View
 from ..reading import Story
+from ..results import Working
 from ..units import Units
 from ..views import marks, table
 from ..views import ribbon as strip
-from ..views.scene import Scene
+from ..views.scene import LineMark, Scene
 from . import common
 from .base import Desk, Question, footnote
+from .moments import instants_words, life_words, moment_words, window_words
 
 _ROWS_DESK, _ROWS_HALL = 6, 1
 
@@ -30,14 +35,16 @@ class Eddies(Question):
     asks = "Where does the water turn back on itself, and how much of it?"
 
     places = (("subject", "the eddy"),)
+    has_section = True
+    numbered = ("figures",)
 
     def summary(self, desk: Desk) -> str:
-        ledger = desk.reading.known(("ledger", desk.run_id, desk.index))
+        ledger = desk.reading.known(("ledger", desk.run_id, desk.moment))
         if ledger is None:
             return "being found"
         zones = ledger.zones.zones
         if not zones:
-            return "none in this frame"
+            return "none in this mean" if isinstance(desk.moment, tuple) else "none in this frame"
         largest = max(zones, key=lambda z: z.area_m2)
         area = desk.units.quantity(largest.area_m2, "m2", *_span(largest, "area_m2"))
         return f"{len(zones)} {'eddy' if len(zones) == 1 else 'eddies'}, largest {area}"
@@ -45,7 +52,7 @@ class Eddies(Question):
     def sentence(self, desk: Desk) -> str:
         ledger = self.ledger(desk)
         zones, zone = ledger.zones.zones, self.subject(desk)
-        here = "here" if desk.look.hall else "in this mean flow" if ledger.frame.kind == "mean" else "in this frame"
+        here = _here(desk, ledger)
         if not ledger.sf.drawn:
             return "Storage explains more than half of the flow in this frame, so it has no eddies to tell of."
         if zone is None:
@@ -54,7 +61,9 @@ class Eddies(Question):
             return f"No eddy turns {here}.{more}"
         largest = zone.area_m2 == max(z.area_m2 for z in zones)
         u, ids = desk.units, self.cautions(desk)
-        who = f'<em class="subject">{text.safe(zone.id)}</em> {_where(zone, desk.units)}'
+        # Until the eddies are followed through the run they have numbers, not names.
+        called = "eddy " if zone.id.isdigit() else ""
+        who = f'{called}<em class="subject">{text.safe(zone.id)}</em> {_where(zone, desk.units)}'
         first = f"{text.count(len(zones), 'eddy', 'eddies')} turn {here}. {'The largest' if largest else 'Of these'}, {who},"
         if len(zones) == 1:
             first = f"One eddy turns {here}: {who}. It"
@@ -66,10 +75,11 @@ class Eddies(Question):
         river = f", {text.percent(share)} of the river" if share is not None else ""
         if desk.look.hall and share is not None:
             flow, river = text.percent(share), " of the river"
-        return (
+        answer = (
             f"{first} covers <b>{area}</b>{footnote(ids, 'sensitivity')} and "
             f"takes <b>{flow}</b>{river + ' round with it' if desk.look.hall else ' round with it' + river}."
         )
+        return f"{answer} {self.in_moments(desk, zone)}" if isinstance(desk.moment, tuple) else answer
 
     def scene(self, desk: Desk) -> Scene:
         scene = common.water_scene(desk)
@@ -77,7 +87,19 @@ class Eddies(Question):
             return scene
         chosen = self.subject_id(desk)
         zones = tuple(common.zone_mark(z, z.id == chosen) for z in self.ledger(desk).zones.zones)
-        return replace(scene, zones=zones, section=self.section_ends(desk))
+        return replace(scene, zones=zones, lines=(*scene.lines, *self.lines(desk)), section=self.section_ends(desk))
+
+    def lines(self, desk: Desk) -> tuple[LineMark, ...]:
+        """The subject's outline at both ends of its range, and in each moment of a mean."""
+        zone = self.subject(desk)
+        if zone is None:
+            return ()
+        inner, outer = range_outlines(self.ledger(desk).sf, zone)
+        marks_ = [LineMark("dotted", points, subject=True) for points in (*inner, *outer)]
+        instances = desk.reading.instants(desk.run_id, desk.moment) if isinstance(desk.moment, tuple) else None
+        for outline in instances.outlines.get(zone.id, ()) if instances else ():
+            marks_ += [LineMark("path", get_coordinates(part.exterior)) for part in get_parts(outline)]
+        return tuple(marks_)
 
     def view(self, desk: Desk):
         zone = self.subject(desk)
@@ -88,8 +110,10 @@ class Eddies(Question):
     def caption(self, desk: Desk, scene: Scene, view: View) -> str:
         words = f"<i>Plate 2.</i> {common.water_words(desk, scene)}"
         if not desk.sizes.narrow:
-            words += f" {marks.triangle(True)} leaves the wall {marks.triangle(False)} returns."
-        return words
+            words += f" {marks.triangle(True)} leaves the wall {marks.triangle(False)} returns; dotted: least and greatest reading."
+        if isinstance(desk.moment, tuple):
+            words += " Thin: its outline at single moments."
+        return words + moment_words(desk, _known_subject(self, desk))
 
     def key_html(self, desk: Desk) -> str:
         ramp = common.ramp_key(desk)
@@ -123,13 +147,14 @@ class Eddies(Question):
         rows = [strip.Row(k, areas[k], k == chosen) for k in sorted(keep, key=common.natural)]
         return strip.Course(
             run.times.seconds, run.times.instants, self.discharge(desk, story), rows, desk.index,
-            more_rows=len(order) - len(keep),
+            more_rows=len(order) - len(keep), window=desk.choices.window,
         )
 
     def discharge(self, desk: Desk, story: Story) -> np.ndarray:
         """Through-discharge by frame, the chosen frame's as soon as it is known."""
         found = common.discharge(story)
-        found[desk.index] = self.ledger(desk).sf.through_discharge_m3_s
+        if not isinstance(desk.moment, tuple):
+            found[desk.index] = self.ledger(desk).sf.through_discharge_m3_s
         return found
 
     def side(self, desk: Desk) -> dict[str, str]:
@@ -155,10 +180,32 @@ class Eddies(Question):
             )),
         )
         moment = text.moment(ledger.frame.time, ledger.frame.seconds)
+        if isinstance(desk.moment, tuple):
+            moment = f"mean {window_words(desk)}"
+        aside = " ".join(p for p in (_flagged(self.subject(desk)), self.life(desk), _left_out(ledger, len(ledger.zones.zones) - len(zones))) if p)
         return table.html(table.Table(
-            "Ledger of eddies", moment, f"Recirculation zones at {moment}", columns, lines,
-            "No recirculation zone is kept in this frame.", _left_out(ledger, len(ledger.zones.zones) - len(zones)),
+            "Ledger of eddies", moment, f"Recirculation zones, {moment}", columns, lines,
+            "No recirculation zone is kept in this frame.", aside,
         ))
+
+    def life(self, desk: Desk) -> str:
+        """What following says of the subject, with buttons that go to its first, largest and last moment; HTML."""
+        followed = desk.reading.known(("followed", desk.run_id))
+        life = next((x for x in followed.lives if x.id == self.subject_id(desk)), None) if followed else None
+        if life is None or desk.look.hall or desk.run.n_frames == 1:
+            return ""
+        return life_words(life, followed.zones, desk)
+
+    def in_moments(self, desk: Desk, zone: Zone) -> str:
+        """What the single moments of the mean say of an eddy; HTML."""
+        assert isinstance(desk.moment, tuple)
+        instances = desk.reading.instants(desk.run_id, desk.moment)
+        return instants_words(instances.found[zone.id] if instances else None, desk)
+
+    def numbers(self, desk: Desk, which: str) -> tuple[list[dict[str, object]], str]:
+        run, moment = desk.run, desk.moment
+        when = f"--mean {moment[0]:g} {moment[1]:g}" if isinstance(moment, tuple) else f"--frame {moment}"
+        return rows_of(ledger_json(run, [self.ledger(desk)])), f"leewater eddies {run.files[0].name} {when} --out DIR"
 
     def cautions(self, desk: Desk) -> tuple[str, ...]:
         return ("sensitivity", "wake-detail", "rotation-time", "section-discharge", "no-roller")
@@ -169,8 +216,8 @@ class Eddies(Question):
         return common.first_ends(desk, self.subject(desk))
 
     def ledger(self, desk: Desk) -> FrameLedger:
-        """Stream function and eddies of the chosen frame."""
-        return desk.reading.ledger(desk.run_id, desk.index)
+        """Stream function and eddies of the chosen moment or mean."""
+        return desk.reading.ledger(desk.run_id, desk.moment)
 
     def subject_id(self, desk: Desk) -> str:
         """The subject's id; empty where there is no eddy."""
@@ -182,6 +229,20 @@ class Eddies(Question):
         zones = self.ledger(desk).zones.zones
         chosen = next((z for z in zones if z.id == desk.choices.subject), None)
         return chosen or max(zones, key=lambda z: z.area_m2, default=None)
+
+
+def _here(desk: Desk, ledger: FrameLedger) -> str:
+    if isinstance(desk.moment, tuple):
+        return f"in the mean flow {window_words(desk)}"
+    return "here" if desk.look.hall else "in this mean flow" if ledger.frame.kind == "mean" else "in this frame"
+
+
+def _known_subject(question: Eddies, desk: Desk) -> Zone | None:
+    """The subject, None while it is being found: a caption does not wait."""
+    try:
+        return question.subject(desk)
+    except (Working, ValueError):
+        return None
 
 
 def _where(zone: Zone, units: Units) -> str:
@@ -202,6 +263,13 @@ def _place(zone: Zone, units: Units) -> tuple[str, str]:
     if not found or zone.chainage_m is None:
         return text.safe(name), ""
     return text.safe(name), f"chainage {round(zone.chainage_m * units.factor('m'))}\u00a0{units.label('m')}"
+
+
+def _flagged(zone: Zone | None) -> str:
+    """What the subject's figures are subject to, HTML."""
+    if zone is None or not zone.flags:
+        return ""
+    return f"<b>{text.safe(zone.id)}</b>: {text.safe('; '.join(zone.flags))}."
 
 
 def _left_out(ledger: FrameLedger, unlisted: int) -> str:

@@ -2,17 +2,22 @@
 
 from __future__ import annotations
 
+from collections.abc import Hashable
+from dataclasses import asdict
+
 import numpy as np
 
-from hydro.section import Section, SectionFigures, cut, section_figures, shares
+from hydro.section import Section, SectionFigures, shares
+from hydro.section.figures import FORMULAS
 
 from .. import text
 from ..raster import View
 from ..views import ribbon as strip
 from ..views import table
 from ..views.scene import Scene
-from . import common
+from . import common, stations
 from .base import Desk, Question, footnote
+from .moments import moment_words, window_words
 
 _OWN = "your own line"
 
@@ -24,6 +29,8 @@ class Sections(Question):
     word = "Sections"
     asks = "How much passes here, and how is it spread?"
     places = (("subject", "the line"),)
+    has_section = True
+    numbered = ("figures", "stations")
 
     def summary(self, desk: Desk) -> str:
         named = len(self.named(desk))
@@ -56,7 +63,8 @@ class Sections(Question):
         offered = {name: name for name in self.named(desk)}
         chosen = self.chosen(desk)
         lines = common.chooser("line", chosen, {_OWN: _OWN, **offered}, "the section")
-        return f"<i>Plate 5.</i> Section: {lines}. {common.water_words(desk, scene)} Drag L and R to draw your own."
+        words = f"<i>Plate 5.</i> Section: {lines}.{stations.beside_words(desk, self.named(desk))} {common.water_words(desk, scene)}"
+        return f"{words} Drag L and R to draw your own.{moment_words(desk, None)}{stations.course_words(desk)}"
 
     def key_html(self, desk: Desk) -> str:
         return common.ramp_key(desk)
@@ -66,45 +74,69 @@ class Sections(Question):
         return f"Map of the reach with a section that passes {desk.units.quantity(figures.discharge_m3_s, 'm3/s')}."
 
     def ribbon(self, desk: Desk) -> str:
-        return strip.draw(common.plain_course(desk), common.ribbon_box(desk), desk.units)
+        return strip.draw(stations.course(desk, self.section_ends(desk)), common.ribbon_box(desk), desk.units)
+
+    def awaited(self, desk: Desk) -> set[Hashable]:
+        return stations.awaited(desk, self.section_ends(desk))
 
     def moments(self, desk: Desk) -> dict[str, object]:
-        return common.moments(desk)
+        return common.moments_of(stations.course(desk, self.section_ends(desk)), desk)
 
     def side(self, desk: Desk) -> dict[str, str]:
-        ledger = desk.reading.ledger(desk.run_id, desk.index)
-        return {
-            "section": common.section_html(desk, self.section_ends(desk), ledger, None, self.cautions(desk)),
-            "table": self.table(desk),
-        }
+        ledger, ends = desk.reading.ledger(desk.run_id, desk.moment), self.section_ends(desk)
+        drawn = common.section_html(desk, ends, ledger, None, self.cautions(desk))
+        other = self.beside(desk)
+        if other is not None:
+            second = common.section_html(desk, other[1], ledger, None, self.cautions(desk))
+            drawn += second.replace("<h2>Section", f"<h2>{text.safe(other[0])}", 1)
+        return {"section": drawn, "table": self.table(desk), "body": "" if desk.look.hall else stations.ends_form(desk, ends)}
+
+    def beside(self, desk: Desk) -> tuple[str, common.Ends] | None:
+        """The second section with its name, if one is chosen."""
+        name = desk.choices.beside
+        ends = self.named(desk).get(name)
+        return None if ends is None else (name, ends)
+
+    def numbers(self, desk: Desk, which: str) -> tuple[list[dict[str, object]], str]:
+        run, ends = desk.run, self.section_ends(desk)
+        (x1, y1), (x2, y2) = run.mesh.to_world(np.array(ends))
+        line, figures = self.read(desk)
+        command = f'leewater section {run.files[0].name} --line "{x1:.2f},{y1:.2f} {x2:.2f},{y2:.2f}" --frame {desk.index}'
+        if which == "stations":
+            return stations.rows(desk, line), command
+        return [{"section": self.chosen(desk), "frame": desk.index, **asdict(figures), "flags": ", ".join(figures.flags)}], command
 
     def table(self, desk: Desk) -> str:
         _, f = self.read(desk)
+        other = self.beside(desk)
+        g = stations.measured(desk, other[1])[1] if other is not None else None
         u, ids = desk.units, self.cautions(desk)
         note = footnote(ids, "section-discharge")
-        rows: tuple[tuple[str, float | None, str], ...] = (
-            (f"Discharge by the field{note}", f.discharge_m3_s, "m3/s"),
-            ("Error of reading it", f.discharge_error_m3_s, "m3/s"), ("Discharge by psi", f.discharge_psi_m3_s, "m3/s"),
-            ("Discharge, mid-section", f.discharge_mid_section_m3_s, "m3/s"),
-            ("Discharge, mean-section", f.discharge_mean_section_m3_s, "m3/s"),
-            ("Width of water", f.width_m, "m"), ("Area", f.area_m2, "m2"), ("Hydraulic radius A/P", f.hydraulic_radius_m, "m"),
-            ("Mean depth A/T", f.mean_depth_m, "m"), ("Greatest depth", f.max_depth_m, "m"),
-            ("Mean velocity", f.mean_velocity_m_s, "m/s"), ("Greatest velocity", f.max_velocity_m_s, "m/s"),
-            (f"Froude number{footnote(ids, 'uniform-flow')}", f.froude, ""), ("Energy coefficient alpha", f.alpha, ""),
-            ("Momentum coefficient beta", f.beta, ""),
+        rows = (
+            (f"Discharge by the field{note}", "discharge_m3_s", "m3/s", 3),
+            ("Error of reading it", "discharge_error_m3_s", "m3/s", 2), ("Discharge by psi", "discharge_psi_m3_s", "m3/s", 3),
+            ("Discharge, mid-section", "discharge_mid_section_m3_s", "m3/s", 3),
+            ("Discharge, mean-section", "discharge_mean_section_m3_s", "m3/s", 3),
+            ("Width of water", "width_m", "m", 3), ("Area", "area_m2", "m2", 3), ("Hydraulic radius A/P", "hydraulic_radius_m", "m", 3),
+            ("Mean depth A/T", "mean_depth_m", "m", 3), ("Greatest depth", "max_depth_m", "m", 3),
+            ("Mean velocity", "mean_velocity_m_s", "m/s", 3), ("Greatest velocity", "max_velocity_m_s", "m/s", 3),
+            (f"Froude number{footnote(ids, 'uniform-flow')}", "froude", "", 3), ("Energy coefficient alpha", "alpha", "", 3),
+            ("Momentum coefficient beta", "beta", "", 3), ("Section head", "head_m", "m", 6),
+            ("Mean level over the width", "mean_level_m", "m", 6),
         )
-        lines = [
-            table.Line(((name, ""), (u.number(value, unit), ""), (u.label(unit), ""))) for name, value, unit in rows
-        ]
-        levels = (("Section head", f.head_m), ("Mean level over the width", f.mean_level_m))
-        lines += [
-            table.Line(((name, ""), (u.number(value, "m", digits=6), ""), (u.label("m"), ""))) for name, value in levels
-        ]
-        columns = (table.Column("Figure", figure=False), table.Column("Value"), table.Column("Unit", figure=False))
+        lines = []
+        for name, key, unit, digits in rows:
+            values = [u.number(getattr(figures, key), unit, digits=digits) for figures in (f, g) if figures is not None]
+            title = f'<span title="{text.safe(FORMULAS[key])}">{name}</span>' if key in FORMULAS else name
+            lines.append(table.Line(((title, ""), *((v, "") for v in values), (u.label(unit), ""))))
+        second = (table.Column(text.safe(other[0])),) if other is not None else ()
+        columns = (table.Column("Figure", figure=False), table.Column("Value"), *second, table.Column("Unit", figure=False))
         datum = desk.run.datum
-        frame = desk.reading.frame(desk.run_id, desk.index)
-        moment = text.moment(frame.time, frame.seconds)
+        frame = desk.reading.frame(desk.run_id, desk.moment)
+        moment = f"mean {window_words(desk)}" if isinstance(desk.moment, tuple) else text.moment(frame.time, frame.seconds)
         aside = f"Levels above {text.safe(datum)}." if datum else "The file names no vertical datum."
+        if g is not None and other is not None:
+            aside = f"{stations.loss_words(desk, f, g, other[0])} {aside}"
         return table.html(table.Table("Figures", moment, f"Figures of the section at {moment}", columns, lines, aside=aside))
 
     def cautions(self, desk: Desk) -> tuple[str, ...]:
@@ -117,10 +149,7 @@ class Sections(Question):
 
     def read(self, desk: Desk) -> tuple[Section, SectionFigures]:
         """The section cut through the chosen frame, and its figures."""
-        ledger = desk.reading.ledger(desk.run_id, desk.index)
-        centre = desk.reading.reach(desk.run_id).centre_line
-        line = cut(ledger.frame, np.array(self.section_ends(desk)), centre_line=centre)
-        return line, section_figures(line, sf=ledger.sf, settings=desk.run.settings)
+        return stations.measured(desk, self.section_ends(desk))
 
     def named(self, desk: Desk) -> dict[str, common.Ends]:
         """Sections of the review, by name, as their ends."""

@@ -38,6 +38,8 @@ class Course:
         The frame under the cursor.
     more_rows : int
         Things that found no row.
+    window : (from, to) or None
+        s; the stretch of time whose mean is shown.
     """
 
     seconds: np.ndarray
@@ -48,8 +50,10 @@ class Course:
     rows_title: str = "Eddies"
     rows_note: str = "size"
     more_rows: int = 0
+    window: tuple[float, float] | None = None
     title: str = "Discharge"
     unit: str = "m3/s"
+    from_zero: bool = True  # False: the scale begins near the least value, as for levels
 
 
 @dataclass(frozen=True, slots=True)
@@ -97,7 +101,7 @@ def draw(course: Course, box: Box, units: Units) -> str:
     axis = box.base + 0.9 * box.label + len(course.rows) * box.row
     height = axis + 2.1 * box.label
     parts = [_discharge(course, box, units, x), _rows(course, box, x), _axis(course, box, x, axis)]
-    parts.append(_cursor(course, box, units, x, axis))
+    parts.append(_window(course, box, axis) if course.window is not None else _cursor(course, box, units, x, axis))
     return (
         f'<svg class="ribbon" viewBox="0 0 {box.width:.0f} {height:.0f}" width="{box.width:.0f}" height="{height:.0f}" '
         f'aria-hidden="true" font-size="{box.label:.1f}">{"".join(parts)}</svg>'
@@ -117,7 +121,12 @@ def words(course: Course, units: Units) -> str:
     """The moment under the cursor, for those who do not see it."""
     q = course.amount[course.index]
     moment = text.moment(_instant(course), course.seconds[course.index])
-    return f"{moment}, {units.quantity(q, course.unit)}" if np.isfinite(q) else moment
+    return f"{moment}, {_amount(course, units)}" if np.isfinite(q) else moment
+
+
+def _amount(course: Course, units: Units) -> str:
+    """The amount under the cursor; levels with the digits that tell them apart."""
+    return units.quantity(course.amount[course.index], course.unit, digits=3 if course.from_zero else 6)
 
 
 def _instant(course: Course):
@@ -135,9 +144,12 @@ def _discharge(course: Course, box: Box, units: Units, x: np.ndarray) -> str:
     if known.sum() < 1:
         return out[0]
     f = units.factor(course.unit)
-    step = step_above(max(float(np.nanmax(q)) * f, 1e-9) / 3.4)
-    top = max(float(np.nanmax(q)) * f * 1.06, step)
-    y = box.base - q * f / top * (box.base - box.flag - 4)
+    low, high = (min(float(np.nanmin(q)) * f, 0.0) if course.from_zero else float(np.nanmin(q)) * f), float(np.nanmax(q)) * f
+    step = step_above(max(high - low, 1e-9 if course.from_zero else 1e-3) / 3.4)
+    low = np.floor(low / step + 1e-9) * step
+    top = max(low + 1.06 * (high - low), low + step)
+    tall = (box.base - box.flag - 4) / (top - low)
+    y = box.base - (q * f - low) * tall
     for run in _pieces(known):
         line = " ".join(f"{a:.1f},{b:.1f}" for a, b in zip(x[run], y[run]))
         if len(run) > 1:
@@ -147,11 +159,13 @@ def _discharge(course: Course, box: Box, units: Units, x: np.ndarray) -> str:
             )
         else:
             out.append(f'<circle class="dot" cx="{x[run][0]:.1f}" cy="{y[run][0]:.1f}" r="3"/>')
-    for k in range(1, int(top / step) + 1):
-        at = box.base - k * step / top * (box.base - box.flag - 4)
+    labels = [f"{round(low + k * step, 6):g}" for k in range(1, int((top - low) / step + 1e-9) + 1)]
+    end = min(box.width - 1, box.right + 13 + 0.56 * box.label * max(map(len, labels), default=0))
+    for k, label in enumerate(labels, 1):
+        at = box.base - k * step * tall
         out.append(
             f'<line class="hair2" x1="{box.right + 3}" x2="{box.right + 9}" y1="{at:.1f}" y2="{at:.1f}"/>'
-            f'<text x="{box.right + 13}" y="{at + 0.35 * box.label:.1f}">{k * step:g}</text>'
+            f'<text class="end" x="{end:.1f}" y="{at + 0.35 * box.label:.1f}">{label}</text>'
         )
     return "".join(out)
 
@@ -237,7 +251,7 @@ def _cursor(course: Course, box: Box, units: Units, x: np.ndarray, axis: float) 
     q = course.amount[course.index]
     words = text.clock(_instant(course), course.seconds[course.index])
     if np.isfinite(q):
-        words += f" \u00b7 {units.quantity(q, course.unit)}"
+        words += f" \u00b7 {_amount(course, units)}"
     width = 0.53 * box.label * len(words) + 14
     left = x[course.index] + width > box.width
     start = -width if left else 0.0
@@ -249,6 +263,23 @@ def _cursor(course: Course, box: Box, units: Units, x: np.ndarray, axis: float) 
         f'<path class="subject" d="M-6 {axis + 9:.1f} L6 {axis + 9:.1f} L0 {axis:.1f} Z"/>'
         f'<rect class="subject" x="{start - (1 if not left else -1):.1f}" y="0" width="{width:.1f}" height="{1.55 * b:.1f}"/>'
         f'<text class="flag" x="{start + 6:.1f}" y="{1.12 * b:.1f}">{words}</text></g>'
+    )
+
+
+def _window(course: Course, box: Box, axis: float) -> str:
+    """The stretch whose mean is shown: a bracket with its length, in place of the cursor."""
+    assert course.window is not None
+    s = course.seconds
+    low, high = (
+        box.left + (min(max(v, s[0]), s[-1]) - s[0]) / max(s[-1] - s[0], 1e-9) * (box.right - box.left) for v in course.window
+    )
+    words = f"mean over {text.elapsed(course.window[1] - course.window[0])}"
+    b, width = box.label, 0.53 * box.label * len(words) + 14
+    start = min(low, box.width - width)
+    return (
+        f'<path class="cursor" fill="none" d="M{low:.1f} {axis + 2:.1f} V1 M{high:.1f} {axis + 2:.1f} V1 M{low:.1f} 1 H{high:.1f}"/>'
+        f'<rect class="subject" x="{start:.1f}" y="0" width="{width:.1f}" height="{1.55 * b:.1f}"/>'
+        f'<text class="flag" x="{start + 6:.1f}" y="{1.12 * b:.1f}">{words}</text>'
     )
 
 

@@ -15,6 +15,29 @@ export function render({ model }) {
   return document.createElement("span");
 }
 
+// Hands a file to the reader; a picture is drawn here from its SVG, at twice its size on the screen.
+async function keep({ name, text, picture }) {
+  const kind = name.endsWith(".csv") ? "text/csv" : "image/svg+xml";
+  let blob = new Blob([text], { type: `${kind};charset=utf-8` });
+  if (picture) {
+    const image = new Image();
+    const address = URL.createObjectURL(blob);
+    image.src = address;
+    await image.decode();
+    const canvas = document.createElement("canvas");
+    canvas.width = 2 * image.naturalWidth;
+    canvas.height = 2 * image.naturalHeight;
+    canvas.getContext("2d").drawImage(image, 0, 0, canvas.width, canvas.height);
+    URL.revokeObjectURL(address);
+    blob = await new Promise((made) => canvas.toBlob(made, "image/png"));
+  }
+  const link = document.createElement("a");
+  link.href = URL.createObjectURL(blob);
+  link.download = name;
+  link.click();
+  setTimeout(() => URL.revokeObjectURL(link.href), 60000);
+}
+
 class Desk {
   constructor(tell) {
     this.tell = tell;
@@ -36,6 +59,10 @@ class Desk {
     if (state.seen === this.sent) this.release();
     for (const name of ["mode", "view", "arrangement", "question", "working", "stop"]) root.dataset[name] = state[name] ?? "";
     document.title = state.title;
+    if (state.file && state.file.number !== this.kept) {
+      this.kept = state.file.number;
+      keep(state.file);
+    }
     this.address(state);
     this.time(state);
     this.overlay();

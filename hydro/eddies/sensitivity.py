@@ -14,6 +14,7 @@ from .regions import Region, closed_regions
 from .shape import peak_of, shape_of
 from .zone import Zone
 
+_BESIDE = 0.02  # share of the zone's size within which its outline lies on a wall
 _SAME = 0.3  # least overlap of the smaller one for two readings to be of one zone
 
 
@@ -53,6 +54,48 @@ def from_outline(
         "recirculating_discharge_m3_s": about(flow, noise),
         "rotation_time_s": (max(volume - by_volume, 0.0) / (flow + noise), (volume + by_volume) / weak),
     }
+
+
+def range_outlines(sf: StreamFunction, zone: Zone) -> tuple[list[np.ndarray], list[np.ndarray]]:
+    """Lines (k, 2), local m, along which the zone's outline would run at the least and at the greatest of its areas.
+
+    The part of the outline that is no wall is moved in and out by the distance that makes up the difference;
+    a wall stays where it is. A picture of the range, not of any one reading.
+    """
+    low, high = zone.sensitivity.get("area_m2", (zone.area_m2, zone.area_m2))
+    walls = _walls_near(sf, zone.contour).buffer(_BESIDE * np.sqrt(zone.area_m2))
+    free = [shapely.LineString(p.exterior.coords).difference(walls) for p in shapely.get_parts(zone.contour)]
+    parts = [p for f in free for p in shapely.get_parts(f) if p.length > 0]
+    length = sum(p.length for p in parts)
+    if not length:
+        return [], []
+    most_in = 0.9 * float(np.sqrt(zone.area_m2 / np.pi))
+    return (
+        _moved(parts, min((zone.area_m2 - low) / length, most_in), zone.contour, outward=False),
+        _moved(parts, (high - zone.area_m2) / length, zone.contour, outward=True),
+    )
+
+
+def _walls_near(sf: StreamFunction, outline: shapely.Geometry) -> shapely.Geometry:
+    s, xy = sf.shape, sf.frame.mesh.node_xy
+    west, south, east, north = outline.bounds
+    middle = (xy[s.a] + xy[s.b]) / 2
+    near = (s.opening < 0) & (middle > [west - 1, south - 1]).all(axis=1) & (middle < [east + 1, north + 1]).all(axis=1)
+    return shapely.multilinestrings(shapely.linestrings(np.stack([xy[s.a[near]], xy[s.b[near]]], axis=1)))
+
+
+def _moved(parts: Sequence[shapely.Geometry], by: float, outline: shapely.Geometry, *, outward: bool) -> list[np.ndarray]:
+    """Lines moved to one side of an outline, m."""
+    if not by > 0:
+        return []
+    out = []
+    for part in parts:
+        for side in (by, -by):
+            line = part.offset_curve(side)
+            if not line.is_empty and outline.contains(line.interpolate(0.5, normalized=True)) != outward:
+                out += [shapely.get_coordinates(piece) for piece in shapely.get_parts(line)]
+                break
+    return [points for points in out if len(points) > 1]
 
 
 def widened(

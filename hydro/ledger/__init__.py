@@ -6,9 +6,9 @@ from .follow import Life, follow
 from .frames import FrameLedger, FrameReader, depth_rate, frame_ledger, mean_ledger
 from .report import ledger_json
 from .summary import FrameSummary
-from .windows import Instants, instants_of, lumped_area
+from .windows import Instants, instants_of, lumped_area, twin_of
 
 __all__ = [
     "FrameLedger", "FrameReader", "FrameSummary", "Instants", "Job", "Life", "depth_rate", "follow", "frame_ledger",
-    "instants_of", "ledger_json", "lumped_area", "mean_ledger", "reach_of", "read_all", "write_tables",
+    "instants_of", "ledger_json", "lumped_area", "mean_ledger", "reach_of", "read_all", "twin_of", "write_tables",
 ]

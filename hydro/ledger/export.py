@@ -75,15 +75,18 @@ def rows_of(whole: Mapping[str, Any]) -> list[dict[str, Any]]:
     return rows
 
 
-def csv_text(rows: Sequence[dict[str, Any]], source: Mapping[str, Any], settings: Settings) -> str:
-    """Rows as CSV, headed by comment lines that say where they come from."""
+def csv_text(
+    rows: Sequence[Mapping[str, Any]], source: Mapping[str, Any], settings: Settings, cautions: Sequence[str] = ("sensitivity",),
+) -> str:
+    """Rows as CSV, headed by comment lines that say where they come from and which cautions they owe."""
     names = list(dict.fromkeys(name for row in rows for name in row))
     out = io.StringIO()
     out.write(f"# run: {source['run']}; SHA-256: {source['hash']}; settings: {settings.digest()}\n")
     out.write(f"# made by leewater {source['versions']['leewater']}, {source['made']}: {source['command']}\n")
     crs = source["crs"].splitlines()[0][:80] if source["crs"] else "local metres"
     out.write(f"# coordinates: {crs}; levels above: {source['vertical_datum'] or 'not named'}\n")
-    out.write(f"# {caution('sensitivity').text}\n")
+    for id_ in cautions:
+        out.write(f"# {caution(id_).text}\n")
     writer = csv.DictWriter(out, names, restval="", lineterminator="\n")
     writer.writeheader()
     writer.writerows({k: ("" if v is None else v) for k, v in row.items()} for row in rows)

@@ -66,7 +66,7 @@ def instants_of(
     signals = _signals(reader, summaries, {i: t for i, t in probes.items() if t >= 0}, mean)
     out = {}
     for zone in mean.zones.zones:
-        twins = [_twin(zone, s.zones, area) for s in summaries]
+        twins = [twin_of(zone, s.zones, area) for s in summaries]
         held = np.array([t is not None for t in twins])
         own = [t for t in twins if t is not None]
         ranges = {n: (min(getattr(t, n) for t in own), max(getattr(t, n) for t in own)) for n in RANGED} if own else {}
@@ -110,7 +110,8 @@ def lumped_area(mesh: Mesh) -> np.ndarray:
     return np.bincount(mesh.triangles.ravel(), np.repeat(mesh.triangle_area / 3, 3), minlength=mesh.n_nodes)
 
 
-def _twin(zone: Zone, others: Sequence[Zone], area: np.ndarray) -> Zone | None:
+def twin_of(zone: Zone, others: Sequence[Zone], area: np.ndarray) -> Zone | None:
+    """Which of a moment's zones is this zone of the mean: the one whose core shares most of it; None for none."""
     shares = [(overlap(zone, other, area), k) for k, other in enumerate(others)]
     best = max(shares, default=(0.0, -1))
     return others[best[1]] if best[0] > _LEAST_SHARE else None

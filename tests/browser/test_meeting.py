@@ -58,14 +58,30 @@ def test_a_query_written_in_one_browser_shows_in_the_other(page: Page, mine: Ser
     other.fill("#ask-text", "half a thought")
     page.fill("#ask-who", "A. Reviewer")
     page.fill("#ask-text", "Which roughness at the ramp? <b>bold</b>")
-    page.click("form.ask button")
+    page.click("form[data-send=ask] button")
     expect(other.locator(".body")).to_contain_text("Which roughness at the ramp? <b>bold</b>", timeout=10_000)
     assert other.input_value("#ask-text") == "half a thought"
-    other.click("form.ask button")
+    other.click("form[data-send=ask] button")
     expect(page.locator(".body")).to_contain_text("half a thought", timeout=10_000)
     written = [json.loads(line) for line in (copy / "queries.jsonl").read_text(encoding="utf-8").splitlines()]
     assert [w["who"] for w in written] == ["A. Reviewer", "B. Other"]
     other.context.close()
+
+
+def test_a_finding_becomes_a_query_in_one_action_and_is_answered(page: Page, mine: Server, copy: Path):
+    open_desk(page, mine.address, "question=arrival")
+    finding = plain(page.locator("table tbody tr").first.locator("td").last.inner_text())
+    page.locator("button[data-do=raise]").first.click()
+    row = page.locator("section[data-slot=table] ~ *, .body table tbody tr").last
+    expect(row).to_contain_text(finding[:40])
+    number = plain(row.locator("th").inner_text())
+    page.select_option("#answer-number", number)
+    page.fill("#answer-who", "C. Modeller")
+    page.fill("#answer-answer", "The pier was left out on purpose.")
+    page.click("form[data-send=answer] button")
+    expect(row).to_contain_text("The pier was left out on purpose.")
+    last = [json.loads(line) for line in (copy / "queries.jsonl").read_text(encoding="utf-8").splitlines()][-1]
+    assert (last["who"], last["set"]["state"]) == ("C. Modeller", "answered")
 
 
 def test_letting_logs_go_shows_how_far_it_is_and_can_be_stopped(page: Page, mine: Server):

@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+from types import SimpleNamespace
+
 import numpy as np
 import pytest
 import shapely
@@ -10,6 +12,7 @@ from hypothesis import strategies as st
 from scipy.optimize import minimize
 
 from hydro.eddies import find_zones
+from hydro.eddies.sensitivity import range_outlines
 from hydro.mesh import build_mesh
 from hydro.reach import CentreLine, Reach, Structure
 from hydro.streamfunction import stream_function
@@ -201,3 +204,16 @@ def test_quads_split_in_two_give_the_same_zones():
     own = whole.frame.face_velocity[quads.triangle_face][split.file_face]
     halves = stream_function(builders.frame_of(split, 1.0, (own[:, 0], own[:, 1])), boundary_sets=builders.sides(split))
     same(figures(halves), figures(whole))
+
+
+def test_the_dotted_outlines_enclose_the_least_and_the_greatest_area():
+    """A free round eddy of 100 m2 read as 81 to 121: circles of nine and eleven tenths of its radius (closed form)."""
+    radius = np.sqrt(100 / np.pi)
+    zone = SimpleNamespace(contour=shapely.Point(0, 0).buffer(radius, 256), area_m2=100.0, sensitivity={"area_m2": (81.0, 121.0)})
+    nothing = np.zeros(0, int)
+    shape = SimpleNamespace(a=nothing, b=nothing, opening=nothing)
+    sf = SimpleNamespace(shape=shape, frame=SimpleNamespace(mesh=SimpleNamespace(node_xy=np.zeros((1, 2)))))
+    inner, outer = range_outlines(sf, zone)  # type: ignore[arg-type]
+    # Moved by the difference of areas over the length of the outline: right to second order in the distance.
+    assert shapely.Polygon(np.concatenate(inner)).area == pytest.approx(81, rel=0.02)
+    assert shapely.Polygon(np.concatenate(outer)).area == pytest.approx(121, rel=0.02)
