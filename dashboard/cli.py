@@ -8,7 +8,7 @@ import os
 import sys
 import traceback
 
-COMMANDS = ("open", "arrival", "eddies", "section", "trace", "drift", "passage", "change", "record", "pack")
+COMMANDS = ("open", "arrival", "eddies", "section", "trace", "drift", "passage", "change", "settings", "record", "pack")
 
 
 def main(argv: list[str] | None = None) -> int:

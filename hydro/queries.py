@@ -15,7 +15,7 @@ from dataclasses import asdict, dataclass, field, fields
 from pathlib import Path
 from typing import Any
 
-from .review import append_line, now, read_log
+from .review_log import append_line, now, read_log
 
 STATES = ("asked", "answered", "accepted", "carried as a limitation", "withdrawn")
 IMPORTANCE = ("could change the decision", "clarify", "editorial")

@@ -6,24 +6,25 @@ whole or not at all, and a file that somebody else has changed meanwhile is not 
 
 from __future__ import annotations
 
-import json
 import os
 import tempfile
 import tomllib
 from collections.abc import Callable
-from dataclasses import dataclass, field
-from datetime import UTC, datetime
+from dataclasses import dataclass, field, replace
 from functools import cached_property
 from pathlib import Path
-from typing import Any
+from typing import Any, Literal
 
 import pydantic
 import tomlkit
 
 from .provenance import file_hash, files_hash
-from .reach import Reach, origin_of_lines, read_lines
+from .reach import REPRESENTED_AS, Reach, origin_of_lines, read_lines
+from .review_log import NAME as LOG
+from .review_log import alone, append_line, change_entry, now, read_log
 from .run import Run
 from .settings import Settings
+from .streamfunction.boundaries import said_sets
 
 SCHEMA = "leewater/review/1"
 SAMPLE = Path(__file__).resolve().parent.parent / "sample_reach"
@@ -80,6 +81,17 @@ class Document(_Table):
     sha256: str = ""
 
 
+class Boundaries(_Table):
+    """What the review says of open boundaries, over what the file names and what the flow shows.
+
+    ``open``: stretches by name, each two world points (m); boundary edges on the line between them let water
+    through. With any, only these are open. ``closed``: names of the file's stretches that are walls.
+    """
+
+    open: dict[str, tuple[tuple[float, float], tuple[float, float]]] = {}
+    closed: list[str] = []
+
+
 class _Contents(_Table):
     """Everything review.toml may hold. Tables of releases, fish, checks and the record are checked
     by the modules that use them."""
@@ -96,7 +108,8 @@ class _Contents(_Table):
     runs: list[RunEntry] = []
     settings: dict[str, float] = {}
     mapping: dict[str, Any] = {}
-    boundaries: dict[str, Any] = {}
+    boundaries: Boundaries = Boundaries()
+    represented_as: dict[str, Literal[REPRESENTED_AS]] = {}  # type: ignore[valid-type]
     releases: list[dict[str, Any]] = []
     fish: list[dict[str, Any]] = []
     checks: list[dict[str, Any]] = []
@@ -185,10 +198,12 @@ class Review:
         if entry.id not in self._opened:
             from .readers import open_run
 
-            self._opened[entry.id] = open_run(
+            run = open_run(
                 self.paths(entry), mesh=entry.mesh, mapping={**self.contents.mapping, **entry.mapping} or None,
                 settings=self.settings, kind=entry.kind, name=entry.label, origin=self.origin,
             )
+            said = self.contents.boundaries
+            self._opened[entry.id] = replace(run, boundary_sets=said_sets(run.mesh, run.boundary_sets, said.open, said.closed))
         return self._opened[entry.id]
 
     @cached_property
@@ -203,7 +218,7 @@ class Review:
         """Centre line, structures and lines; empty where the review has no lines yet."""
         path = self.folder / self.contents.lines
         if path.is_file() and self.origin is not None:
-            return read_lines(path, self.origin)
+            return _as_said(read_lines(path, self.origin), self.contents.represented_as)
         return Reach(self.origin or self.open(self.contents.runs[0].id).mesh.origin)
 
     def entry_of(self, run: Run) -> RunEntry | None:
@@ -219,7 +234,9 @@ class Review:
         entry = self.entry_of(run)
         return self.reach.of_design(entry.design if entry else None)
 
-    def edit(self, change: Callable[[Any], None], *, who: str, what: str) -> Review:
+    def edit(
+        self, change: Callable[[Any], None], *, who: str, what: str, check: Callable[[Review], object] = lambda trial: None, **more: Any
+    ) -> Review:
         """Change review.toml through its document, keeping comments, and log it.
 
         Parameters
@@ -228,6 +245,10 @@ class Review:
             Gets the tomlkit document and alters it.
         who, what : str
             For the log: the person, and one sentence on what changed and why.
+        check : callable
+            Gets the review as it would be and raises ``ValueError`` where it may not be so.
+        more
+            Further entries for the log.
 
         Returns
         -------
@@ -241,23 +262,28 @@ class Review:
             is written then.
         """
         path = self.folder / "review.toml"
-        if file_hash(path) != self.stamp:
-            raise ValueError(f"{path} was saved by somebody else since you opened it; open it again and repeat the change.")
-        document = tomlkit.parse(path.read_text(encoding="utf-8"))
-        change(document)
-        text = tomlkit.dumps(document)
-        _checked(text, path)
-        write_whole(path, text)
-        self.log(who=who, what=what)
+        with alone(self.folder):
+            before = path.read_bytes().decode("utf-8")
+            if file_hash(path) != self.stamp:
+                raise ValueError(
+                    f"{path} was saved by somebody else since you opened it; open it again and repeat the change."
+                )
+            document = tomlkit.parse(before)
+            change(document)
+            text = tomlkit.dumps(document)
+            check(Review(self.folder, _checked(text, path), ""))
+            entry = change_entry(self.logged(), before, text)
+            write_whole(path, text)
+            self.log(who=who, what=what, **more, **entry)
         return open_review(self.folder)
 
     def log(self, *, who: str, what: str, **more: Any) -> None:
         """Add a line to the append-only settings log (settings-log.jsonl)."""
-        append_line(self.folder / "settings-log.jsonl", {"at": now(), "who": who, "what": what, **more})
+        append_line(self.folder / LOG, {"at": now(), "who": who, "what": what, **more})
 
     def logged(self) -> list[dict[str, Any]]:
         """The settings log, oldest first."""
-        return read_log(self.folder / "settings-log.jsonl")
+        return read_log(self.folder / LOG)
 
 
 def open_review(folder: Path | str) -> Review:
@@ -331,38 +357,6 @@ def write_whole(path: Path, content: str | bytes) -> None:
         raise
 
 
-def append_line(path: Path, entry: dict[str, Any]) -> None:
-    """Add one JSON line to an append-only log, in a single synced write."""
-    line = (json.dumps(entry, ensure_ascii=False) + "\n").encode("utf-8")
-    handle = os.open(path, os.O_WRONLY | os.O_APPEND | os.O_CREAT, 0o644)
-    try:
-        os.write(handle, line)
-        os.fsync(handle)
-    finally:
-        os.close(handle)
-
-
-def read_log(path: Path) -> list[dict[str, Any]]:
-    """Entries of an append-only log, oldest first; empty where there is none.
-
-    Raises ``ValueError`` naming the line that cannot be read.
-    """
-    if not path.is_file():
-        return []
-    out = []
-    for number, line in enumerate(path.read_text(encoding="utf-8").splitlines(), 1):
-        try:
-            out.append(json.loads(line))
-        except json.JSONDecodeError as error:
-            raise ValueError(f"{path}: line {number} is not a log entry; restore the file from a copy.") from error
-    return out
-
-
-def now() -> str:
-    """This instant as ISO 8601 UTC, to the second."""
-    return datetime.now(UTC).strftime("%Y-%m-%dT%H:%M:%SZ")
-
-
 def _checked(text: str, path: Path) -> _Contents:
     try:
         table = tomllib.loads(text)
@@ -382,6 +376,17 @@ def _checked(text: str, path: Path) -> _Contents:
     if twice:
         raise ValueError(f"{path}: two runs have the id {twice!r}; give each its own.")
     return contents
+
+
+def _as_said(reach: Reach, represented_as: dict[str, str]) -> Reach:
+    """Structures as the review says they stand, over what lines.gpkg says; an unknown id is refused."""
+    known = {s.id for s in reach.structures}
+    unknown = next((i for i in represented_as if i not in known), None)
+    if unknown is not None:
+        raise ValueError(
+            f"review.toml, represented_as: there is no structure {unknown!r}; the lines have {', '.join(sorted(known)) or 'none'}."
+        )
+    return replace(reach, structures=tuple(replace(s, represented_as=represented_as.get(s.id, s.represented_as)) for s in reach.structures))
 
 
 def _find_by_hash(folder: Path, entry: RunEntry) -> list[Path] | None:

@@ -56,6 +56,10 @@ REGISTRY: dict[str, Setting] = {
             "follow_gap_frames", 2, "frames", "Leewater's own", "an eddy not seen for more frames than this has ended", 0
         ),
         Setting("least_periods", 5, "periods", _COMMON, "a mean over fewer shedding periods than this is flagged", 1, 100),
+        Setting(
+            "automatic_sections", 45, "sections", "Leewater's own",
+            "how many sections square to the centre line the audit reads along the river", 5, 1000,
+        ),
         Setting("gravity_m_s2", 9.81, "m/s2", "conventional value", "heads, Froude numbers, weirs", 9.7, 9.9),
         Setting("density_kg_m3", 1000.0, "kg/m3", "fresh water, rounded", "shear, power, drift", 900.0, 1100.0),
         Setting(

@@ -9,7 +9,7 @@ import numpy as np
 
 from ..figure import Figure, Place
 from ..ledger.frames import depth_rate, plan_for
-from ..reach import CentreLine, Reach, proposed_centre_line
+from ..reach import CentreLine, Reach, automatic_sections, proposed_centre_line
 from ..run import Run
 from ..streamfunction import Plan, StreamFunction, stream_function
 
@@ -73,6 +73,15 @@ class Material:
     def axis(self) -> CentreLine:
         """The centre line, else a straight one along the mean flow of the first frame."""
         return self.reach.centre_line or proposed_centre_line(self.run.mesh.node_xy, self.run.frame(0).unit_discharge.mean(axis=0) + [1e-12, 0])
+
+    def sections(self) -> list[tuple[float, np.ndarray]]:
+        """Chainage and ends of the automatic sections along :attr:`axis`, left bank first."""
+        return automatic_sections(self.axis, self.run.mesh.node_xy, self.spacing_m)
+
+    @property
+    def spacing_m(self) -> float:
+        """Between automatic sections, m; no less than a metre."""
+        return max(self.axis.length / self.run.settings["automatic_sections"], 1.0)
 
     def place(self, at: np.ndarray) -> Place:
         """World place of a local point with chainage and offset."""

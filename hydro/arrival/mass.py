@@ -6,7 +6,7 @@ import numpy as np
 
 from ..figure import Figure
 from ..ledger.frames import depth_rate
-from ..reach import CentreLine, automatic_sections
+from ..reach import CentreLine
 from ..section import cut, section_figures
 from .finding import Finding, Material, first_of_each, point
 
@@ -88,12 +88,11 @@ def _sections(m: Material, index: int) -> list[Finding]:
     if centre is None or not sf.through_discharge_m3_s > 0:
         return []
     rate = depth_rate(m.run, index, frame) if m.run.n_frames > 1 else None
-    spacing = max(centre.length / 45, 5.0)
     rows = []
     face_s = centre.locate(frame.mesh.face_centroid)[0]
     inlets = [(float(centre.locate(_middle(m, b.edges))[0][0]), b.discharge_m3_s) for b in sf.open_boundaries]
     inlets += _links(m, centre, index)
-    for chainage, line in automatic_sections(centre, frame.mesh.node_xy, spacing):
+    for chainage, line in m.sections():
         try:
             q = section_figures(cut(frame, line)).discharge_m3_s
         except ValueError:  # the line falls between two arms of the mesh
@@ -102,7 +101,7 @@ def _sections(m: Material, index: int) -> list[Finding]:
         if rate is not None:
             due -= float((rate * frame.mesh.face_area)[face_s < chainage].sum())
         rows.append((chainage, q - due))
-    return _steps(m, centre, index, np.array(rows), spacing) if len(rows) > 4 else []
+    return _steps(m, centre, index, np.array(rows), m.spacing_m) if len(rows) > 4 else []
 
 
 def _links(m: Material, centre: CentreLine, index: int) -> list[tuple[float, float]]:

@@ -7,6 +7,7 @@ import shapely
 
 from ..figure import Figure
 from ..frame import Frame
+from ..section import cut
 from .finding import Finding, Material, point
 
 SMALL_ANGLE_DEG = 10.0  # common practice, no source
@@ -88,15 +89,11 @@ def _coordinates(m: Material) -> Finding | None:
 
 def _river(m: Material) -> Finding | None:
     """Fewest faces from bank to bank, by the width of water over the local size, along the centre line."""
-    centre = m.reach.centre_line
-    if centre is None:
+    if m.reach.centre_line is None:
         return None
-    from ..reach import automatic_sections
-    from ..section import cut
-
     frame = m.run.frame(m.chosen()[-1])
     least, at = np.inf, None
-    for _, line in automatic_sections(centre, m.run.mesh.node_xy, max(centre.length / 40, 1.0)):
+    for _, line in m.sections():
         try:
             section = cut(frame, line)
         except ValueError:  # the line falls between two arms of the mesh

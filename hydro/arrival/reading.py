@@ -5,13 +5,11 @@ from __future__ import annotations
 import numpy as np
 
 from ..figure import Figure
-from ..reach import automatic_sections
 from ..section import cut
 from ..section.error import reading_error
 from .finding import Finding, Material
 
 ASK_SHARE = 0.05  # of the discharge (common practice, no source)
-SECTIONS = 45
 
 
 def section_findings(m: Material) -> list[Finding]:
@@ -20,7 +18,7 @@ def section_findings(m: Material) -> list[Finding]:
         return []
     frame = m.run.frame(m.chosen()[-1])
     rows = []
-    for _, line in automatic_sections(m.axis, frame.mesh.node_xy, max(m.axis.length / SECTIONS, 1.0)):
+    for _, line in m.sections():
         try:
             section = cut(frame, line)
         except ValueError:  # the line falls between two arms of the mesh

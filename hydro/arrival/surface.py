@@ -5,7 +5,7 @@ from __future__ import annotations
 import numpy as np
 
 from ..figure import Figure
-from ..reach import CentreLine, automatic_sections
+from ..reach import CentreLine
 from ..section import cut, section_figures
 from .finding import Finding, Material, first_of_each, point
 
@@ -85,7 +85,7 @@ def _heads(m: Material, index: int) -> list[Finding]:
         return []
     frame = m.run.frame(index)
     rows = []
-    for chainage, line in automatic_sections(centre, frame.mesh.node_xy, max(centre.length / 45, 5.0)):
+    for chainage, line in m.sections():
         try:
             f = section_figures(cut(frame, line))
         except ValueError:  # the line falls between two arms of the mesh

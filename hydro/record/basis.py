@@ -2,8 +2,10 @@
 
 from __future__ import annotations
 
+from ..automatic import automatic_choices
 from ..figure import Figure
 from ..review import Review
+from ..review_log import told
 from ..run import Run
 from ..settings import REGISTRY
 from .model import Part, Table
@@ -82,7 +84,7 @@ def method() -> Part:
 
 
 def settings(review: Review) -> Part:
-    """Every setting with its value, source and what it touches, and the log of changes."""
+    """Every setting with its value, source and what it touches; automatic choices; the log of changes."""
     rows = tuple(
         (
             name, Figure(name, review.settings[name], rule.unit), rule.unit,
@@ -91,11 +93,12 @@ def settings(review: Review) -> Part:
         )
         for name, rule in REGISTRY.items()
     )
-    log = tuple((e.get("at", ""), e.get("who", ""), e.get("what", "")) for e in review.logged())
+    choices = tuple((c.sentence, c.standing, c.how) for c in automatic_choices(review))
     return Part(
         "settings", "Settings and choices", (),
         (
             Table("settings", "Settings", ("Setting", "Value", "Unit", "State", "Source", "Touches"), rows),
-            Table("settings-log", "Who changed what", ("When", "Who", "What"), log),
+            Table("automatic-choices", "What Leewater chose by itself", ("Choice", "Standing", "Overruled by the entry"), choices),
+            Table("settings-log", "Who changed what", ("When", "Who", "What", "Lines of review.toml"), tuple(told(review.logged()))),
         ),
     )

@@ -13,7 +13,8 @@ from ..drift.report import study as drift_study
 from ..passage import Study
 from ..passage import study as passage_study
 from ..provenance import file_hash
-from ..review import Review, now
+from ..review import Review
+from ..review_log import now
 from ..run import Run
 from . import basis
 from . import review_parts as parts

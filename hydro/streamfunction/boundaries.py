@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 
 import numpy as np
@@ -68,6 +68,50 @@ def open_boundaries(
     if named:
         return tuple(OpenBoundary(name, edges) for name, edges in named.items())
     return _found(frame, settings)
+
+
+def said_sets(
+    mesh: Mesh, file_sets: Mapping[str, np.ndarray], opened: Mapping[str, tuple], closed: Sequence[str]
+) -> dict[str, np.ndarray]:
+    """Named stretches of boundary as a review says them.
+
+    Parameters
+    ----------
+    file_sets : mapping of name to mesh edges
+        What the file names.
+    opened : mapping of name to two world points, m
+        Boundary edges whose middle lies within their own length of the line between the points. With any, only
+        these are open.
+    closed : sequence of names of ``file_sets`` that are walls
+
+    Raises
+    ------
+    ValueError
+        A line that no boundary edge lies on, or a closed name that the file does not have.
+    """
+    unknown = next((name for name in closed if name not in file_sets), None)
+    if unknown is not None:
+        raise ValueError(
+            f"review.toml, boundaries.closed: the file names no stretch {unknown!r}; it names {', '.join(file_sets) or 'none'}."
+        )
+    if not opened:
+        return {name: edges for name, edges in file_sets.items() if name not in closed}
+    return {name: _edges_on(mesh, name, np.array(points, float)) for name, points in opened.items()}
+
+
+def _edges_on(mesh: Mesh, name: str, ends: np.ndarray) -> np.ndarray:
+    edges = mesh.boundary_edges
+    middle = mesh.to_world(mesh.node_xy[mesh.edge_nodes[edges]].mean(axis=1))
+    along = ends[1] - ends[0]
+    t = np.clip((middle - ends[0]) @ along / max(float(along @ along), 1e-12), 0, 1)
+    away = np.hypot(*(middle - ends[0] - t[:, None] * along).T)
+    found = edges[away < mesh.edge_length[edges]]
+    if not found.size:
+        raise ValueError(
+            f"review.toml, boundaries.open.{name}: no edge of the mesh's boundary lies between ({ends[0, 0]:.1f}, {ends[0, 1]:.1f}) and "
+            f"({ends[1, 0]:.1f}, {ends[1, 1]:.1f}); give two points on it, in the run's coordinates."
+        )
+    return found
 
 
 def with_discharge(frame: Frame, boundaries: tuple[OpenBoundary, ...], inside: np.ndarray) -> tuple[OpenBoundary, ...]:

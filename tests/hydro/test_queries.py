@@ -9,7 +9,7 @@ import json
 import pytest
 
 from hydro.queries import ask, change, find, queries, read_answers, read_written, to_csv, to_xlsx
-from hydro.review import append_line, read_log
+from hydro.review_log import append_line, read_log
 
 
 @pytest.fixture

@@ -4,7 +4,8 @@ from __future__ import annotations
 
 import pytest
 
-from hydro.review import append_line, new_review, open_review, read_log
+from hydro.review import new_review, open_review
+from hydro.review_log import append_line, read_log
 
 
 def test_a_new_review_opens_and_keeps_comments_through_an_edit(tmp_path):
