@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Iterable
 from dataclasses import dataclass
 
 
@@ -127,6 +128,24 @@ _ALL = (
 )
 
 CAUTIONS: dict[str, Caution] = {c.id: c for c in _ALL}
+
+
+# What each subject's figures owe, on screens, in tables and in every export. A figure may owe more of its own.
+OWED: dict[str, tuple[str, ...]] = {
+    "arrival": ("screening", "sensitivity", "section-discharge", "wake-detail", "no-roller"),
+    "eddies": ("sensitivity", "wake-detail", "rotation-time", "no-secondary-currents", "no-roller"),
+    "sections": ("section-discharge", "sensitivity", "uniform-flow", "no-secondary-currents", "no-roller"),
+    "profiles": ("uniform-flow", "no-secondary-currents", "no-roller"),
+    "tracks": ("tracing", "no-secondary-currents"),
+    "drift": ("drift", "tracing", "no-roller"),
+    "passage": ("passage", "endurance", "near-bed", "screening"),
+    "change": ("change", "sensitivity", "section-discharge", "wake-detail", "no-roller"),
+}
+
+
+def told(ids: Iterable[str]) -> list[dict[str, str]]:
+    """Cautions with their texts, each once, as JSON exports carry them."""
+    return [{"id": id_, "text": caution(id_).text} for id_ in dict.fromkeys(ids)]
 
 
 def caution(id_: str) -> Caution:

@@ -57,6 +57,7 @@ def _of(review, entry):
 
 
 def _report(name, opened, found):
+    from hydro.cautions import told
     from hydro.ledger.report import source_of
 
     return {
@@ -68,7 +69,15 @@ def _report(name, opened, found):
             }
             for f in found
         ],
+        "cautions": told(_owed(found)),
     }
+
+
+def _owed(found):
+    """Cautions of the audit and of its findings' figures."""
+    from hydro.cautions import OWED
+
+    return dict.fromkeys([*OWED["arrival"], *(c for f in found if f.figure for c in f.figure.cautions)])
 
 
 def _print(name, found) -> None:
@@ -79,4 +88,5 @@ def _print(name, found) -> None:
         print(f"  {f.grade:<18} {f.sentence}")
         if f.grade != "note":
             print(f"  {'':<18} {f.meaning} Ask: {f.question}")
-    print(f"  {caution('screening').text}")
+    for id_ in _owed(found):
+        print(f"  {caution(id_).text}")

@@ -4,7 +4,6 @@ from __future__ import annotations
 
 import argparse
 import json
-import sys
 from pathlib import Path
 
 HELP = "what changes from one run to another: levels, eddies, openings, wet ground"
@@ -80,6 +79,5 @@ def _print(change) -> None:
     print("What changes:")
     for finding in change.findings:
         print(f"  {finding.sentence}")
-    owed = dict.fromkeys(c for f in change.findings for c in f.cautions)
-    for id_ in owed:
-        print(f"  {caution(id_).text}", file=sys.stdout)
+    for id_ in change.cautions:
+        print(f"  {caution(id_).text}")

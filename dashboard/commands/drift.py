@@ -19,7 +19,7 @@ def arguments(parser: argparse.ArgumentParser) -> None:
 
 
 def run(args: argparse.Namespace) -> int:
-    from hydro.drift.report import CAUTIONS, SCHEMA, answer_json, study, write_drift
+    from hydro.drift.report import SCHEMA, answer_json, study, write_drift
     from hydro.review import open_any, write_whole
 
     review, _ = open_any(args.review)
@@ -34,9 +34,9 @@ def run(args: argparse.Namespace) -> int:
         if args.out:
             write_drift(Path(args.out) / entry.id, answer)
     if args.json != "-":
-        from hydro.cautions import caution
+        from hydro.cautions import OWED, caution
 
-        for id_ in CAUTIONS:
+        for id_ in OWED["drift"]:
             print(f"  {caution(id_).text}")
     if args.json:
         text = json.dumps({"schema": SCHEMA, "runs": answers}, indent=1, allow_nan=False)

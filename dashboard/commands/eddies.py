@@ -143,7 +143,7 @@ def _frame_table(entry, args: argparse.Namespace) -> None:
     for s in (*hidden, *cut) if args.small else ():
         x, y = frame.mesh.to_world(s.centre)
         print(f"  {x:.2f} E, {y:.2f} N  {s.rotation:13} {printed(s.recirculating_discharge_m3_s)} m3/s  {s.why}", file=out)
-    _cautions(entry.zones.zones, out)
+    _cautions(out)
 
 
 def _zone_rows(zones, out) -> None:
@@ -173,7 +173,7 @@ def _life_table(lives, done, args: argparse.Namespace) -> None:
         remarks += [f"merged into {life.merged_into}"] if life.merged_into else []
         print(f"{life.id:5} {life.name[:38]:38} {life.first_s:8g} {life.last_s:8g} {100 * life.share_of_time:4.0f}% "
               f"{area:>15} {flow:>17}  {', '.join(remarks)}", file=out)
-    _cautions([z for s in done for z in s.zones], out)
+    _cautions(out)
 
 
 def _instants_table(entry, instants, args: argparse.Namespace) -> None:
@@ -191,8 +191,9 @@ def _instants_table(entry, instants, args: argparse.Namespace) -> None:
         print(text, file=out)
 
 
-def _cautions(zones, out) -> None:
-    from hydro.cautions import caution
+def _cautions(out) -> None:
+    """All of them, also where no eddy was found: that is no evidence of harmless water."""
+    from hydro.cautions import OWED, caution
 
-    for id_ in dict.fromkeys(c for z in zones for c in z.cautions):
+    for id_ in OWED["eddies"]:
         print(f"  {caution(id_).text}", file=out)

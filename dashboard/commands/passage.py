@@ -55,9 +55,8 @@ def _progress():
 
 
 def _table(found, out) -> None:
-    from hydro.cautions import caution
+    from hydro.cautions import OWED, caution
     from hydro.figure import printed
-    from hydro.passage.answer import CAUTIONS
 
     for one in found.answers:
         answer = one.answer
@@ -81,5 +80,5 @@ def _table(found, out) -> None:
         for s in flow.months:
             print(f"  {s.label}: not excluded {100 * s.not_excluded:.0f} %, excluded {100 * s.excluded:.0f} %, undecided "
                   f"{100 * s.undecided:.0f} %, outside the flows looked at {100 * s.outside:.0f} %", file=out)
-    for id_ in CAUTIONS:
+    for id_ in OWED["passage"]:
         print(f"  {caution(id_).text}", file=out)

@@ -25,6 +25,8 @@ def arguments(parser: argparse.ArgumentParser) -> None:
 
 
 def run(args: argparse.Namespace) -> int:
+    from hydro.cautions import OWED, told
+    from hydro.ledger.export import csv_heading
     from hydro.ledger.report import source_of
     from hydro.review import open_results, write_whole
     from hydro.section.table import section_table
@@ -41,10 +43,10 @@ def run(args: argparse.Namespace) -> int:
     if args.out:
         folder = Path(args.out)
         folder.mkdir(parents=True, exist_ok=True)
-        write_whole(folder / "sections.csv", table.to_csv(index=False))
+        write_whole(folder / "sections.csv", csv_heading(source_of(run_), run_.settings, OWED["sections"]) + table.to_csv(index=False))
     if args.json:
         rows = json.loads(table.to_json(orient="records", double_precision=15))
-        content = {"schema": "leewater/sections/1", "source": source_of(run_), "settings": dict(run_.settings), "sections": rows}
+        content = {"schema": "leewater/sections/1", "source": source_of(run_), "settings": dict(run_.settings), "sections": rows, "cautions": told(OWED["sections"])}
         text = json.dumps(content, indent=1, allow_nan=False)
         if args.json == "-":
             print(text)
@@ -92,29 +94,54 @@ def _psi_of(run_, review):
 
 
 def _profiles(args, run_, lines) -> int:
-    import pandas as pd
-
+    from hydro.cautions import OWED, caution, told
+    from hydro.ledger.export import csv_heading
+    from hydro.ledger.report import source_of
     from hydro.review import write_whole
     from hydro.section.profile import profile
 
     from . import frame_index
 
+    made = []
     frame = run_.frame(frame_index(run_, args))
     for name, points in lines:
         p = profile(frame, points, settings=run_.settings)
-        loss = p.loss()
-        print(f"{name}: {p.distance[-1]:.1f} m, head lost {'n/a' if loss is None else f'{loss:.3f} m'}, jumps at {[round(j, 1) for j in p.jumps]}")
+        table, loss = _stations(p), p.loss()
+        made.append({"line": name, "head_lost_m": loss, "jumps_m": list(p.jumps), "stations": json.loads(table.to_json(orient="records", double_precision=15))})
+        if args.json != "-":
+            jumps = f"; jumps at {', '.join(f'{j:.1f}' for j in p.jumps)} m" if p.jumps else "; no jump"
+            print(f"{name}: {p.distance[-1]:.1f} m, head lost {'n/a' if loss is None else f'{loss:.3f} m'}{jumps}")
         if args.out:
-            columns = ("distance", "bed", "depth", "level", "critical_level", "head", "speed", "froude")
-            table = pd.DataFrame({f"{c}_m" if c not in ("speed", "froude") else c: getattr(p, c) for c in columns})
             folder = Path(args.out)
             folder.mkdir(parents=True, exist_ok=True)
-            write_whole(folder / f"profile-{name.replace(' ', '-')}.csv", table.to_csv(index=False))
+            heading = csv_heading(source_of(run_), run_.settings, OWED["profiles"])
+            write_whole(folder / f"profile-{name.replace(' ', '-')}.csv", heading + table.to_csv(index=False))
+    if args.json != "-":
+        for id_ in OWED["profiles"]:
+            print(f"  {caution(id_).text}")
+    if args.json:
+        content = {
+            "schema": "leewater/profiles/1", "source": source_of(run_), "settings": dict(run_.settings), "profiles": made,
+            "cautions": told(OWED["profiles"]),
+        }
+        text = json.dumps(content, indent=1, allow_nan=False)
+        print(text) if args.json == "-" else write_whole(Path(args.json), text + "\n")
     return 0
 
 
+def _stations(p):
+    """The stations of a profile as a table, each column with its unit."""
+    import pandas as pd
+
+    units = {
+        "distance": "_m", "bed": "_m", "depth": "_m", "level": "_m", "critical_level": "_m", "head": "_m", "speed": "_m_s",
+        "froude": "",
+    }
+    return pd.DataFrame({f"{name}{unit}": getattr(p, name) for name, unit in units.items()})
+
+
 def _print(table, stepped: bool) -> None:
-    from hydro.cautions import caution
+    from hydro.cautions import OWED, caution
     from hydro.figure import printed
 
     shown = {
@@ -128,5 +155,5 @@ def _print(table, stepped: bool) -> None:
         print("".join(f"{v:>14}" for v in (str(row["section"])[:13], when, *(levels.get(k) or printed(row[k]) for k in shown))))
     banks = " and for banks that are stair steps or joined points, which may miss a cell's width at each" if stepped else ""
     print(f"  Read within: error of reading Q from this file, by two readings compared{banks}.")
-    for id_ in ("section-discharge", "sensitivity"):
+    for id_ in OWED["sections"]:
         print(f"  {caution(id_).text}")

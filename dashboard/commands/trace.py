@@ -28,6 +28,7 @@ def arguments(parser: argparse.ArgumentParser) -> None:
 
 
 def run(args: argparse.Namespace) -> int:
+    from hydro.cautions import OWED, told
     from hydro.ledger.report import source_of
     from hydro.review import open_results, write_whole
     from hydro.tracks.export import write_tracks
@@ -38,7 +39,7 @@ def run(args: argparse.Namespace) -> int:
     if args.out:
         write_tracks(Path(args.out), opened, traced, reach.centre_line if reach else None)
     if args.json:
-        content = {"schema": "leewater/tracks/1", "source": source_of(opened), "warnings": list(traced.warnings), "tracks": [_plain(opened, t) for t in traced.tracks]}
+        content = {"schema": "leewater/tracks/1", "source": source_of(opened), "warnings": list(traced.warnings), "tracks": [_plain(opened, t) for t in traced.tracks], "cautions": told(OWED["tracks"])}
         text = json.dumps(content, allow_nan=False)
         if args.json == "-":
             print(text)
@@ -111,7 +112,7 @@ def _plain(opened, track):
 
 
 def _print(traced) -> None:
-    from hydro.cautions import caution
+    from hydro.cautions import OWED, caution
 
     print(f"{'line':>5} {'kind':<11} {'ended':<18} {'length m':>10} {'time s':>10} {'error m':>10}")
     for t in traced.tracks:
@@ -120,4 +121,5 @@ def _print(traced) -> None:
         print(f"{t.number:>5} {t.kind:<11} {t.ended:<18} {t.length_m:>10.1f} {time:>10.1f} {error:>10}")
     for warning in traced.warnings:
         print(f"  {warning}")
-    print(f"  {caution('tracing').text}")
+    for id_ in OWED["tracks"]:
+        print(f"  {caution(id_).text}")

@@ -11,6 +11,7 @@ from typing import Any
 
 import numpy as np
 
+from hydro.cautions import OWED
 from hydro.eddies import Zone
 
 from .. import text, theme
@@ -29,7 +30,7 @@ from ..views.scene import ZoneMark
 from . import fields
 from .items import block
 
-CAUTIONS = ("sensitivity", "wake-detail", "rotation-time", "section-discharge", "no-roller", "tracing", "public-water")
+CAUTIONS = (*OWED["eddies"], "section-discharge", "tracing", "public-water")
 # Three ways to look at the page, each with drawings of its own: a label keeps its size on every screen.
 WAYS = {
     "wide": (Sizes(ribbon=860, section=440), theme.look("day")),

@@ -7,6 +7,7 @@ from dataclasses import replace
 import numpy as np
 
 from hydro.arrival import Finding
+from hydro.cautions import OWED
 
 from .. import text
 from ..raster import View
@@ -114,7 +115,7 @@ class Arrival(Question):
         return rows, f"leewater arrival {desk.run.files[0].name} --json FILE"
 
     def cautions(self, desk: Desk) -> tuple[str, ...]:
-        return ("screening", "wake-detail", "no-roller")
+        return OWED["arrival"]
 
     def findings(self, desk: Desk) -> list[Finding]:
         """The audit of the chosen run, gravest first."""

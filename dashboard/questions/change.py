@@ -7,6 +7,7 @@ from dataclasses import replace
 import numpy as np
 import shapely
 
+from hydro.cautions import OWED
 from hydro.change import Change as Compared
 from hydro.change.eddies import ZoneChange
 from hydro.eddies import Zone
@@ -152,7 +153,7 @@ class Change(Question):
         return {"table": zones, "body": f"{said}<h2>What differs outside the works</h2><ul>{differs}</ul>"}
 
     def cautions(self, desk: Desk) -> tuple[str, ...]:
-        return ("change", "sensitivity", "wake-detail", "no-roller")
+        return OWED["change"]
 
     def other(self, desk: Desk) -> str:
         """The run compared with the chosen one: the reader's, else another design's of the same event."""

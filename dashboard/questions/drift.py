@@ -6,6 +6,7 @@ from dataclasses import replace
 
 import numpy as np
 
+from hydro.cautions import OWED
 from hydro.drift import Drifted
 from hydro.drift.report import DriftAnswer
 
@@ -139,7 +140,7 @@ class Drift(Question):
         return text.safe(" ".join(answer.sentences()))
 
     def cautions(self, desk: Desk) -> tuple[str, ...]:
-        return ("drift", "tracing", "no-roller")
+        return OWED["drift"]
 
     def progress(self, desk: Desk) -> tuple[str, int, int] | None:
         share = desk.studies.shares.get(desk.run_id)

@@ -7,6 +7,7 @@ from dataclasses import replace
 import numpy as np
 from shapely import get_coordinates, get_parts
 
+from hydro.cautions import OWED
 from hydro.eddies import Zone
 from hydro.eddies.sensitivity import range_outlines
 from hydro.ledger import FrameLedger, ledger_json
@@ -208,7 +209,7 @@ class Eddies(Question):
         return rows_of(ledger_json(run, [self.ledger(desk)])), f"leewater eddies {run.files[0].name} {when} --out DIR"
 
     def cautions(self, desk: Desk) -> tuple[str, ...]:
-        return ("sensitivity", "wake-detail", "rotation-time", "section-discharge", "no-roller")
+        return (*OWED["eddies"], "section-discharge")
 
     def section_ends(self, desk: Desk):
         if desk.choices.section is not None:

@@ -6,6 +6,7 @@ from dataclasses import replace
 
 import numpy as np
 
+from hydro.cautions import OWED
 from hydro.passage import EXCLUDED, NOT_ASSESSED, Answer
 from hydro.passage.answer import barrier_words
 
@@ -128,7 +129,7 @@ class Passage(Question):
         return {"section": legs, "table": found}
 
     def cautions(self, desk: Desk) -> tuple[str, ...]:
-        return ("passage", "endurance", "near-bed", "screening")
+        return OWED["passage"]
 
     def answer(self, desk: Desk) -> Answer:
         """The answer for the review's first fish in the chosen frame."""

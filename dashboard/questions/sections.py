@@ -7,6 +7,7 @@ from dataclasses import asdict
 
 import numpy as np
 
+from hydro.cautions import OWED
 from hydro.section import Section, SectionFigures, shares
 from hydro.section.figures import FORMULAS
 
@@ -140,7 +141,7 @@ class Sections(Question):
         return table.html(table.Table("Figures", moment, f"Figures of the section at {moment}", columns, lines, aside=aside))
 
     def cautions(self, desk: Desk) -> tuple[str, ...]:
-        return ("section-discharge", "uniform-flow", "no-secondary-currents", "no-roller")
+        return OWED["sections"]
 
     def section_ends(self, desk: Desk) -> common.Ends:
         if desk.choices.section is not None:

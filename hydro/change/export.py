@@ -10,8 +10,8 @@ import numpy as np
 import pandas as pd
 import shapely
 
-from ..cautions import caution
-from ..ledger.export import write_package
+from ..cautions import told
+from ..ledger.export import csv_heading, write_package
 from ..ledger.report import source_of, time_text
 from ..review import write_whole
 from ..run import Run
@@ -23,7 +23,6 @@ SCHEMA = "leewater/change/1"
 
 def change_json(change: Change) -> dict[str, Any]:
     """The comparison as plain values: b minus a; places are world coordinates, m; missing values None."""
-    owed = dict.fromkeys(c for f in change.findings for c in f.cautions)
     return {
         "schema": SCHEMA,
         "a": _side(change.a, change.ledger_a.frame),
@@ -49,7 +48,7 @@ def change_json(change: Change) -> dict[str, Any]:
             for side, part in zip(("a", "b"), change.openings, strict=True)
         },
         "findings": [{"sentence": f.sentence, "over_noise": f.over_noise, "at": _world(change.a, f.at)} for f in change.findings],
-        "cautions": [{"id": c, "text": caution(c).text} for c in owed],
+        "cautions": told(change.cautions),
     }
 
 
@@ -59,7 +58,9 @@ def write_change(folder: Path, change: Change) -> list[Path]:
     out = []
     if change.levels is not None:
         path = folder / "levels.csv"
-        write_whole(path, levels_table(change.levels).to_csv(index=False))
+        source = source_of(change.b)
+        heading = csv_heading(source | {"run": f"{change.a.name} (a) and {change.b.name} (b)", "hash": f"{change.a.hash} and {change.b.hash}"}, change.b.settings, change.cautions)
+        write_whole(path, heading + levels_table(change.levels).to_csv(index=False))
         out.append(path)
     path = folder / "change.gpkg"
     layers = {
@@ -67,7 +68,7 @@ def write_change(folder: Path, change: Change) -> list[Path]:
         "no_longer_wet": _faces(change, change.maps.no_longer_wet),
         "findings": _points(change),
     }
-    write_package(path, layers, change.a.crs, {"a": source_of(change.a), "b": source_of(change.b)})
+    write_package(path, layers, change.a.crs, {"a": source_of(change.a), "b": source_of(change.b)}, change.cautions)
     return [*out, path]
 
 

@@ -7,6 +7,7 @@ from dataclasses import dataclass
 
 import numpy as np
 
+from ..cautions import OWED
 from ..ledger import FrameLedger, frame_ledger
 from ..reach import CentreLine, Reach
 from ..run import Run
@@ -43,6 +44,12 @@ class Change:
     zones: tuple[ZoneChange, ...]
     openings: tuple[tuple[Opening, ...], tuple[Opening, ...]]
     findings: tuple[Finding, ...]
+
+    @property
+    def cautions(self) -> tuple[str, ...]:
+        """Ids of the cautions that the comparison owes: those of every change, of its findings and of its openings."""
+        own = [f.cautions for f in self.findings] + [o.cautions for side in self.openings for o in side]
+        return tuple(dict.fromkeys([*OWED["change"], *(c for ids in own for c in ids)]))
 
 
 def compare(

@@ -13,8 +13,8 @@ import numpy as np
 import pandas as pd
 import shapely
 
-from ..cautions import caution
-from ..ledger.export import write_package
+from ..cautions import OWED, told
+from ..ledger.export import csv_heading, write_package
 from ..ledger.frames import plan_for
 from ..ledger.report import source_of
 from ..reach import Reach
@@ -25,7 +25,6 @@ from .study import STATES, Drifted, Rules, drift, sentence, settings_tried
 from .wood import logs
 
 SCHEMA = "leewater/drift/1"
-CAUTIONS = ("drift", "tracing")
 
 
 @dataclass(frozen=True, eq=False)
@@ -110,7 +109,7 @@ def answer_json(answer: DriftAnswer) -> dict[str, Any]:
         ],
         "deck_contact": {name: _share(base.deck_contacts(level)) for name, level in soffits.items()},
         "settings_tried": list(answer.tried),
-        "cautions": [{"id": c, "text": caution(c).text} for c in CAUTIONS],
+        "cautions": told(OWED["drift"]),
     }
 
 
@@ -126,7 +125,8 @@ def write_drift(folder: Path, answer: DriftAnswer, cell_m: float = 2.0) -> list[
         "lodged_on": ["" if p < 0 else base.piers[p].name for p in base.lodged_at],
         **{f"touches {p.name}": base.touched[:, i] for i, p in enumerate(base.piers)},
     })
-    write_whole(folder / "logs.csv", table.to_csv(index=False))
+    heading = csv_heading(source_of(answer.run), answer.run.settings, OWED["drift"])
+    write_whole(folder / "logs.csv", heading + table.to_csv(index=False))
     grid, corner = base.corridor(cell_m)
     rows, columns = np.nonzero(grid)
     cells = [shapely.box(corner[0] + c * cell_m, corner[1] + r * cell_m, corner[0] + (c + 1) * cell_m, corner[1] + (r + 1) * cell_m)
@@ -142,7 +142,7 @@ def write_drift(folder: Path, answer: DriftAnswer, cell_m: float = 2.0) -> list[
         "corridor": geopandas.GeoDataFrame({"logs": grid[rows, columns]}, geometry=world),
         "paths": geopandas.GeoDataFrame({"log": kept, "ended": [STATES[int(base.state[i])] for i in kept]}, geometry=lines),
     }
-    write_package(folder / "drift.gpkg", layers, answer.run.crs, answer_json(answer))
+    write_package(folder / "drift.gpkg", layers, answer.run.crs, answer_json(answer), OWED["drift"])
     return [folder / "logs.csv", folder / "drift.gpkg"]
 
 

@@ -8,6 +8,7 @@ import numpy as np
 import shapely
 
 from .._kernels import contour, labels
+from ..cautions import OWED
 from ..reach import Reach, Structure
 from ..settings import Settings
 from ..streamfunction import StreamFunction
@@ -20,7 +21,6 @@ from .shape import Shape, peak_of, saddle_of, shape_of
 from .wake import wake_of
 from .zone import SmallRegion, Zone, ZoneSet
 
-CAUTIONS = ("wake-detail", "no-secondary-currents", "sensitivity", "rotation-time", "no-roller")
 _STREAMLINES = 4  # drawn inside each zone
 _FINE_ACROSS = 8  # fewer triangles across than this: flagged
 
@@ -164,7 +164,7 @@ def _zone(
         rotation_time_s=shape.volume_m3 / flow,
         separation=separation if solid else None, reattachment=reattachment if solid else None,
         triangles_across=c.across, max_reverse_speed_m_s=_reverse(sf, region, along),
-        flags=_flags(sf, c, contact, extent, solid, settings), cautions=CAUTIONS, wake=wake, contour=shape.polygon,
+        flags=_flags(sf, c, contact, extent, solid, settings), cautions=OWED["eddies"], wake=wake, contour=shape.polygon,
         inner=inner.polygon, streamlines=_streamlines(sf, c), along=along, noise_m3_s=c.noise, region=region,
         core=_core(sf, region, settings["core_share"]),
         sensitivity=from_outline(

@@ -17,7 +17,7 @@ import pandas as pd
 import pyogrio
 import shapely
 
-from ..cautions import caution
+from ..cautions import OWED, caution
 from ..contours import contour_lines, tube_levels
 from ..review import write_whole
 from ..run import Run
@@ -49,8 +49,8 @@ def write_tables(
     whole = ledger_json(run, frames, settings, lives=lives, instants=instants)
     layers = _layers(run, frames, settings, lives)
     package, table, page = folder / "eddies.gpkg", folder / "eddies.csv", folder / "eddies.html"
-    write_package(package, layers, run.crs, {"source": whole["source"], "settings": whole["settings"]})
-    write_whole(table, csv_text(rows_of(whole), whole["source"], settings))
+    write_package(package, layers, run.crs, {"source": whole["source"], "settings": whole["settings"]}, OWED["eddies"])
+    write_whole(table, csv_text(rows_of(whole), whole["source"], settings, OWED["eddies"]))
     write_whole(page, page_text(whole, settings))
     return [package, table, page]
 
@@ -75,26 +75,33 @@ def rows_of(whole: Mapping[str, Any]) -> list[dict[str, Any]]:
     return rows
 
 
-def csv_text(
-    rows: Sequence[Mapping[str, Any]], source: Mapping[str, Any], settings: Settings, cautions: Sequence[str] = ("sensitivity",),
-) -> str:
-    """Rows as CSV, headed by comment lines that say where they come from and which cautions they owe."""
+def csv_text(rows: Sequence[Mapping[str, Any]], source: Mapping[str, Any], settings: Settings, cautions: Sequence[str]) -> str:
+    """Rows as CSV, headed by :func:`csv_heading`."""
     names = list(dict.fromkeys(name for row in rows for name in row))
     out = io.StringIO()
-    out.write(f"# run: {source['run']}; SHA-256: {source['hash']}; settings: {settings.digest()}\n")
-    out.write(f"# made by leewater {source['versions']['leewater']}, {source['made']}: {source['command']}\n")
-    crs = source["crs"].splitlines()[0][:80] if source["crs"] else "local metres"
-    out.write(f"# coordinates: {crs}; levels above: {source['vertical_datum'] or 'not named'}\n")
-    for id_ in cautions:
-        out.write(f"# {caution(id_).text}\n")
+    out.write(csv_heading(source, settings, cautions))
     writer = csv.DictWriter(out, names, restval="", lineterminator="\n")
     writer.writeheader()
     writer.writerows({k: ("" if v is None else v) for k, v in row.items()} for row in rows)
     return out.getvalue()
 
 
-def write_package(path: Path, layers: dict[str, geopandas.GeoDataFrame], crs: str | None, about: dict[str, Any]) -> None:
-    """Write layers and their provenance to a GeoPackage, whole or not at all."""
+def csv_heading(source: Mapping[str, Any], settings: Settings, cautions: Sequence[str]) -> str:
+    """Comment lines above a CSV: where it comes from, and the cautions that it owes."""
+    crs = source["crs"].splitlines()[0][:80] if source["crs"] else "local metres"
+    lines = [
+        f"run: {source['run']}; SHA-256: {source['hash']}; settings: {settings.digest()}",
+        f"made by leewater {source['versions']['leewater']}, {source['made']}: {source['command']}",
+        f"coordinates: {crs}; levels above: {source['vertical_datum'] or 'not named'}",
+        *(caution(id_).text for id_ in cautions),
+    ]
+    return "".join(f"# {line}\n" for line in lines)
+
+
+def write_package(
+    path: Path, layers: dict[str, geopandas.GeoDataFrame], crs: str | None, about: dict[str, Any], cautions: Sequence[str]
+) -> None:
+    """Write layers to a GeoPackage with a table of their provenance and the cautions owed, whole or not at all."""
     handle, name = tempfile.mkstemp(dir=path.parent, suffix=".gpkg")
     os.close(handle)
     os.unlink(name)
@@ -103,7 +110,8 @@ def write_package(path: Path, layers: dict[str, geopandas.GeoDataFrame], crs: st
             if len(table):
                 table.set_crs(crs).to_file(name, layer=layer, driver="GPKG", engine="pyogrio")
         text = json.dumps(about, sort_keys=True, default=str)
-        note = pd.DataFrame({"key": ["provenance"], "value": [text]})
+        told = [caution(id_).text for id_ in cautions]
+        note = pd.DataFrame({"key": ["provenance", *["caution"] * len(told)], "value": [text, *told]})
         pyogrio.write_dataframe(note, name, layer="provenance", driver="GPKG")
         os.replace(name, path)
     finally:

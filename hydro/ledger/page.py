@@ -6,7 +6,6 @@ import html
 from collections.abc import Mapping
 from typing import Any
 
-from ..cautions import caution
 from ..figure import Figure, printed
 from ..settings import Settings
 
@@ -34,8 +33,7 @@ def page_text(whole: Mapping[str, Any], settings: Settings) -> str:
     if whole.get("eddies"):
         body.append(_lives(whole["eddies"]))
     body += [_frame(entry) for entry in whole["frames"]]
-    ids = dict.fromkeys(c for entry in whole["frames"] for zone in entry["zones"] for c in zone["cautions"])
-    body.append("<h2>Cautions</h2><ul>" + "".join(f"<li>{html.escape(caution(i).text)}</li>" for i in ids) + "</ul>")
+    body.append("<h2>Cautions</h2><ul>" + "".join(f"<li>{html.escape(c['text'])}</li>" for c in whole["cautions"]) + "</ul>")
     body.append(
         f"<footer>SHA-256 {html.escape(str(source['hash']))}; settings {settings.digest()}; leewater "
         f"{html.escape(source['versions']['leewater'])}; {html.escape(source['made'])}; {html.escape(source['command'])}</footer>"

@@ -10,6 +10,7 @@ from typing import Any
 
 import numpy as np
 
+from ..cautions import OWED, told
 from ..eddies import Zone
 from ..mesh import Mesh
 from ..provenance import command_line, file_hash, versions
@@ -49,6 +50,7 @@ def ledger_json(
         "source": source_of(run),
         "settings": dict(settings or run.settings),
         "frames": entries,
+        "cautions": told(OWED["eddies"]),
     }
     eddies = [_plain(asdict(life)) for life in lives]
     if eddies:

@@ -22,7 +22,6 @@ from .sills import sills_of
 from .water import Routes
 
 NOT_EXCLUDED, EXCLUDED, NOT_ASSESSED = "not excluded", "excluded", "not assessed"
-CAUTIONS = ("passage", "endurance")
 _CHANGE = 0.1  # flow that changes by more than this share during the swim is not steady
 
 

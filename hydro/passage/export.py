@@ -11,6 +11,7 @@ from typing import Any
 import geopandas
 import shapely
 
+from ..cautions import OWED, told
 from ..ledger.export import write_package
 from ..provenance import command_line, versions
 from ..review import write_whole
@@ -30,7 +31,7 @@ def write_tables(folder: Path, study: Study) -> list[Path]:
     folder.mkdir(parents=True, exist_ok=True)
     about = {k: v for k, v in passage_json(study).items() if k in ("schema", "review", "sources", "settings", "fish")}
     package = folder / "passage.gpkg"
-    write_package(package, _layers(study), study.answers[0].run.crs, about)
+    write_package(package, _layers(study), study.answers[0].run.crs, about, OWED["passage"])
     reach = study.review.reach
     tables = {
         "passage.csv": [_flat(answer_json(a, reach)) for a in study.answers],
@@ -43,11 +44,12 @@ def write_tables(folder: Path, study: Study) -> list[Path]:
 
 
 def csv_text(rows: Sequence[dict[str, Any]], study: Study) -> str:
-    """Rows as CSV, headed by comment lines that say where they come from."""
+    """Rows as CSV, headed by comment lines that say where they come from and which cautions they owe."""
     out = io.StringIO()
     for entry, run in {a.entry.id: (a.entry, a.run) for a in study.answers}.values():
         out.write(f"# run {entry.id}: {run.name}; SHA-256: {run.hash if run.files else 'no file'}\n")
     out.write(f"# settings: {study.review.settings.digest()}; made by leewater {versions()['leewater']}: {command_line()}\n")
+    out.writelines(f"# {c['text']}\n" for c in told(OWED["passage"]))
     names = list(dict.fromkeys(name for row in rows for name in row))
     writer = csv.DictWriter(out, names, restval="", lineterminator="\n")
     writer.writeheader()

@@ -5,11 +5,11 @@ from __future__ import annotations
 import math
 from typing import Any
 
-from ..cautions import caution
+from ..cautions import OWED, told
 from ..figure import Figure, Source
 from ..ledger.report import source_of, time_text
 from ..reach import Reach
-from .answer import CAUTIONS, Answer, place_of
+from .answer import Answer, place_of
 from .fish import EnduranceLine, Fish
 from .flows import Hydrograph
 from .profile import Barrier, Profile
@@ -34,7 +34,7 @@ def passage_json(study: Study) -> dict[str, Any]:
         "fish": [fish_json(f) for f in kinds.values()],
         "answers": [answer_json(a, reach) for a in study.answers],
         "flows": [flow_json(f) for f in study.flows],
-        "cautions": [{"id": id_, "text": caution(id_).text} for id_ in CAUTIONS],
+        "cautions": told(OWED["passage"]),
     }
 
 
@@ -80,7 +80,7 @@ def answer_json(one: RunAnswer, reach: Reach | None) -> dict[str, Any]:
             "swimmers": one.sampled.swimmers, "not_excluded": one.sampled.not_excluded, "share": one.sampled.share,
             "low": one.sampled.low, "high": one.sampled.high, "seed": one.sampled.seed,
         },
-        "flags": list(answer.flags), "cautions": list(CAUTIONS),
+        "flags": list(answer.flags), "cautions": list(OWED["passage"]),
     }
 
 
@@ -148,7 +148,7 @@ def figures(one: RunAnswer, reach: Reach | None) -> tuple[Figure, ...]:
 
     def figure(quantity: str, value: float | None, unit: str, place=None, note: str = "") -> Figure:
         return Figure(
-            quantity, _number(value), unit, flags=answer.flags, cautions=CAUTIONS, place=place, source=source, note=note,
+            quantity, _number(value), unit, flags=answer.flags, cautions=OWED["passage"], place=place, source=source, note=note,
             extra={"fish": answer.fish.name, "status": answer.status},
         )
 

@@ -7,6 +7,7 @@ from dataclasses import dataclass
 
 import numpy as np
 
+from ..cautions import OWED
 from ..eddies import Zone
 from ..figure import Figure, Place, Source
 from ..frame import Frame
@@ -91,7 +92,7 @@ def eddies(readings: Sequence[Reading]) -> Part:
         tables.append(_balance(r, at))
         says.append(sentence(r.entry.label, r.ledger))
         plates += _plates(r, zones, top)
-    return Part("eddies", "Recirculation zones", tuple(says), tuple(tables), tuple(plates), ("wake-detail", "rotation-time"))
+    return Part("eddies", "Recirculation zones", tuple(says), tuple(tables), tuple(plates), OWED["eddies"])
 
 
 def sentence(label: str, ledger: FrameLedger) -> str:

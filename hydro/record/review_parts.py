@@ -8,15 +8,14 @@ from dataclasses import asdict
 import numpy as np
 
 from ..arrival import audit
+from ..cautions import OWED
 from ..change import Change, compare, pair_frames
 from ..change.matrix import matrices
 from ..checks import AFFLUX, answer, answer_afflux, read_checks
-from ..drift.report import CAUTIONS as DRIFT_CAUTIONS
 from ..drift.report import DriftAnswer
 from ..figure import Figure
 from ..frame import Frame
 from ..passage import Study
-from ..passage.answer import CAUTIONS as PASSAGE_CAUTIONS
 from ..passage.report import figures as passage_figures
 from ..queries import queries
 from ..review import Review
@@ -39,7 +38,7 @@ def arrival(review: Review, readings: Sequence[Reading]) -> Part:
         tables.append(Table(f"findings-{r.entry.id}", f"Findings, {r.entry.label}", ("Grade", "Finding", "What it means", "What to ask"), rows))
     return Part("arrival", "What has arrived, and what must be asked", (
         "Findings only, graded note, ask, or resolve before use; none of them is a verdict on the model.",
-    ), tuple(tables), cautions=("screening",))
+    ), tuple(tables), cautions=OWED["arrival"])
 
 
 def asked(review: Review) -> Part:
@@ -67,7 +66,7 @@ def sections(readings: Sequence[Reading]) -> Part:
         columns = ("Section", "Q, m3/s", "Read within, m3/s", "Q by psi, m3/s", "Q mid-section, m3/s", "Area, m2", "Width, m", "Mean speed, m/s", "Froude", "Level, m", "Head, m")
         tables.append(Table(f"sections-{r.entry.id}", f"Sections, {r.entry.label}", columns, tuple(rows)))
     formulas = Table("formulas", "How the figures of a section are made", ("Figure", "Formula"), tuple(FORMULAS.items()))
-    return Part("sections", "Sections", (), (*tables, formulas), cautions=("section-discharge",))
+    return Part("sections", "Sections", (), (*tables, formulas), cautions=OWED["sections"])
 
 
 def pairs(readings: Sequence[Reading]) -> list[tuple[Reading, Reading]]:
@@ -104,7 +103,7 @@ def change(compared: Sequence[tuple[Reading, Reading, Change]]) -> Part:
             tables.append(Table(f"afflux-{key}", f"Rise of the width-mean level, {label}", ("Chainage, m", "Rise, m", "Outside the works"), rows))
     if not compared:
         says = ["No two runs of one event in two designs are read in this record; nothing is compared."]
-    return Part("change", "What changes", tuple(says), tuple(tables), cautions=("change",))
+    return Part("change", "What changes", tuple(says), tuple(tables), cautions=tuple(dict.fromkeys([*OWED["change"], *(i for _, _, c in compared for i in c.cautions)])))
 
 
 def checks(review: Review, readings: Sequence[Reading], compared: Sequence[tuple[Reading, Reading, Change]]) -> Part:
@@ -139,12 +138,12 @@ def drift_part(answers: Sequence[DriftAnswer]) -> Part:
         says += [f"{label}: {text}" for text in one.sentences()]
 
         def share(name: str, s) -> Figure:
-            return Figure(name, 100 * s.value, "%", 100 * s.low, 100 * s.high, cautions=DRIFT_CAUTIONS)
+            return Figure(name, 100 * s.value, "%", 100 * s.low, 100 * s.high, cautions=OWED["drift"])
 
         rows: list[tuple[str | Figure, ...]] = [(p.name, share("touch", base.touches(i)), share("lodge", base.lodges(i)), "") for i, p in enumerate(base.piers)]
         rows += [(o.name, "", "", share("pass", base.passes(i))) for i, o in enumerate(base.openings)]
         tables.append(Table(f"drift-{one.entry.id}", f"Of {len(base.state):,} modelled logs, {label}", ("Where", "Touch, %", "Lodge, %", "Pass, %"), tuple(rows)))
-    return Part("drift", "Floating wood", tuple(says), tuple(tables), cautions=DRIFT_CAUTIONS)
+    return Part("drift", "Floating wood", tuple(says), tuple(tables), cautions=OWED["drift"])
 
 
 def passage_part(found: Study | None) -> Part:
@@ -156,7 +155,7 @@ def passage_part(found: Study | None) -> Part:
         says.append(f"{one.entry.label}: {one.answer.sentence}")
         rows = tuple((f.quantity, f, f.unit, f.note) for f in passage_figures(one, None))
         tables.append(Table(f"passage-{one.entry.id}-{i}", f"{one.answer.fish.name}, {one.entry.label}", ("Figure", "Value", "Unit", "Note"), rows))
-    return Part("passage", "Fish passage", tuple(says), tuple(tables), cautions=PASSAGE_CAUTIONS)
+    return Part("passage", "Fish passage", tuple(says), tuple(tables), cautions=OWED["passage"])
 
 
 def _limit(check) -> str:

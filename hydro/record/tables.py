@@ -1,10 +1,11 @@
-"""The record's tables as CSV: the printed text and the full digits side by side."""
+"""The record's tables as CSV: the printed text and the full digits side by side, headed by the cautions they owe."""
 
 from __future__ import annotations
 
 import csv
 from pathlib import Path
 
+from ..cautions import told
 from ..figure import Figure
 from .model import Record, Table, cell_text
 
@@ -16,6 +17,7 @@ def write_csv(record: Record, folder: Path) -> list[Path]:
         for table in part.tables:
             path = folder / f"{table.id}.csv"
             with open(path, "w", newline="", encoding="utf-8") as stream:
+                stream.writelines(f"# {c['text']}\n" for c in told([*part.cautions, *(i for _, f in table.figures() for i in f.cautions)]))
                 csv.writer(stream).writerows(_rows(table))
             out.append(path)
     return out

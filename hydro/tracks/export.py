@@ -9,7 +9,8 @@ import numpy as np
 import pandas as pd
 import shapely
 
-from ..ledger.export import write_package
+from ..cautions import OWED, told
+from ..ledger.export import csv_heading, write_package
 from ..ledger.report import source_of
 from ..reach import CentreLine
 from ..review import write_whole
@@ -51,7 +52,11 @@ def write_tracks(folder: Path, run: Run, traced: Traced, centre_line: CentreLine
     """tracks.gpkg (lines), points.csv and points.parquet in ``folder``."""
     folder.mkdir(parents=True, exist_ok=True)
     table = points_table(run, traced, centre_line)
-    write_whole(folder / "points.csv", table.to_csv(index=False))
+    source = source_of(run)
+    write_whole(folder / "points.csv", csv_heading(source, run.settings, OWED["tracks"]) + table.to_csv(index=False))
+    # pandas keeps attrs in the file's metadata.
+    table.attrs = {"source": source, "cautions": told(OWED["tracks"])}
     table.to_parquet(folder / "points.parquet")
-    write_package(folder / "tracks.gpkg", {"lines": lines_table(run, traced)}, run.crs, {"source": source_of(run), "warnings": traced.warnings})
+    about = {"source": source, "warnings": traced.warnings}
+    write_package(folder / "tracks.gpkg", {"lines": lines_table(run, traced)}, run.crs, about, OWED["tracks"])
     return [folder / n for n in ("points.csv", "points.parquet", "tracks.gpkg")]
