@@ -13,6 +13,7 @@ from hydro.queries import ask, change
 
 from . import theme
 from .choices import Choices, History, from_query
+from .packs import PACKS
 from .questions import QUESTIONS, saving
 from .questions.base import Desk, Question, Sizes
 from .questions.moments import window_for, window_of
@@ -203,6 +204,12 @@ class Page:
     def on_record(self, _: str) -> None:
         self.studies.make_record()
 
+    def on_pack(self, kind: str) -> None:
+        self.studies.packs.make(kind)
+
+    def on_unpack(self, kind: str) -> None:
+        self.studies.packs.stop(kind)
+
     def on_try(self, _: str) -> None:
         self.studies.try_settings(self.desk().run_id)
 
@@ -367,7 +374,7 @@ class Page:
     def _told(self, key: Any) -> None:
         """A result is ready (called from the worker)."""
         self._finished.add(key)
-        if key in (QUERIES, SHARES) or (isinstance(key, tuple) and key[0] == TRIED):
+        if key in (QUERIES, SHARES, PACKS) or (isinstance(key, tuple) and key[0] == TRIED):
             self.later(self.refresh)
         elif self.screen.awaits(key):
             self.later(self._ready)

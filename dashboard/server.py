@@ -12,16 +12,20 @@ import socket
 import threading
 import webbrowser
 from pathlib import Path
+from typing import Any
 
 os.environ["BOKEH_RESOURCES"] = "server"  # before bokeh is imported: a user's own value could name other machines
 
 import panel as pn  # noqa: E402
-from tornado.web import OutputTransform, RequestHandler, StaticFileHandler  # noqa: E402
+from tornado.web import HTTPError, OutputTransform, RequestHandler, StaticFileHandler  # noqa: E402
 from tornado.websocket import WebSocketClosedError  # noqa: E402
 
 from . import theme  # noqa: E402
+from .pack import is_pack  # noqa: E402
+from .packs import Packs  # noqa: E402
 from .page import Page  # noqa: E402
 from .reading import Reading  # noqa: E402
+from .results import Working  # noqa: E402
 from .studies import Studies  # noqa: E402
 from .wire import WEB  # noqa: E402
 
@@ -33,18 +37,21 @@ _POLICY = (
     "form-action 'none'; frame-ancestors 'none'"
 )
 
+_PACK_POLICY = _POLICY.replace(" 'nonce-{nonce}'", "")
+
 
 class Policy(OutputTransform):
     """Adds a nonce to every script of a page and sends the content policy with it.
 
-    Pages are sent whole in one chunk; one that is not gets no nonce and so runs no script.
+    Pages are sent whole in one chunk; one that is not gets no nonce and so runs no script. A page that comes
+    with a policy of its own keeps it.
     """
 
     def __init__(self, request) -> None:
         pass
 
     def transform_first_chunk(self, status_code, headers, chunk, finishing):
-        if headers.get("Content-Type", "").startswith("text/html"):
+        if headers.get("Content-Type", "").startswith("text/html") and "Content-Security-Policy" not in headers:
             nonce = secrets.token_urlsafe(16)
             chunk = re.sub(rb"<script(?=[\s>])", f'<script nonce="{nonce}"'.encode(), chunk)
             if "Content-Length" in headers:
@@ -98,6 +105,43 @@ class Web(StaticFileHandler):
             self.set_header("Content-Type", "font/woff2")
 
 
+class PackFile(StaticFileHandler):
+    """A file of a finished pack, from the review's exports and nowhere else."""
+
+    def initialize(self, packs: Packs) -> None:  # type: ignore[override]
+        self.packs = packs
+        super().initialize("", "index.html")
+
+    def prepare(self) -> None:
+        """Find the exports, which are known once the review is open."""
+        try:
+            folder = self.packs.folder
+        except (Working, ValueError, OSError):
+            folder = None
+        if folder is None:
+            raise HTTPError(404)
+        self.root = str(folder)
+
+    def validate_absolute_path(self, root: str, absolute_path: str) -> str | None:
+        """Only what truly lies, links followed, in a folder that is a pack."""
+        exports, wanted = Path(root).resolve(), Path(absolute_path).resolve()
+        inside = wanted.relative_to(exports).parts if wanted.is_relative_to(exports) else ()
+        if not inside or not is_pack(exports / inside[0]):
+            raise HTTPError(404)
+        return super().validate_absolute_path(str(exports / inside[0]), str(wanted))
+
+    def write_error(self, status_code: int, **kwargs: Any) -> None:
+        """One sentence in place of a bare number."""
+        self.set_header("Content-Type", "text/plain; charset=utf-8")
+        self.finish("There is no such pack here; make one under Record.\n" if status_code == 404 else f"{status_code}\n")
+
+    def set_extra_headers(self, path: str) -> None:
+        self.set_header("Cache-Control", "no-cache")
+        self.set_header("Content-Security-Policy", _PACK_POLICY)
+        self.set_header("X-Content-Type-Options", "nosniff")
+        self.set_header("Referrer-Policy", "no-referrer")
+
+
 def manifest() -> dict:
     """The web app manifest."""
     return {
@@ -113,7 +157,7 @@ def manifest() -> dict:
 
 def stored_files() -> list[str]:
     """Addresses that the worker stores at once."""
-    web = ["/web/offline.html", "/web/offline.js", "/web/desk.css", "/web/theme.css", "/manifest.webmanifest"]
+    web = ["/web/offline.html", "/web/offline.js", "/web/stored.js", "/web/desk.css", "/web/theme.css", "/manifest.webmanifest"]
     fonts = [f"/web/fonts/{p.name}" for p in sorted((WEB / "fonts").glob("*.woff2"))]
     return web + fonts + [f"/icons/{p.name}" for p in sorted((WEB / "icons").iterdir())]
 
@@ -216,6 +260,7 @@ def make_server(reading: Reading, port: int):
         extra_patterns=[
             (r"/ping", Ping), (r"/sw\.js", Worker), (r"/manifest\.webmanifest", Manifest), (r"/web/theme\.css", Theme),
             (r"/web/(.*)", Web, static), (r"/icons/(.*)", Web, {"path": str(WEB / "icons")}),
+            (r"/pack/(pack-.*)", PackFile, {"packs": studies.packs}),
         ],
     )
     server._tornado.transforms.append(Policy)

@@ -18,6 +18,7 @@ from hydro.record.build import Material, build_record
 from hydro.record.write import write_record
 from hydro.review import open_review
 
+from .packs import Packs
 from .reading import Reading
 from .results import SOON
 
@@ -46,6 +47,7 @@ class Studies:
         self._record_wanted = False
         self.shares: dict[str, float] = {}  # how far the drift of a run is, 0 to 1
         self._stopped: set[str] = set()
+        self.packs = Packs(reading)
 
     def audit(self, run_id: str) -> list[Finding]:
         """What there is to ask about a run, gravest first."""

@@ -32,7 +32,7 @@ def run(args: argparse.Namespace) -> int:
     from dashboard.pack import gather, write_folder, write_single
 
     folder = Path(args.out or (review.folder if review else Path(args.review).resolve().parent) / "pack")
-    pack = gather(args.review, args.runs, team=args.team, progress=lambda text: print(text, file=sys.stderr))
+    pack = gather(args.review, args.runs, team=args.team, progress=_print)
     written = write_single(pack, folder / "pack.html") if args.single else write_folder(pack, folder)
     if args.json:
         text = json.dumps(_listed(pack, folder, written), indent=1)
@@ -46,6 +46,11 @@ def run(args: argparse.Namespace) -> int:
     if not args.team:
         print("No query, person or path of the review is in it; --team puts the queries in.")
     return 0
+
+
+def _print(label: str, done: int, whole: int) -> None:
+    if done % 10 == 0 or done == whole:
+        print(f"{label} ({100 * done // whole} %)", file=sys.stderr)
 
 
 def _listed(pack, folder: Path, written: list[Path]) -> dict:

@@ -5,6 +5,7 @@ from __future__ import annotations
 import hashlib
 from collections.abc import Callable, Sequence
 from dataclasses import asdict, dataclass
+from functools import partial
 from pathlib import Path
 from typing import Any
 
@@ -47,7 +48,8 @@ class Pack:
 
 
 def gather(
-    path: Path | str, runs: Sequence[str] = (), *, team: bool = False, progress: Callable[[str], None] = lambda text: None,
+    path: Path | str, runs: Sequence[str] = (), *, team: bool = False,
+    progress: Callable[[str, int, int], None] = lambda label, done, whole: None,
 ) -> Pack:
     """Everything a pack of a review, or of one results file, shows.
 
@@ -60,7 +62,7 @@ def gather(
         With the review's queries, their authors, and a place to write new ones. Without it the pack names no
         person, no query and no path.
     progress : callable
-        Called with a line of text now and then.
+        Called with what is being done, and how many steps of the whole are done; what it raises ends the work.
 
     Raises
     ------
@@ -74,11 +76,11 @@ def gather(
     chosen = [_known(matter, r) for r in runs] or _default_runs(reading, matter, stops)
     units = matter.review.contents.units if matter.review and matter.review.contents.units in UNITS else "SI"
     items: dict[str, str] = {}
-    told = []
-    for number, run_id in enumerate(chosen):
-        chapter = Chapter(reading, run_id, units)
-        _tell(chapter, f"r{number}", items, progress)
-        told.append(chapter)
+    told = [Chapter(reading, run_id, units) for run_id in chosen]
+    whole, done = 2 * sum(chapter.run.n_frames for chapter in told), 0
+    for number, chapter in enumerate(told):
+        _tell(chapter, f"r{number}", items, partial(_onward, progress, done, whole))
+        done += 2 * chapter.run.n_frames
     log = tuple(queries(matter.review.folder)) if team and matter.review else ()
     head = _head(matter, told, _kept_stops(stops, chosen), log, team, items)
     places = _places(matter, told, log, team)
@@ -100,13 +102,18 @@ def _default_runs(reading: Reading, matter: Matter, stops: Sequence[Stop]) -> li
     return [next((i for i in ids if reading.run(i).n_frames > 1), ids[0])]
 
 
-def _tell(chapter: Chapter, key: str, items: dict[str, str], progress: Callable[[str], None]) -> None:
+def _onward(progress: Callable[[str, int, int], None], before: int, whole: int, label: str, done: int) -> None:
+    """Steps of one run, counted on from those of the runs before it."""
+    progress(label, before + done, whole)
+
+
+def _tell(chapter: Chapter, key: str, items: dict[str, str], progress: Callable[[str, int], None]) -> None:
     n, label = chapter.run.n_frames, chapter.reading.label(chapter.run_id)
-    chapter.prepare(lambda done, all_: progress(f"{label}: eddies of frame {done} of {all_}") if done % 10 == 0 or done == all_ else None)
+    chapter.prepare(lambda done, all_: progress(f"{label}: eddies of frame {done} of {all_}", done))
     items[key] = chapter.head()
     for i in range(n):
         items[f"{key}-f{i}"] = chapter.frame(i)
-    progress(f"{label}: {n} {'frame' if n == 1 else 'frames'} packed")
+        progress(f"{label}: frame {i + 1} of {n} packed", n + i + 1)
 
 
 def _kept_stops(stops: Sequence[Stop], runs: Sequence[str]) -> list[dict[str, Any]]:

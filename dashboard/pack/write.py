@@ -56,6 +56,12 @@ def write_folder(pack: Pack, folder: Path) -> list[Path]:
     return [*written, *(folder / name for name in copied)]
 
 
+def is_pack(folder: Path) -> bool:
+    """Whether a folder holds a whole pack: its page, which is written last, says so."""
+    page = folder / "index.html"
+    return page.is_file() and _MARK in page.read_text("utf-8", errors="replace")
+
+
 def write_single(pack: Pack, file: Path) -> list[Path]:
     """Write a pack as one HTML file; its scripts are known to the page's policy by their hashes."""
     file.parent.mkdir(parents=True, exist_ok=True)
@@ -77,8 +83,7 @@ def _put(path: Path, content: str | bytes) -> None:
 def _refuse_other_things(folder: Path) -> None:
     if not folder.exists() or (folder.is_dir() and not any(folder.iterdir())):
         return
-    page = folder / "index.html"
-    if not page.is_file() or _MARK not in page.read_text("utf-8", errors="replace"):
+    if not is_pack(folder):
         raise ValueError(f"{folder} holds something that is no pack; name a new or empty folder with --out.")
 
 

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from .. import text
+from ..views import pack_list
 from .base import Desk, Question
 
 
@@ -40,11 +41,13 @@ class Record(Question):
         if desk.reading.matter().review is None:
             return {}
         button = '<button type="button" class="plain first" data-do="record" data-value="" data-key="record">{}</button>'
+        packs = desk.studies.packs
+        shelf = pack_list.html(packs.finished(), packs.making, packs.trouble)
         made = desk.studies.made_record()
         if made is None:
-            return {"body": button.format("Make the record")}
+            return {"body": button.format("Make the record") + shelf}
         files = "".join(f"<li>{text.safe(name)}</li>" for name in made.files)
-        return {"body": f"<h2>Written to {text.safe(made.folder)}</h2><ul>{files}</ul>{button.format('Make it again')}"}
+        return {"body": f"<h2>Written to {text.safe(made.folder)}</h2><ul>{files}</ul>{button.format('Make it again')}{shelf}"}
 
     def cautions(self, desk: Desk) -> tuple[str, ...]:
         return ("screening", "sensitivity", "wake-detail", "no-roller")

@@ -1,24 +1,14 @@
 // The page that stands in for the desk: lists the packs stored here, and goes back when the desk answers.
 
-const list = document.getElementById("packs");
+import { link, storedPacks } from "./stored.js";
 
 async function packs() {
-  const found = new Set();
-  for (const name of await caches.keys()) {
-    for (const request of await (await caches.open(name)).keys()) {
-      const match = new URL(request.url).pathname.match(/^\/pack\/(.*)index\.html$/);
-      if (match) found.add(`/pack/${match[1]}index.html`);
-    }
-  }
-  document.getElementById("packs-title").hidden = found.size === 0;
-  for (const path of found) {
-    const link = document.createElement("a");
-    link.href = path;
-    link.className = "plain first";
-    link.textContent = `Open ${decodeURIComponent(path.replace("/pack/", "").replace("/index.html", "").replace("index.html", "")) || "the pack"}`;
+  const found = await storedPacks();
+  document.getElementById("packs-title").hidden = found.length === 0;
+  for (const pack of found) {
     const item = document.createElement("li");
-    item.append(link);
-    list.append(item);
+    item.append(link(pack));
+    document.getElementById("packs").append(item);
   }
 }
 

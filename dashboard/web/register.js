@@ -1,5 +1,7 @@
 // Registers the worker that answers when the desk has stopped, and tells the open page when that happens.
 
+import { link, storedPacks } from "./stored.js";
+
 if ("serviceWorker" in navigator) navigator.serviceWorker.register("/sw.js");
 
 const root = document.documentElement;
@@ -21,7 +23,15 @@ async function ask() {
 function lost(gone) {
   root.dataset.lost = gone ? "yes" : "";
   const note = document.getElementById("lost");
-  if (note && note.hidden === gone) note.hidden = !gone;
+  if (!note || note.hidden !== gone) return;
+  note.hidden = !gone;
+  if (gone && window.caches) offer();
+}
+
+async function offer() {
+  const place = document.getElementById("lost-packs");
+  const packs = await storedPacks();
+  place.replaceChildren(...(packs.length ? ["These packs are stored on this machine: "] : []), ...packs.map(link));
 }
 
 setInterval(ask, every);

@@ -1,7 +1,7 @@
-// Answers when the desk does not: stored packs and one page that says so. Panel's own pages are never stored.
+// Answers when the desk does not, with one page that says so. Panel's own pages are never stored; a pack keeps itself.
 
 const VERSION = "{{version}}";
-const CACHE = `leewater-${VERSION}`;
+const CACHE = `leewater-desk-${VERSION}`;
 const FIRST = [{{files}}];
 
 self.addEventListener("install", (e) => {
@@ -9,7 +9,7 @@ self.addEventListener("install", (e) => {
 });
 
 self.addEventListener("activate", (e) => {
-  const old = (names) => names.filter((name) => name.startsWith("leewater-") && name !== CACHE);
+  const old = (names) => names.filter((name) => name.startsWith("leewater-desk-") && name !== CACHE);
   e.waitUntil(
     caches
       .keys()
@@ -22,8 +22,7 @@ self.addEventListener("fetch", (e) => {
   const url = new URL(e.request.url);
   if (e.request.method !== "GET" || url.origin !== location.origin) return;
   if (url.pathname === "/ping" || url.pathname.endsWith("/ws")) return;
-  if (url.pathname.startsWith("/pack/")) e.respondWith(freshElseStored(e.request));
-  else if (e.request.mode === "navigate") e.respondWith(fetch(e.request).catch(() => caches.match("/web/offline.html")));
+  if (e.request.mode === "navigate") e.respondWith(fetch(e.request).catch(() => caches.match("/web/offline.html")));
   else if (url.pathname.startsWith("/static/")) e.respondWith(storedElseFresh(e.request));
   else if (/^\/(web|icons)\//.test(url.pathname)) e.respondWith(freshElseStored(e.request));
 });
