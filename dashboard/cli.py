@@ -8,7 +8,10 @@ import os
 import sys
 import traceback
 
-COMMANDS = ("open", "arrival", "eddies", "section", "trace", "drift", "passage", "change", "settings", "record", "pack")
+COMMANDS = (
+    "begin", "open", "arrival", "eddies", "section", "trace", "drift", "passage", "change", "observed", "queries", "relation",
+    "settings", "record", "pack",
+)
 
 
 def main(argv: list[str] | None = None) -> int:

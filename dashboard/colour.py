@@ -84,14 +84,3 @@ def ramp(knots: list[str], count: int) -> np.ndarray:
     along = np.concatenate([[0.0], np.cumsum(ciede2000(path[:-1], path[1:]))])
     even = np.interp(np.linspace(0, along[-1], count), along, fine)
     return np.column_stack([np.interp(even, fine, path[:, k]) for k in range(3)])
-
-
-def contrast(first: str, second: str) -> float:
-    """Contrast ratio of two "#rrggbb" by WCAG 2.2, 1 to 21."""
-    light = sorted(_luminance(rgb(c)) for c in (first, second))
-    return (light[1] + 0.05) / (light[0] + 0.05)
-
-
-def _luminance(colour: np.ndarray) -> float:
-    linear = np.where(colour <= 0.04045, colour / 12.92, ((colour + 0.055) / 1.055) ** 2.4)
-    return float(linear @ np.array([0.2126, 0.7152, 0.0722]))

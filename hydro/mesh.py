@@ -144,10 +144,6 @@ class Mesh:
         """Local coordinates (..., 2) to world ones, m."""
         return np.asarray(xy, float) + self.origin
 
-    def face_to_triangle(self, values: np.ndarray) -> np.ndarray:
-        """Values (f, ...) of faces repeated for their triangles (m, ...)."""
-        return values[self.triangle_face]
-
     def triangle_to_face(self, values: np.ndarray) -> np.ndarray:
         """Area-weighted mean (f, ...) of values (m, ...) on triangles."""
         if self.n_triangles == self.n_faces:

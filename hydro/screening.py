@@ -110,7 +110,11 @@ def critical_shields_speed(depth_m: float, grain_m: float, *, shields: float = 0
     """Depth-averaged speed at which grains of this size begin to move, m/s; Shields with Manning-Strickler.
 
     u*^2 = theta (s - 1) g d and V = u* h^(1/6) / (sqrt(g) n), n = d^(1/6) / 21.1 (Strickler; from memory).
-    A relation for uniform grains and h well above d; outside h/d > 5 it says nothing.
+    A relation for uniform grains and h well above d.
+
+    Raises ``ValueError`` below h/d = 5, where the relation says nothing.
     """
+    if not (grain_m > 0 and depth_m > 5 * grain_m):
+        raise ValueError(f"depth is {depth_m:g} m over grains of {grain_m:g} m; the relation says nothing below five grains of depth.")
     shear = math.sqrt(shields * submerged * G * grain_m)
     return shear * depth_m ** (1 / 6) * 21.1 / (math.sqrt(G) * grain_m ** (1 / 6))

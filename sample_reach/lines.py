@@ -149,8 +149,9 @@ def _receptors() -> list[dict]:
         return float(geo.half_bottom(s)) + geo.BANK_WIDTH
 
     return [
-        {"id": "e4bm", "name": "Mill house garden", "kind": "property", "geometry": _patch(480, 500, -bank(490), -bank(490) - 14)},
-        {"id": "e9ls", "name": "Allotments", "kind": "property", "geometry": _patch(590, 630, bank(610), bank(610) + 18)},
+        {"id": "e4bm", "name": "Mill house garden", "kind": "property", "geometry": _patch(480, 500, 3.4 - bank(490), -bank(490) - 10)},
+        {"id": "e9ls", "name": "Allotments", "kind": "property", "geometry": _patch(590, 630, bank(610) - 2.4, bank(610) + 14)},
+        {"id": "e7tp", "name": "Foot path under the bridge", "kind": "path", "geometry": _patch(642, 668, 3.6 - bank(655), 2.2 - bank(655))},
         {"id": "e2gk", "name": "Spawning gravel", "kind": "habitat", "geometry": _patch(575, 600, -9, 9)},
     ]
 

@@ -3,6 +3,23 @@
 from __future__ import annotations
 
 import argparse
+import json
+from pathlib import Path
+from typing import Any
+
+
+def write_json(where: str | None, content: dict[str, Any]) -> bool:
+    """Write a command's answer as ``--json`` asks; True where it went to standard output, so that nothing else may."""
+    from hydro.review import write_whole
+
+    if not where:
+        return False
+    text = json.dumps(content, indent=1, allow_nan=False)
+    if where == "-":
+        print(text)
+        return True
+    write_whole(Path(where), text + "\n")
+    return False
 
 
 def frame_index(run, args: argparse.Namespace) -> int:

@@ -3,9 +3,10 @@
 from __future__ import annotations
 
 import argparse
-import json
 import sys
 from pathlib import Path
+
+from . import write_json
 
 HELP = "what has arrived, and what must be asked before relying on it"
 
@@ -19,7 +20,6 @@ def arguments(parser: argparse.ArgumentParser) -> None:
 def run(args: argparse.Namespace) -> int:
     from hydro.arrival import audit
     from hydro.arrival.ask import request_sheet, write_sheet
-    from hydro.review import write_whole
 
     reports: list = []
     last: tuple = (None, None, [])
@@ -33,9 +33,7 @@ def run(args: argparse.Namespace) -> int:
     if args.ask:
         for path in write_sheet(Path(args.ask), request_sheet(*last)):
             print(path, file=sys.stderr)
-    if args.json:
-        text = json.dumps({"schema": "leewater/arrival/1", "runs": reports}, indent=1, allow_nan=False)
-        print(text) if args.json == "-" else write_whole(Path(args.json), text + "\n")
+    write_json(args.json, {"schema": "leewater/arrival/1", "runs": reports})
     return 0
 
 

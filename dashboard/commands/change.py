@@ -3,8 +3,9 @@
 from __future__ import annotations
 
 import argparse
-import json
 from pathlib import Path
+
+from . import write_json
 
 HELP = "what changes from one run to another: levels, eddies, openings, wet ground"
 
@@ -24,7 +25,6 @@ def arguments(parser: argparse.ArgumentParser) -> None:
 def run(args: argparse.Namespace) -> int:
     from hydro.change import compare, pair_frames
     from hydro.change.export import change_json, write_change
-    from hydro.review import write_whole
 
     (a, reach_a), (b, reach_b) = _opened(args.run_a), _opened(args.run_b)
     pairs = pair_frames(a, b, args.pair, **(_inflows(a, b, reach_a, reach_b) if args.pair == "discharge" else {}))
@@ -37,13 +37,8 @@ def run(args: argparse.Namespace) -> int:
     )
     if args.out:
         write_change(Path(args.out), change)
-    if args.json:
-        text = json.dumps(change_json(change), indent=1, allow_nan=False)
-        if args.json == "-":
-            print(text)
-            return 0
-        write_whole(Path(args.json), text + "\n")
-    _print(change)
+    if not args.json or not write_json(args.json, change_json(change)):
+        _print(change)
     return 0
 
 

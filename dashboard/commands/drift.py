@@ -3,9 +3,10 @@
 from __future__ import annotations
 
 import argparse
-import json
 import sys
 from pathlib import Path
+
+from . import write_json
 
 HELP = "where floating wood goes, and what it meets"
 
@@ -20,7 +21,7 @@ def arguments(parser: argparse.ArgumentParser) -> None:
 
 def run(args: argparse.Namespace) -> int:
     from hydro.drift.report import SCHEMA, answer_json, study, write_drift
-    from hydro.review import open_any, write_whole
+    from hydro.review import open_any
 
     review, _ = open_any(args.review)
     if review is None:
@@ -38,9 +39,7 @@ def run(args: argparse.Namespace) -> int:
 
         for id_ in OWED["drift"]:
             print(f"  {caution(id_).text}")
-    if args.json:
-        text = json.dumps({"schema": SCHEMA, "runs": answers}, indent=1, allow_nan=False)
-        print(text) if args.json == "-" else write_whole(Path(args.json), text + "\n")
+    write_json(args.json, {"schema": SCHEMA, "runs": answers})
     return 0
 
 

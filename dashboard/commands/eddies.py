@@ -3,10 +3,11 @@
 from __future__ import annotations
 
 import argparse
-import json
 import os
 import sys
 from pathlib import Path
+
+from . import write_json
 
 HELP = "stream function and recirculation zones of a run"
 
@@ -26,13 +27,13 @@ def arguments(parser: argparse.ArgumentParser) -> None:
 
 
 def run(args: argparse.Namespace) -> int:
-    from hydro.ledger import FrameReader, reach_of
+    from hydro.ledger import FrameReader
     from hydro.review import open_results
 
     from . import frame_index
 
     review, run = open_results(args.file)
-    reach = reach_of(review, run)
+    reach = review.reach_for(run) if review else None
     if args.all:
         return _all(args, run, reach)
     reader = FrameReader(run, reach=reach)
@@ -107,17 +108,11 @@ def _progress(done: int, whole: int) -> None:
 
 def _write(args: argparse.Namespace, run, frames, **more) -> None:
     from hydro.ledger import ledger_json, write_tables
-    from hydro.review import write_whole
 
     if args.out:
         write_tables(Path(args.out), run, frames, lives=more.get("lives", ()), instants=more.get("instants"))
-    if not args.json:
-        return
-    text = json.dumps(ledger_json(run, frames, **more), indent=1, allow_nan=False)
-    if args.json == "-":
-        print(text)
-    else:
-        write_whole(Path(args.json), text + "\n")
+    if args.json:
+        write_json(args.json, ledger_json(run, frames, **more))
 
 
 def _out(args: argparse.Namespace):

@@ -3,9 +3,10 @@
 from __future__ import annotations
 
 import argparse
-import json
 import sys
 from pathlib import Path
+
+from . import write_json
 
 HELP = "write a pack: a folder that shows a review in any browser with no Python and no network"
 
@@ -24,7 +25,7 @@ def arguments(parser: argparse.ArgumentParser) -> None:
 
 
 def run(args: argparse.Namespace) -> int:
-    from hydro.review import open_any, write_whole
+    from hydro.review import open_any
 
     review, _ = open_any(args.review)
     if args.take:
@@ -34,12 +35,8 @@ def run(args: argparse.Namespace) -> int:
     folder = Path(args.out or (review.folder if review else Path(args.review).resolve().parent) / "pack")
     pack = gather(args.review, args.runs, team=args.team, progress=_print)
     written = write_single(pack, folder / "pack.html") if args.single else write_folder(pack, folder)
-    if args.json:
-        text = json.dumps(_listed(pack, folder, written), indent=1)
-        if args.json == "-":
-            print(text)
-            return 0
-        write_whole(Path(args.json), text + "\n")
+    if write_json(args.json, _listed(pack, folder, written)):
+        return 0
     size = sum(p.stat().st_size for p in written) / 1e6
     opening = written[0] if args.single else folder / "index.html"
     print(f"{len(written)} {'file' if len(written) == 1 else 'files'}, {size:.1f} MB. Open {opening} in a browser.")

@@ -3,9 +3,10 @@
 from __future__ import annotations
 
 import argparse
-import json
 import sys
 from pathlib import Path
+
+from . import write_json
 
 HELP = "whether a way upstream is excluded for the fish of a review"
 
@@ -23,7 +24,7 @@ def arguments(parser: argparse.ArgumentParser) -> None:
 
 def run(args: argparse.Namespace) -> int:
     from hydro.passage import passage_json, study, write_tables
-    from hydro.review import open_any, write_whole
+    from hydro.review import open_any
 
     review, _ = open_any(args.review)
     if review is None:
@@ -33,13 +34,8 @@ def run(args: argparse.Namespace) -> int:
     )
     if args.out:
         write_tables(Path(args.out), found)
-    text = json.dumps(passage_json(found), indent=1, allow_nan=False) if args.json else ""
-    if args.json == "-":
-        print(text)
-        return 0
-    if args.json:
-        write_whole(Path(args.json), text + "\n")
-    _table(found, sys.stdout)
+    if not args.json or not write_json(args.json, passage_json(found)):
+        _table(found, sys.stdout)
     return 0
 
 

@@ -3,9 +3,10 @@
 from __future__ import annotations
 
 import argparse
-import json
 import sys
 from pathlib import Path
+
+from . import write_json
 
 HELP = "write the review record of a review, or derive one again and compare"
 
@@ -21,7 +22,7 @@ def run(args: argparse.Namespace) -> int:
     from hydro.record.build import Material, build_record
     from hydro.record.model import as_json
     from hydro.record.write import write_record
-    from hydro.review import open_review, write_whole
+    from hydro.review import open_review
 
     review = open_review(args.review)
     if args.verify:
@@ -29,8 +30,7 @@ def run(args: argparse.Namespace) -> int:
     material = Material(review, _say)
     record = build_record(material)
     if args.json:
-        text = json.dumps(as_json(record), indent=1, allow_nan=False)
-        print(text) if args.json == "-" else write_whole(Path(args.json), text + "\n")
+        write_json(args.json, as_json(record))
         return 0
     written = write_record(record, Path(args.out or review.folder / "record"), review=review, readings=material.readings)
     print(f"{len(record.figures())} figures in {len(record.parts)} parts, {len(record.cautions())} cautions.")

@@ -6,6 +6,8 @@ import argparse
 import json
 from pathlib import Path
 
+from . import write_json
+
 HELP = "a cross-section or a profile: discharge three ways, area, levels, head"
 
 
@@ -19,41 +21,116 @@ def arguments(parser: argparse.ArgumentParser) -> None:
     which.add_argument("--frame", type=int, metavar="N", help="frame N, counted from 0 (default: the last)")
     which.add_argument("--time", metavar="T", help="the frame nearest to T: seconds from the start, or an ISO date and time")
     which.add_argument("--all", action="store_true", help="every frame")
-    parser.add_argument("--profile", action="store_true", help="take the lines as profiles along the flow")
+    what = parser.add_mutually_exclusive_group()
+    what.add_argument("--profile", action="store_true", help="take the lines as profiles along the flow")
+    what.add_argument(
+        "--weirs", metavar="RELATION", help="the review's weirs: section heads, and the discharge by broad-crested, rehbock or kindsvater-carter"
+    )
+    what.add_argument("--openings", action="store_true", help="the review's bridge openings: flow, approach, freeboard")
+    what.add_argument(
+        "--places", type=float, metavar="DEPTH", help="the review's named places over the whole run: peaks, time above this depth in m, arrival"
+    )
+    what.add_argument("--envelope", metavar="FILE.gpkg", help="the greatest depth, level and speed of every face over the run, as a GeoPackage")
     parser.add_argument("--json", metavar="FILE", help="write the figures as JSON (- for standard output)")
-    parser.add_argument("--out", metavar="DIR", help="write sections.csv (or profile-NAME.csv) here")
+    parser.add_argument("--out", metavar="DIR", help="write the table as CSV here: sections, profile-NAME, weirs, openings or places")
 
 
 def run(args: argparse.Namespace) -> int:
-    from hydro.cautions import OWED, told
-    from hydro.ledger.export import csv_heading
-    from hydro.ledger.report import source_of
-    from hydro.review import open_results, write_whole
-    from hydro.section.table import section_table
+    from hydro.review import open_results
 
     from . import frame_index
 
     review, run_ = open_results(args.file)
+    frames = range(run_.n_frames) if args.all else [frame_index(run_, args)]
+    if args.envelope:
+        return _envelope(args, run_)
+    if args.weirs or args.openings or args.places is not None:
+        return _works(args, review, run_, frames)
     lines = _lines(args.line, review, run_)
     if args.profile:
         return _profiles(args, run_, lines)
+    return _sections(args, review, run_, lines, frames)
+
+
+def _sections(args, review, run_, lines, frames) -> int:
+    from hydro.section.table import section_table
+
     centre = review.reach.centre_line if review else None
-    frames = range(run_.n_frames) if args.all else [frame_index(run_, args)]
     table = section_table(run_, lines, frames, centre_line=centre, psi_of=_psi_of(run_, review))
+    if not _written(args, run_, "sections", table):
+        _print(table, run_.mesh.stepped)
+    return 0
+
+
+def _works(args, review, run_, frames) -> int:
+    from hydro.cautions import OWED, caution
+    from hydro.section import works
+    from hydro.section.crossings import WHY_THEY_DIFFER
+
+    if review is None:
+        raise ValueError(f"{run_.name} stands in no review; weirs, openings and places are drawn in a review's lines.gpkg.")
+    reach = review.reach_for(run_)
+    more: tuple[str, ...] = ()
+    if args.weirs:
+        name, table = "weirs", works.weir_table(run_, reach, frames, relation=args.weirs)
+    elif args.openings:
+        name, table = "openings", works.opening_table(run_, reach, frames)
+        more = ("pressure-flow",) if (table["freeboard_m"] < 0).any() else ()
+    else:
+        name, table = "places", works.place_table(run_, reach.layer("receptors"), depth_m=args.places)
+    if _written(args, run_, name, table, more):
+        return 0
+    for row in table.to_dict("records"):
+        print(_described(row))
+    if args.weirs:
+        print(f"  {WHY_THEY_DIFFER}")
+    for id_ in (*OWED[name], *more):
+        print(f"  {caution(id_).text}")
+    return 0
+
+
+def _described(row: dict) -> str:
+    """One row as "name, time: figure value unit; ..."."""
+    from hydro.figure import printed
+
+    name, *rest = row.items()
+    parts = []
+    for key, value in rest:
+        if key in ("frame", "seconds", "kind", "source") or value is None or value == "" or value != value:
+            continue
+        text = value if isinstance(value, str) else f"{value:.3f}" if key.endswith("level_m") or key in ("soffit_m", "peak_level_mean_m", "crest_m") else printed(value)
+        parts.append(f"{key.replace('_m3_s', ' m3/s').replace('_m2_s', ' m2/s').replace('_m_s', ' m/s').replace('_', ' ')} {text}")
+    return f"{name[1]}: {'; '.join(parts)}"
+
+
+def _envelope(args, run_) -> int:
+    from hydro.section.works import ENVELOPE, write_envelope
+
+    path = Path(args.envelope)
+    if path.suffix.lower() != ".gpkg":
+        raise ValueError(f"--envelope {args.envelope}: name a file that ends in .gpkg.")
+    path.parent.mkdir(parents=True, exist_ok=True)
+    write_envelope(path, run_)
+    print(f"{path}: {ENVELOPE}.")
+    return 0
+
+
+def _written(args, run_, name: str, table, more: tuple[str, ...] = ()) -> bool:
+    """Write a table as ``--out`` and ``--json`` ask; True where it went to standard output."""
+    from hydro.cautions import OWED, told
+    from hydro.ledger.export import csv_text
+    from hydro.ledger.report import source_of
+    from hydro.review import write_whole
+
+    source, ids = source_of(run_), (*OWED[name], *more)
+    rows = [{k: None if v != v else v for k, v in row.items()} for row in json.loads(table.to_json(orient="records", double_precision=15))]
     if args.out:
         folder = Path(args.out)
         folder.mkdir(parents=True, exist_ok=True)
-        write_whole(folder / "sections.csv", csv_heading(source_of(run_), run_.settings, OWED["sections"]) + table.to_csv(index=False))
-    if args.json:
-        rows = json.loads(table.to_json(orient="records", double_precision=15))
-        content = {"schema": "leewater/sections/1", "source": source_of(run_), "settings": dict(run_.settings), "sections": rows, "cautions": told(OWED["sections"])}
-        text = json.dumps(content, indent=1, allow_nan=False)
-        if args.json == "-":
-            print(text)
-            return 0
-        write_whole(Path(args.json), text + "\n")
-    _print(table, run_.mesh.stepped)
-    return 0
+        write_whole(folder / f"{name}.csv", csv_text(rows, source, run_.settings, ids))
+    return write_json(args.json, {
+        "schema": f"leewater/{name}/1", "source": source, "settings": dict(run_.settings), name: rows, "cautions": told(ids),
+    })
 
 
 def _lines(given, review, run_):

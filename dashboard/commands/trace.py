@@ -3,8 +3,9 @@
 from __future__ import annotations
 
 import argparse
-import json
 from pathlib import Path
+
+from . import write_json
 
 HELP = "streamlines, pathlines, streaklines and timelines from points or lines"
 
@@ -30,7 +31,7 @@ def arguments(parser: argparse.ArgumentParser) -> None:
 def run(args: argparse.Namespace) -> int:
     from hydro.cautions import OWED, told
     from hydro.ledger.report import source_of
-    from hydro.review import open_results, write_whole
+    from hydro.review import open_results
     from hydro.tracks.export import write_tracks
 
     review, opened = open_results(args.file)
@@ -38,14 +39,11 @@ def run(args: argparse.Namespace) -> int:
     traced = _traced(args, opened, reach)
     if args.out:
         write_tracks(Path(args.out), opened, traced, reach.centre_line if reach else None)
-    if args.json:
-        content = {"schema": "leewater/tracks/1", "source": source_of(opened), "warnings": list(traced.warnings), "tracks": [_plain(opened, t) for t in traced.tracks], "cautions": told(OWED["tracks"])}
-        text = json.dumps(content, allow_nan=False)
-        if args.json == "-":
-            print(text)
-            return 0
-        write_whole(Path(args.json), text + "\n")
-    _print(traced)
+    if not args.json or not write_json(args.json, {
+        "schema": "leewater/tracks/1", "source": source_of(opened), "warnings": list(traced.warnings),
+        "tracks": [_plain(opened, t) for t in traced.tracks], "cautions": told(OWED["tracks"]),
+    }):
+        _print(traced)
     return 0
 
 

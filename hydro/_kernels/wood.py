@@ -69,17 +69,6 @@ def segment_distance(ax, ay, bx, by, cx, cy, dx, dy):
 
 
 @njit(cache=True, nogil=True)
-def inside_ring(rings, a, b, x, y):
-    """Whether a point lies inside the ring rings[a:b] (closed)."""
-    odd = False
-    for i in range(a, b - 1):
-        y0, y1 = rings[i, 1], rings[i + 1, 1]
-        if (y0 > y) != (y1 > y) and x < rings[i, 0] + (y - y0) * (rings[i + 1, 0] - rings[i, 0]) / (y1 - y0):
-            odd = not odd
-    return odd
-
-
-@njit(cache=True, nogil=True)
 def nearest_outline(rings, starts, boxes, ax, ay, bx, by, reach):
     """Outline nearer to the segment than ``reach``: (index or -1, distance, share along, contact point)."""
     which = -1

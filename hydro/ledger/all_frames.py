@@ -9,7 +9,7 @@ from dataclasses import dataclass
 from pathlib import Path
 
 from ..reach import Reach
-from ..review import Review, open_results
+from ..review import open_results
 from ..run import Run
 from ..settings import Settings
 from .frames import FrameLedger, FrameReader
@@ -68,11 +68,6 @@ def summary_of(run: Run, entry: FrameLedger) -> FrameSummary:
     return FrameSummary(entry.frame.index, entry.frame.seconds, frame_json(run, entry), entry.zones.zones)
 
 
-def reach_of(review: Review | None, run: Run) -> Reach | None:
-    """The review's lines for the design that a run belongs to."""
-    return review.reach_for(run) if review is not None else None
-
-
 _readers: dict[tuple, tuple[Run, FrameReader]] = {}
 
 
@@ -81,7 +76,7 @@ def _read_one(job: Job, index: int) -> FrameSummary:
     key = (str(job.path), job.settings.digest() if job.settings else "", job.sensitivity)
     if key not in _readers:
         review, run = open_results(job.path)
-        reader = FrameReader(run, reach=reach_of(review, run), settings=job.settings, sensitivity=job.sensitivity)
+        reader = FrameReader(run, reach=review.reach_for(run) if review else None, settings=job.settings, sensitivity=job.sensitivity)
         _readers[key] = run, reader
     run, reader = _readers[key]
     return summary_of(run, reader.frame(index))

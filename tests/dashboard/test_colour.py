@@ -49,16 +49,28 @@ def test_the_water_ramp_is_even_to_the_eye(palette):
     assert np.abs(steps / steps.mean() - 1).max() < 0.05
 
 
+def contrast(first: str, second: str) -> float:
+    """Contrast ratio of two "#rrggbb" by WCAG 2.2, 1 to 21."""
+    def luminance(hex_colour: str) -> float:
+        c = colour.rgb(hex_colour)
+        linear = np.where(c <= 0.04045, c / 12.92, ((c + 0.055) / 1.055) ** 2.4)
+        return float(linear @ np.array([0.2126, 0.7152, 0.0722]))
+
+    dark, light = sorted(luminance(c) for c in (first, second))
+    return (light + 0.05) / (dark + 0.05)
+
+
+
 @pytest.mark.parametrize("palette", [LIGHT, DARK, HALL], ids=["day", "night", "hall"])
 def test_contrasts_are_those_of_wcag(palette):
     """WCAG 2.2, 1.4.3 and 1.4.11: text 4.5:1, graphics 3:1; ink is seen on every shade of water."""
-    assert colour.contrast("#000000", "#ffffff") == pytest.approx(21.0)
+    assert contrast("#000000", "#ffffff") == pytest.approx(21.0)
     for text in (palette.ink, palette.ink2, palette.signal):
-        assert colour.contrast(text, palette.paper) >= 4.5
-    assert colour.contrast(palette.on_signal, palette.signal) >= 4.5
-    assert colour.contrast(palette.edge, palette.paper) >= 3.0
+        assert contrast(text, palette.paper) >= 4.5
+    assert contrast(palette.on_signal, palette.signal) >= 4.5
+    assert contrast(palette.edge, palette.paper) >= 3.0
     for shade in theme.water_palette(palette)[theme.EVEN : theme.EVEN + 2 * theme.SHADES]:
-        assert colour.contrast(palette.ink, shade) >= 3.0
+        assert contrast(palette.ink, shade) >= 3.0
 
 
 def test_every_second_tube_is_seven_lightness_steps_away():
