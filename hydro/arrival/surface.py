@@ -7,6 +7,7 @@ import numpy as np
 from ..figure import Figure
 from ..reach import CentreLine
 from ..section import cut, section_figures
+from ..section.fronts import jump_fronts
 from .finding import Finding, Material, first_of_each, point
 
 SPIKE = 3.0  # times the greatest speed among the faces round it (common practice, no source)
@@ -71,8 +72,14 @@ def _jump(m: Material, index: int) -> Finding | None:
     area = float(frame.mesh.face_area[fast].sum())
     i = int(np.where(fast, froude * frame.face_depth, 0).argmax())
     at = frame.mesh.face_centroid[i]
+    fronts = jump_fronts(frame, gravity=m.run.settings["gravity_m_s2"])
+    front = ""
+    if fronts:
+        f = fronts[0]
+        front = f" The longest jump, about {f.length_m:.0f} m, stands at {m.where(f.middle)}, at {f.angle_deg:.0f} degrees to the flow."
     return Finding(
-        "supercritical flow", "note", f"Flow is faster than its own waves on {area:.0f} m2 in frame {index}, most at {m.where(at)} (Froude {froude[i]:.1f}).",
+        "supercritical flow", "note",
+        f"Flow is faster than its own waves on {area:.0f} m2 in frame {index}, most at {m.where(at)} (Froude {froude[i]:.1f}).{front}",
         "Levels there do not feel the downstream side; a jump follows, which a depth-averaged model shows without its roller.",
         "Does the mesh resolve the jump, and is the drowning hazard assessed by a specialist?", Figure("Froude number", float(froude[i]), "-", cautions=("no-roller",), place=m.place(at)), point(at), index,
     )

@@ -7,6 +7,7 @@ import pytest
 from scipy import integrate
 from scipy.optimize import brentq
 
+from hydro.mesh import build_mesh
 from hydro.reach import CentreLine
 from hydro.section import cut, section_figures
 from hydro.section.profile import profile
@@ -103,3 +104,48 @@ def test_head_is_one_value_along_a_frictionless_streamline():
     head = along(track, frame).head
     expected = h0 + c**2 / (2 * G) / 20**2
     assert np.nanmax(np.abs(head - expected)) < 5e-4
+
+
+ACROSS_BEND = [(radius * np.cos(np.pi / 2 - 0.25), radius * np.sin(np.pi / 2 - 0.25)) for radius in (171.0, 129.0)]
+
+
+def vortex_frame(cells: int):
+    """Free vortex C = 375 m2/s in a bend of radii 130 to 170 m, depth 3 m on the outer bank, level bed."""
+    c, inner, outer, deepest = 375.0, 130.0, 170.0, 3.0
+    r = lambda x, y: np.hypot(x, y)  # noqa: E731
+    flat = channel(cells, cells // 2, 1.0, 1.0)
+    turn, radius = np.pi / 2 - 0.5 * flat.node_xy[:, 0], inner + (outer - inner) * flat.node_xy[:, 1]
+    bend = build_mesh(np.column_stack([radius * np.cos(turn), radius * np.sin(turn)]), flat.face_nodes, origin=(0.0, 0.0))
+    depth = lambda x, y: deepest - c**2 / (2 * G) * (1 / r(x, y) ** 2 - 1 / outer**2)  # noqa: E731
+    flow = (lambda x, y: c * y / r(x, y) ** 2, lambda x, y: -c * x / r(x, y) ** 2)
+    return frame_of(bend, depth, flow, stored_on="node"), (c, inner, outer)
+
+
+def test_the_surface_of_a_free_vortex_bend_rises_as_its_speed_squared_over_g_r():
+    """Source: free vortex, V = C/r (Henderson 1966): cross slope V^2/(g r) at each radius, 0.1761 m from bank to bank
+    for C = 375 m2/s between 130 and 170 m; the simple V^2 W/(g R) gives 0.169895 m.
+
+    Tolerance: level is linear in cells of 1 m across, so its slope errs by the cell over the radius, under 1 %.
+    """
+    frame, (c, inner, outer) = vortex_frame(80)
+    section = cut(frame, ACROSS_BEND)
+    level = section.level[np.isfinite(section.level).all(axis=1)]
+    assert level[0, 0] - level[-1, 1] == pytest.approx(0.1761, abs=1e-3)
+    sf = stream_function(frame)
+    for radius in (140.0, 150.0, 160.0):
+        turn = np.pi / 2 - 0.02
+        track = streamlines(sf, [(radius * np.cos(turn), radius * np.sin(turn))], direction="down").tracks[0]
+        found = along(track, frame)
+        middle = slice(len(track.xy) // 5, -len(track.xy) // 5)
+        # Running clockwise about the origin the centre lies to the right, so the surface rises to the left.
+        assert np.median(found.cross_slope[middle]) == pytest.approx(c**2 / (G * radius**3), rel=0.02)
+        assert np.median(found.bend_slope[middle]) == pytest.approx(c**2 / (G * radius**3), rel=0.03)
+        assert np.median(np.hypot(*track.xy[middle].T)) == pytest.approx(radius, abs=0.3)
+
+
+def test_a_section_of_the_bend_carries_the_integral_of_the_vortex():
+    """Source: calculus: the integral of C/r h(r) over the radius. Tolerance: linear fields in cells of 1 m."""
+    frame, (c, inner, outer) = vortex_frame(80)
+    h = lambda r: 3.0 - c**2 / (2 * G) * (1 / r**2 - 1 / outer**2)  # noqa: E731
+    exact = integrate.quad(lambda r: c / r * h(r), inner, outer)[0]
+    assert section_figures(cut(frame, ACROSS_BEND)).discharge_m3_s == pytest.approx(exact, rel=1e-3)

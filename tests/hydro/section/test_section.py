@@ -117,6 +117,46 @@ def test_both_velocity_area_rules_converge_to_the_integral():
     assert (errors[1:] < errors[:-1] / 2.5).all() and errors[-1].max() < 1e-3 * exact
 
 
+def test_both_rules_on_a_sections_own_verticals_converge_to_the_integral():
+    """Source: calculus; the parabolic channel above through meshes of half the cell each time.
+
+    The verticals are where the line crosses sides of triangles, so each halving brings both rules nearer.
+    """
+    exact = 2 * 3 * 30 * special.beta(0.5, 8 / 3)
+    depth = lambda x, y: 3 * (1 - (2 * y / 60) ** 2)  # noqa: E731
+    errors = []
+    for ny in (15, 30, 60, 120):
+        frame = frame_of(
+            channel(10, ny, 100, 60, corner=(0, -30)), depth, (lambda x, y: 2 * (depth(x, y) / 3) ** (2 / 3), 0.0),
+            stored_on="node", wet_depth_m=0.0,
+        )
+        f = section_figures(cut(frame, [(47, 31), (43, -31)]))
+        errors.append([abs(q - exact) for q in (f.discharge_mid_section_m3_s, f.discharge_mean_section_m3_s)])
+    errors = np.array(errors)
+    assert (errors[1:] < errors[:-1] / 2).all() and errors[-1].max() < 1e-3 * exact
+
+
+SHEARED = [
+    [(30, 25), (60, -25)], [(30, 25), (80, 20), (60, -25)], [(30, 25), (35, 0), (20, -10), (60, -25)],
+    [(30, 25), (70, 5), (30, 5), (70, -8), (60, -25)],
+]
+
+
+@pytest.mark.parametrize("line", SHEARED, ids=["oblique", "one bend", "two bends", "there and back"])
+@pytest.mark.parametrize("stored_on", ["node", "face"])
+def test_oblique_and_broken_sections_between_two_points_carry_the_difference_of_psi(line, stored_on):
+    """Source: continuity: psi(A) - psi(B) for psi = 3 y + 4 sin(x/20) cos(pi y/60), whichever way the line takes.
+
+    Tolerance 0.5 %: fields of cells of 1 m against waves of 60 m; halving the cells must not be needed for it.
+    """
+    psi = lambda x, y: 3 * y + 4 * np.sin(x / 20) * np.cos(np.pi * y / 60)  # noqa: E731
+    u = lambda x, y: 3 - 4 * np.pi / 60 * np.sin(x / 20) * np.sin(np.pi * y / 60)  # noqa: E731
+    v = lambda x, y: -4 / 20 * np.cos(x / 20) * np.cos(np.pi * y / 60)  # noqa: E731
+    frame = frame_of(_channel(100, 60), 1.0, (u, v), stored_on=stored_on)
+    carried = section_figures(cut(frame, line)).discharge_m3_s
+    assert carried == pytest.approx(psi(*line[0]) - psi(*line[-1]), rel=0.005)
+
+
 def test_shares_of_discharge_follow_the_width_in_uniform_flow():
     section = cut(frame_of(_channel(), 1.5, (2.0, 0.0)), [(50, 30), (50, -30)])
     np.testing.assert_allclose(shares(section, np.array([0, 15, 45, 60])), [0.25, 0.5, 0.25], atol=1e-12)
@@ -128,6 +168,17 @@ def test_chainage_and_offset_go_there_and_back_within_a_millimetre():
     s, n = rng.uniform(5, 30, 200), rng.uniform(-8, 8, 200)
     back = line.locate(line.at(s, n))
     np.testing.assert_allclose(back, [s, n], atol=1e-3)
+
+
+def test_places_beside_a_curved_line_come_back_within_a_millimetre():
+    """A circle of 200 m radius in chords of 2 degrees: offsets well within the radius have one nearest point."""
+    turn = np.radians(np.arange(0, 91, 2))
+    line = CentreLine(200 * np.column_stack([np.sin(turn), np.cos(turn)]))
+    rng = np.random.default_rng(1)
+    s, n = rng.uniform(1, line.length - 1, 500), rng.uniform(-60, 60, 500)
+    places = line.at(s, n)
+    again = line.at(*line.locate(places))
+    assert np.hypot(*(again - places).T).max() < 1e-3
 
 
 @pytest.mark.parametrize(("points", "says"), [([(1, 1)], "two different points"), ([(900, 0), (900, 9)], "does not meet the mesh")])
