@@ -1,4 +1,4 @@
-"""The served desk: this machine only, every byte from here, installable, with a strict content policy."""
+"""The served desk: this machine only unless it is shared, every byte from here, installable, with a strict content policy."""
 
 from __future__ import annotations
 
@@ -11,6 +11,7 @@ import secrets
 import socket
 import threading
 import webbrowser
+from collections.abc import Sequence
 from pathlib import Path
 from typing import Any
 
@@ -20,7 +21,7 @@ import panel as pn  # noqa: E402
 from tornado.web import HTTPError, OutputTransform, RequestHandler, StaticFileHandler  # noqa: E402
 from tornado.websocket import WebSocketClosedError  # noqa: E402
 
-from . import theme  # noqa: E402
+from . import share, theme  # noqa: E402
 from .pack import is_pack  # noqa: E402
 from .packs import Packs  # noqa: E402
 from .page import Page  # noqa: E402
@@ -199,7 +200,7 @@ _SLOTS = (
 )
 
 
-def free_port(wanted: int | None) -> int:
+def free_port(wanted: int | None, host: str = HOST) -> int:
     """The wanted port, else the usual one, else any that is free; a wanted one in use is refused.
 
     An installed desk looks for the usual port, so another one is said aloud by :func:`serve`.
@@ -208,25 +209,30 @@ def free_port(wanted: int | None) -> int:
         with socket.socket() as probe:
             probe.setsockopt(socket.SOL_SOCKET, socket.SO_REUSEADDR, 1)
             try:
-                probe.bind((HOST, port))
+                probe.bind((host, port))
                 return probe.getsockname()[1]
             except OSError:
                 continue
     raise ValueError(f"port {wanted} is in use; give another with --port, or leave it out.")
 
 
-def serve(path: Path | str, *, port: int | None = None, browser: bool = True) -> None:
+def serve(path: Path | str, *, port: int | None = None, browser: bool = True, guests: int = 0) -> None:
     """Serve the desk for a review or a results file until it is stopped.
 
-    Raises ``ValueError`` when the wanted port is in use.
+    With ``guests`` it is shared on the network, by one link a guest; without, only this machine reaches it.
+    Raises ``ValueError`` when the wanted port is in use, or where there is no network to share on.
     """
-    chosen = free_port(port)
+    there = share.addresses() if guests else []
+    chosen = free_port(port, share.EVERYWHERE if guests else HOST)
+    gate = share.Gate(1 + guests, chosen) if guests else None
     reading = Reading(path)
-    application = make_server(reading, chosen)
-    address = f"http://{HOST}:{chosen}/"
+    application = make_server(reading, chosen, gate, there)
+    address = f"http://{HOST}:{chosen}/" + (f"share/{gate.links[0]}" if gate else "")
     if port is None and chosen != PORT:
         print(f"Port {PORT} is in use (another desk?); this one is at another port, where an installed desk does not look.")
-    print(f"Leewater shows {path} at {address}  (stop with Ctrl+C)", flush=True)
+    print(f"Leewater shows {path} at http://{HOST}:{chosen}/  (stop with Ctrl+C)", flush=True)
+    if gate is not None:
+        print(share.words(gate, HOST, there, chosen), flush=True)
     if browser:
         threading.Timer(0.3, webbrowser.open, (address,)).start()
     application.start()
@@ -243,8 +249,11 @@ def _not_a_closed_page(record: logging.LogRecord) -> bool:
     return not (record.exc_info and isinstance(record.exc_info[1], WebSocketClosedError))
 
 
-def make_server(reading: Reading, port: int):
-    """The server for a reading, not yet started; the first opening of the path begins at once."""
+def make_server(reading: Reading, port: int, gate: share.Gate | None = None, there: Sequence[str] = ()):
+    """The server for a reading, not yet started; the first opening of the path begins at once.
+
+    With a ``gate`` it listens to the network, at the addresses ``there``, and answers only those who came in by it.
+    """
     logging.getLogger("bokeh.server.views.ws").setLevel(logging.ERROR)
     logging.getLogger("asyncio").addFilter(_not_a_closed_page)
     try:
@@ -254,8 +263,8 @@ def make_server(reading: Reading, port: int):
     studies = Studies(reading)
     static = {"path": str(WEB)}
     server = pn.serve(
-        {"/": lambda: page_for(studies)}, address=HOST, port=port, show=False, start=False, title="Leewater",
-        websocket_origin=[f"{HOST}:{port}"], admin=False, check_unused_sessions_milliseconds=2000,
+        {"/": lambda: page_for(studies)}, address=share.EVERYWHERE if gate else HOST, port=port, show=False, start=False, title="Leewater",
+        websocket_origin=[f"{host}:{port}" for host in (HOST, *there)], admin=False, check_unused_sessions_milliseconds=2000,
         unused_session_lifetime_milliseconds=20_000,
         extra_patterns=[
             (r"/ping", Ping), (r"/sw\.js", Worker), (r"/manifest\.webmanifest", Manifest), (r"/web/theme\.css", Theme),
@@ -264,6 +273,8 @@ def make_server(reading: Reading, port: int):
         ],
     )
     server._tornado.transforms.append(Policy)
+    if gate is not None:
+        share.guard(server._tornado, gate)
     return server
 
 

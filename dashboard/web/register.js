@@ -11,6 +11,7 @@ let started = null;
 async function ask() {
   try {
     const answer = await fetch("/ping", { cache: "no-store" });
+    if (answer.status === 403) location.reload(); // a new desk that is shared: it says that it wants a link
     const now = (await answer.json()).started;
     if (started !== null && now !== started) location.reload(); // a new desk: its page is drawn anew
     started = now;
