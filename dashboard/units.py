@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import math
+import re
 from dataclasses import dataclass
 
 from hydro.figure import printed
@@ -12,6 +13,11 @@ _SHORT = {"US survey feet": "US ft", "international feet": "ft"}
 _POWERS = {"m": 1, "m2": 2, "m3": 3, "m/s": 1, "m2/s": 2, "m3/s": 3}
 _SUPER = str.maketrans({"2": "\u00b2", "3": "\u00b3"})
 NBSP = "\u00a0"
+# Numbers and units as hydro prints them in sentences: "+0.30 m", "1,240 m2", "0.61 to 6.28 m".
+_NUMBER = r"[+-]?\d[\d,]*(?:\.\d+)?"
+_QUANTITY = re.compile(
+    rf"(?<![\w.,-])(?:(?P<low>{_NUMBER}) to )?(?P<high>{_NUMBER}) (?P<unit>m3/s|m2/s|m/s|m2|m3|m)(?![\w/\u00b2\u00b3])"
+)
 
 
 @dataclass(frozen=True, slots=True)
@@ -41,11 +47,7 @@ class Units:
             return "n/a"
         f = self.factor(unit)
         text = printed(value * f, None if low is None else low * f, None if high is None else high * f, digits)
-        whole, dot, rest = text.partition(".")
-        sign, whole = ("\u2212", whole[1:]) if whole.startswith("-") else ("", whole)
-        if len(whole) > 4:
-            whole = f"{int(whole):,}".replace(",", "\u202f")
-        return sign + whole + dot + rest
+        return _set(text)
 
     def quantity(
         self, value: float | None, unit: str, low: float | None = None, high: float | None = None, digits: int = 3
@@ -53,6 +55,27 @@ class Units:
         """Number and unit that never break apart."""
         text = self.number(value, unit, low, high, digits)
         return text if text == "n/a" else f"{text}{NBSP}{self.label(unit)}"
+
+    def sentence(self, text: str) -> str:
+        """Plain text with each quantity in it, such as "0.87 m3/s" or "0.6 to 6.3 m", in display units.
+
+        A number keeps its own resolution: what was printed to the centimetre is printed to a hundredth of a foot.
+        Numbers without one of the units of length, area, volume or flow stay as they are, and so do coordinates.
+        """
+        return _QUANTITY.sub(self._shown, text)
+
+    def _shown(self, found: re.Match[str]) -> str:
+        unit = found["unit"]
+        ends = [self._same_resolution(found[name], unit) for name in ("low", "high") if found[name]]
+        return f"{' to '.join(ends)}{NBSP}{self.label(unit)}"
+
+    def _same_resolution(self, text: str, unit: str) -> str:
+        factor, plain = self.factor(unit), text.replace(",", "")
+        if factor != 1.0:
+            keep = len(plain.partition(".")[2]) - math.floor(math.log10(factor))
+            plus = "+" if plain[0] == "+" else ""
+            plain = f"{round(float(plain) * factor, keep):{plus}.{max(keep, 0)}f}"
+        return _set(plain)
 
     def span(self, low: float | None, high: float | None, unit: str) -> str:
         """A sensitivity as "440 to 474"; empty where there is none."""
@@ -62,6 +85,15 @@ class Units:
         if ends[0] == ends[1]:
             ends = [self.number(v, unit, digits=4) for v in (low, high)]
         return " to ".join(ends)
+
+
+def _set(text: str) -> str:
+    """A plain number as it is set: a true minus, thousands of long ones apart."""
+    whole, dot, rest = text.partition(".")
+    sign, whole = ("", whole) if whole[0].isdigit() else (whole[0].replace("-", "\u2212"), whole[1:])
+    if len(whole) > 4:
+        whole = f"{int(whole):,}".replace(",", "\u202f")
+    return sign + whole + dot + rest
 
 
 def round_step(target: float) -> float:

@@ -96,3 +96,22 @@ def printed(value: float | None, low: float | None = None, high: float | None = 
     decimals = max(0, -int(math.floor(math.log10(step) + 1e-9)))
     rounded = round(value / step) * step
     return f"{rounded:.{decimals}f}"
+
+
+def signed(value: float, decimals: int) -> str:
+    """A difference as text, its sign always shown, but none where it rounds to zero.
+
+    >>> signed(0.304, 2), signed(-0.304, 2), signed(-0.001, 2)
+    ('+0.30', '-0.30', '0.00')
+    """
+    text = f"{value:+.{decimals}f}"
+    return text[1:] if not float(text) else text
+
+
+def percent(share: float, decimals: int = 0) -> str:
+    """A share as a percentage in a sentence.
+
+    >>> percent(0.1234, 1), percent(-0.00001)
+    ('12.3 %', '0 %')
+    """
+    return f"{100 * share:z.{decimals}f} %"

@@ -228,7 +228,7 @@ def _print(table, stepped: bool) -> None:
     print("".join(f"{h:>14}" for h in ("section", "time", *shown.values())))
     for row in table.to_dict("records"):
         when = (row["time"] or f"{row['seconds']:g} s")[-9:]
-        levels = {k: f"{row[k]:.3f}" if row[k] == row[k] and row[k] is not None else "n/a" for k in ("mean_level_m", "head_m")}
+        levels = {k: f"{row[k]:z.3f}" if row[k] == row[k] and row[k] is not None else "n/a" for k in ("mean_level_m", "head_m")}
         print("".join(f"{v:>14}" for v in (str(row["section"])[:13], when, *(levels.get(k) or printed(row[k]) for k in shown))))
     banks = " and for banks that are stair steps or joined points, which may miss a cell's width at each" if stepped else ""
     print(f"  Read within: error of reading Q from this file, by two readings compared{banks}.")

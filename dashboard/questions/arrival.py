@@ -41,7 +41,7 @@ class Arrival(Question):
         run = text.safe(desk.run.name)
         if not grave and not ask:
             return f"The audit of {run} found nothing to ask; {text.count(len(found), 'thing').lower()} to note."
-        first = (grave or ask)[0].sentence.rstrip(".")
+        first = desk.units.sentence((grave or ask)[0].sentence.rstrip("."))
         parts = []
         if grave:
             parts.append(f"<b>{text.count(len(grave), 'finding').lower()}</b> to resolve before use")
@@ -86,9 +86,13 @@ class Arrival(Question):
 
     def side(self, desk: Desk) -> dict[str, str]:
         asks = desk.reading.matter().review is not None
+
+        def told(sentence: str) -> str:
+            return text.safe(desk.units.sentence(sentence))
+
         lines = [
             table.Line(
-                ((str(i), ""), (f.grade, _ask(i) if asks else ""), (text.safe(f.sentence), f"{text.safe(f.meaning)} <b>{text.safe(f.question)}</b>")),
+                ((str(i), ""), (f.grade, _ask(i) if asks else ""), (told(f.sentence), f"{told(f.meaning)} <b>{told(f.question)}</b>")),
                 str(i) == desk.choices.subject, ("subject", str(i)), f"Show finding {i}",
             )
             for i, f in enumerate(self.findings(desk), 1)

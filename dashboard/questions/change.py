@@ -9,6 +9,7 @@ import shapely
 
 from hydro.cautions import OWED
 from hydro.change import Change as Compared
+from hydro.change import Difference
 from hydro.change.eddies import ZoneChange
 from hydro.eddies import Zone
 
@@ -49,14 +50,14 @@ class Change(Question):
         parts = []
         gone = [z for z in change.zones if z.state == "gone"]
         if gone:
-            names = text.listed(text.safe(z.name) for z in gone[:2])
+            names = text.listed(text.safe(u.sentence(z.name)) for z in gone[:2])
             more = f" and {len(gone) - 2} more" if len(gone) > 2 else ""
             parts.append(f'{names}{more} <em class="subject">{"is" if len(gone) == 1 else "are"} gone</em>')
         kept = [z for z in change.zones if z.area_change_m2 is not None and z.told_apart]
         if kept:
             z = max(kept, key=lambda k: abs(k.area_change_m2 or 0.0))
             grows = "grows" if (z.area_change_m2 or 0) > 0 else "shrinks"
-            parts.append(f"{text.safe(z.name)} {grows} by <b>{u.quantity(abs(z.area_change_m2 or 0.0), 'm2')}</b>")
+            parts.append(f"{text.safe(u.sentence(z.name))} {grows} by <b>{u.quantity(abs(z.area_change_m2 or 0.0), 'm2')}</b>")
         levels = change.levels
         if levels is not None and levels.headline >= 0:
             i = levels.headline
@@ -128,7 +129,7 @@ class Change(Question):
         )
 
     def alternative(self, desk: Desk) -> str:
-        return " ".join(f.sentence for f in self.change(desk).findings) if self.other(desk) else ""
+        return desk.units.sentence(" ".join(f.sentence for f in self.change(desk).findings)) if self.other(desk) else ""
 
     def ribbon(self, desk: Desk) -> str:
         return strip.draw(common.plain_course(desk), common.ribbon_box(desk), desk.units)
@@ -146,8 +147,8 @@ class Change(Question):
         )
         lines = [_zone_line(z, u) for z in change.zones]
         zones = table.html(table.Table("Eddies, matched", "", "Eddies of both runs", columns, lines, "No eddy in either run."))
-        first = "".join(f"<li>{text.safe(f.sentence)}</li>" for f in change.findings)
-        before = "".join(f"<li>{text.safe(d.sentence)}</li>" for d in change.setup)
+        first = "".join(f"<li>{text.safe(desk.units.sentence(f.sentence))}</li>" for f in change.findings)
+        before = "".join(f"<li>{text.safe(_differs(d, desk.units))}</li>" for d in change.setup)
         said = f"<h2>In words</h2><ul>{first}</ul>" if first else ""
         differs = before or "<li>Nothing that Leewater can see.</li>"
         return {"table": zones, "body": f"{said}<h2>What differs outside the works</h2><ul>{differs}</ul>"}
@@ -192,6 +193,11 @@ def _tag(z: ZoneChange, units: Units) -> str:
     return f"{name} {sign}{units.quantity(abs(z.area_change_m2), 'm2', digits=2)}"
 
 
+def _differs(d: Difference, u: Units) -> str:
+    """A difference of the set-up in display units; what the files say of themselves stays as they say it."""
+    return d.sentence if d.what == "statement" else u.sentence(d.sentence)
+
+
 def _zone_line(z: ZoneChange, u: Units) -> table.Line:
     def area(zone: Zone | None) -> str:
         return "none" if zone is None else u.number(zone.area_m2, "m2", *zone.sensitivity.get("area_m2", (None, None)))
@@ -199,5 +205,5 @@ def _zone_line(z: ZoneChange, u: Units) -> table.Line:
     change = z.state if z.area_change_m2 is None else u.number(z.area_change_m2, "m2", digits=2)
     told = "yes" if z.told_apart else "no"
     return table.Line(
-        ((text.safe(z.name), ""), (area(z.a), ""), (area(z.b), ""), (change, ""), (told, "")), z.state == "gone",
+        ((text.safe(u.sentence(z.name)), ""), (area(z.a), ""), (area(z.b), ""), (change, ""), (told, "")), z.state == "gone",
     )

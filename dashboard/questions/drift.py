@@ -88,7 +88,7 @@ class Drift(Question):
         return f"<i>Plate 3.</i> Logs to true length, at least 7 px; thin lines: where they have gone{of}. Vermilion: lodged."
 
     def alternative(self, desk: Desk) -> str:
-        return " ".join(self.answer(desk).sentences()) if desk.studies.has_wood() else ""
+        return desk.units.sentence(" ".join(self.answer(desk).sentences())) if desk.studies.has_wood() else ""
 
     def ribbon(self, desk: Desk) -> str:
         return strip.draw(self.course(desk), common.ribbon_box(desk), desk.units) if desk.studies.has_wood() else ""
@@ -137,7 +137,7 @@ class Drift(Question):
         answer = desk.reading.known((TRIED, desk.run_id))
         if answer is None:
             return '<button type="button" class="word" data-do="try" data-value="" data-key="try">Try other settings</button> for the range.'
-        return text.safe(" ".join(answer.sentences()))
+        return text.safe(desk.units.sentence(" ".join(answer.sentences())))
 
     def cautions(self, desk: Desk) -> tuple[str, ...]:
         return OWED["drift"]

@@ -306,7 +306,7 @@ def _line(zone: Zone, subject: bool, desk: Desk, ids: tuple[str, ...]) -> table.
             cell("area_m2", "m2"),
             *(() if few else (cell("recirculating_discharge_m3_s", "m3/s"), cell("rotation_time_s", "s"))),
         ),
-        subject, ("subject", zone.id), f"Show {zone.id}, {zone.name}",
+        subject, ("subject", zone.id), f"Show {zone.id}, {u.sentence(zone.name)}",
     )
 
 

@@ -41,11 +41,11 @@ class Passage(Question):
         q = desk.units.quantity(a.discharge_m3_s, "m3/s")
         who = f"{text.safe(a.fish.name)} at <b>{q}</b>"
         if a.status == NOT_ASSESSED:
-            return f"For {who} the way is not assessed: {text.safe(a.reason)}"
+            return f"For {who} the way is not assessed: {text.safe(desk.units.sentence(a.reason))}"
         note = footnote(ids, "passage")
         if a.status == EXCLUDED:
             first = a.barriers[0] if a.barriers else None
-            why = f": {text.safe(_metric(barrier_words(first)))}" if first is not None else ""
+            why = f": {text.safe(desk.units.sentence(barrier_words(first)))}" if first is not None else ""
             return f'For {who} the way upstream is <em class="subject">excluded</em>{note}{why}.'
         worst = a.worst_leg
         share = f" Its worst leg uses <b>{text.percent(worst.fatigue)}</b> of its endurance." if worst is not None else ""
@@ -91,7 +91,7 @@ class Passage(Question):
         return common.ramp_key(desk)
 
     def alternative(self, desk: Desk) -> str:
-        return text.safe(self.answer(desk).sentence) if desk.studies.fish() else ""
+        return text.safe(desk.units.sentence(self.answer(desk).sentence)) if desk.studies.fish() else ""
 
     def ribbon(self, desk: Desk) -> str:
         return strip.draw(common.plain_course(desk), common.ribbon_box(desk), desk.units)
@@ -143,8 +143,3 @@ def _across(a: Answer, at: np.ndarray) -> float:
     i = int(np.clip(np.hypot(*(a.route.xy - at).T).argmin(), 1, len(a.route.xy) - 1))
     t = a.route.xy[i] - a.route.xy[i - 1]
     return float(np.arctan2(t[0], -t[1]))
-
-
-def _metric(words: str) -> str:
-    """Units of a sentence kept on one line with their numbers."""
-    return words.replace(" m/s", "\u00a0m/s").replace(" m ", "\u00a0m ").replace(" m,", "\u00a0m,")

@@ -96,7 +96,9 @@ class Material:
         p = self.place(at)
         if p.chainage_m is None or p.offset_m is None:
             return f"{p.x:.1f} E, {p.y:.1f} N"
-        side = "left" if p.offset_m >= 0 else "right"
+        if abs(p.offset_m) < 0.5:
+            return f"chainage {p.chainage_m:.0f} m, on the centre line"
+        side = "left" if p.offset_m > 0 else "right"
         return f"chainage {p.chainage_m:.0f} m, {abs(p.offset_m):.0f} m {side} of the centre line"
 
 

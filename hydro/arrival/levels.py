@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import numpy as np
 
-from ..figure import Figure
+from ..figure import Figure, percent, signed
 from ..frame import Frame
 from ..run import StoredLevel
 from .finding import Finding, Material, first_of_each, point
@@ -36,8 +36,8 @@ def _frame(m: Material, stored: StoredLevel, index: int) -> Finding | None:
     at, share = xy[worst], float(area[off].sum() / area[wet].sum())
     return Finding(
         "level against depth", "resolve before use",
-        f"The file's own level ({stored.name}) stands {apart[worst]:+.2f} m from bed plus depth at {m.where(at)}, and differs on "
-        f"{area[off].sum():.0f} m2 ({share:.0%} of the water) in frame {index}.",
+        f"The file's own level ({stored.name}) stands {signed(apart[worst], 2)} m from bed plus depth at {m.where(at)}, and differs on "
+        f"{area[off].sum():.0f} m2 ({percent(share)} of the water) in frame {index}.",
         "One of bed, depth and level is not of this run, this time or this datum; every level here is bed plus depth.",
         "Which of the three is right there; does the bed move in time, and do bed and level share one datum?",
         Figure("stored level minus bed and depth", float(apart[worst]), "m", place=m.place(at)), point(at), index,

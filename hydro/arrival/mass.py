@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import numpy as np
 
-from ..figure import Figure
+from ..figure import Figure, percent
 from ..ledger.frames import depth_rate
 from ..reach import CentreLine
 from ..section import cut, section_figures
@@ -43,7 +43,7 @@ def _frame(m: Material, index: int) -> list[Finding]:
         at = frame.mesh.triangle_centroid[worst]
         out.append(Finding(
             "no continuity", "resolve before use" if sf.misfit.unexplained > BROKEN else "ask",
-            f"{sf.misfit.unexplained:.1%} of the flow in frame {index} is explained by no stream function; it is worst at {m.where(at)}.",
+            f"{percent(sf.misfit.unexplained, 1)} of the flow in frame {index} is explained by no stream function; it is worst at {m.where(at)}.",
             "A flow of one moment, or a mean, conserves water; an envelope of maxima, a mirrored component or wrong units do not.",
             "Are these maxima over time? Are both velocity components in the same axes and units? How were they made from the model's own fluxes?",
             Figure("unexplained misfit", sf.misfit.unexplained, "-", place=m.place(at)), point(at), index,

@@ -5,7 +5,7 @@ from __future__ import annotations
 import numpy as np
 import shapely
 
-from ..figure import Figure
+from ..figure import Figure, printed
 from ..frame import Frame
 from ..section import cut
 from .finding import Finding, Material, point
@@ -81,7 +81,7 @@ def _coordinates(m: Material) -> Finding | None:
     at = mesh.node_xy[mesh.edge_nodes[int(mesh.edge_length.argmin())]].mean(axis=0)
     grade = "resolve before use" if step > 0.05 * shortest else "ask"
     return Finding(
-        "coordinate step", grade, f"Coordinates are stored in steps of {step:.3g} m; the shortest edge is {shortest:.3g} m, at {m.where(at)}.",
+        "coordinate step", grade, f"Coordinates are stored in steps of {printed(step)} m; the shortest edge is {printed(shortest)} m, at {m.where(at)}.",
         "Node positions, and so areas and angles, are rounded by that step.", "Please export the coordinates as double precision, or about a local origin.",
         Figure("coordinate step", step, "m", place=m.place(at)), point(at),
     )

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import numpy as np
 
-from ..figure import Figure
+from ..figure import Figure, percent, printed
 from ..section import cut
 from ..section.error import reading_error
 from .finding import Finding, Material
@@ -30,11 +30,11 @@ def section_findings(m: Material) -> list[Finding]:
     if not rows:
         return []
     share, total, banks, discharge, cell = np.median(np.array(rows), axis=0)
-    steps = f", {banks:.2g} m3/s of it because banks are stair steps or joined points" if frame.mesh.stepped else ""
+    steps = f", {printed(banks, digits=2)} m3/s of it because banks are stair steps or joined points" if frame.mesh.stepped else ""
     return [Finding(
         "section reading", "ask" if share > ASK_SHARE else "note",
-        f"Discharge across a section reads within {total:.2g} m3/s ({share:.1%} of about {discharge:.3g} m3/s){steps}, "
-        f"by the median of {len(rows)} sections in frame {frame.index}; faces there are about {cell:.2g} m wide.",
+        f"Discharge across a section reads within {printed(total, digits=2)} m3/s ({percent(share, 1)} of about {printed(discharge)} m3/s){steps}, "
+        f"by the median of {len(rows)} sections in frame {frame.index}; faces there are about {printed(cell, digits=2)} m wide.",
         "Two readings of this file compared; the model's own error is not included.",
         "Can the discharge through the model's own edges be sent, or a finer export?",
         Figure("error of section discharge", float(total), "m3/s", cautions=("section-discharge", "sensitivity")), frame=frame.index,

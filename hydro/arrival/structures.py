@@ -5,7 +5,7 @@ from __future__ import annotations
 import numpy as np
 import shapely
 
-from ..figure import Figure
+from ..figure import Figure, signed
 from ..frame import Frame
 from ..reach import Structure
 from .finding import Finding, Material, point
@@ -80,7 +80,7 @@ def _crest(m: Material, s: Structure) -> Finding | None:
         return None
     at = points[len(points) // 2]
     return Finding(
-        "crest level", "resolve before use", f"The bed under {s.name} stands {apart:+.2f} m from the crest level {crest:.3f} m of the lines.",
+        "crest level", "resolve before use", f"The bed under {s.name} stands {signed(apart, 2)} m from the crest level {crest:.3f} m of the lines.",
         "Either the bed, the datum or the crest level is wrong; heads over the weir hang on it.", "Which datum are bed and crest given in, and which level was built?",
         Figure("bed minus crest", apart, "m", place=m.place(at)), point(at),
     )

@@ -115,7 +115,7 @@ def _rise(m: Material, centre: CentreLine, index: int, rows: np.ndarray) -> Find
         return None
     at = centre.at(np.array([(rows[i, 0] + rows[i + 1, 0]) / 2]))[0]
     return Finding(
-        "head rises", "resolve before use", f"The section head rises by {step[i]:.3f} m between chainage {rows[i, 0]:.0f} and {rows[i + 1, 0]:.0f} m.",
+        "head rises", "resolve before use", f"The section head rises by {step[i]:.3f} m between chainage {rows[i, 0]:.0f} m and {rows[i + 1, 0]:.0f} m.",
         "In steady flow the head of the whole section falls downstream: bed, datum or depth has a step there.", "Do bed and level share one datum on both sides?",
         Figure("rise of head", float(step[i]), "m", place=m.place(at)), point(at), index,
     )

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import numpy as np
 
-from ..figure import Figure
+from ..figure import Figure, signed
 from .finding import Finding, Material, fullest, point
 from .mesh import short_side
 
@@ -114,7 +114,7 @@ def _drift(m: Material) -> Finding | None:
     if abs(apart) <= DRIFT_SHARE:
         return None
     return Finding(
-        "not steady", "ask", f"Outflow differs from inflow by {apart:+.1%} in the only frame.",
+        "not steady", "ask", f"Outflow differs from inflow by {signed(100 * apart, 1)} % in the only frame.",
         "The run is still filling or emptying, or does not conserve water.", "How long did the run go on, and had it settled?",
         Figure("outflow minus inflow", apart, "-"), frame=0,
     )

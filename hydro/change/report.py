@@ -8,6 +8,7 @@ from dataclasses import dataclass
 import numpy as np
 
 from ..cautions import OWED
+from ..figure import signed
 from ..ledger import FrameLedger, frame_ledger
 from ..reach import CentreLine, Reach
 from ..run import Run
@@ -130,15 +131,15 @@ def _afflux(levels: LevelChange, above_m: float, centre_line: CentreLine) -> Fin
     x, y = centre_line.at(levels.chainage[i : i + 1])[0]
     at = f"chainage {levels.chainage[i]:.0f} m"
     if not levels.told_apart:
-        text = f"The greatest rise of level outside the works, {rise:+.3f} m at {at}, is not distinguishable from the noise of {noise:.3f} m."
+        text = f"The greatest rise of level outside the works, {signed(rise, 3)} m at {at}, is not distinguishable from the noise of {noise:.3f} m."
     else:
         text = f"Outside the works the level rises by at most {rise:.3f} m, at {at}"
         if rise > above_m:
             text += f"; it stays above {above_m:g} m for {levels.upstream_reach(above_m):.0f} m upstream"
         text += f" (noise of comparison {'not known' if noise is None else f'{noise:.3f} m'})."
     text += (
-        f" Inflow differs by {levels.inflow_difference_m3_s:+.2f} m3/s and the downstream level by "
-        f"{levels.downstream_level_difference_m:+.3f} m."
+        f" Inflow differs by {signed(levels.inflow_difference_m3_s, 2)} m3/s and the downstream level by "
+        f"{signed(levels.downstream_level_difference_m, 3)} m."
     )
     return Finding(text, abs(rise) / noise if noise else None, (float(x), float(y)))
 
@@ -151,7 +152,7 @@ def _zone(change: ZoneChange) -> Finding:
         words = "is new" if change.state == "new" else "is gone"
         return Finding(f"The eddy {zone.name} ({size}) {words}.", None, at, ("change", "wake-detail"))
     if change.state == "not distinguishable":
-        text = f"The eddy {zone.name} ({size}) changes by {change.area_change_m2:+.0f} m2, which is not distinguishable from none."
+        text = f"The eddy {zone.name} ({size}) changes by {signed(change.area_change_m2 or 0.0, 0)} m2, which is not distinguishable from none."
         return Finding(text, 0.5, at, ("change", "wake-detail"))
     text = f"The eddy {zone.name} has {change.state}"
     text += f" by {abs(change.area_change_m2 or 0.0):.0f} m2 to {size}." if change.state != "moved" else f" by {change.moved_m:.1f} m."

@@ -9,6 +9,7 @@ import numpy as np
 import shapely
 from shapely.geometry.base import BaseGeometry
 
+from ..figure import percent
 from ..frame import Frame
 from ..run import Run
 from ..transfer import Transfer
@@ -94,7 +95,7 @@ def _bed(a: Run, b: Run, move: Transfer, works, margin) -> Difference | None:
     used = np.isfinite(step) & outside(works, a.mesh.node_xy, margin)
     return _map_difference(
         "bed", step, used, a.mesh.node_xy, BED_STEP_M, "m",
-        "Outside the works the bed differs by more than {limit:g} m on {share:.0%} of the nodes, by up to {largest:.2f} m.",
+        "Outside the works the bed differs by more than {limit:g} m on {share} of the nodes, by up to {largest:.2f} m.",
     )
 
 
@@ -109,7 +110,7 @@ def _roughness(a: Run, b: Run, move: Transfer, works, margin) -> Difference | No
     used = (move.coverage > 0.99) & outside(works, a.mesh.face_centroid, margin)
     return _map_difference(
         "roughness", relative, used, a.mesh.face_centroid, ROUGHNESS_STEP, "-",
-        "Outside the works roughness differs by more than {percent:g} % on {share:.0%} of the faces, by up to {largest:.1%}.",
+        "Outside the works roughness differs by more than {percent:g} % on {share} of the faces, by up to {most}.",
     )
 
 
@@ -120,7 +121,9 @@ def _map_difference(what, values, used, points, limit, unit, text) -> Difference
         return None
     i = int(size.argmax())
     share = float(beyond.sum() / max(used.sum(), 1))
-    sentence = text.format(limit=limit, percent=100 * limit, share=share, largest=size[i])
+    sentence = text.format(
+        limit=limit, percent=100 * limit, share=percent(share), largest=size[i], most=percent(float(size[i]), 1),
+    )
     return Difference(what, sentence, float(values[i]), unit, share, (float(points[i, 0]), float(points[i, 1])))
 
 

@@ -9,7 +9,7 @@ import numpy as np
 
 from ..cautions import OWED
 from ..eddies import Zone
-from ..figure import Figure, Place, Source
+from ..figure import Figure, Place, Source, printed
 from ..frame import Frame
 from ..ledger import FrameLedger, frame_ledger
 from ..ledger.report import time_text
@@ -106,7 +106,7 @@ def sentence(label: str, ledger: FrameLedger) -> str:
     count = "one recirculation zone" if len(zones) == 1 else f"{len(zones)} recirculation zones"
     return (
         f"{label}: {count}. The largest, {largest.name}, covers {largest.area_m2:.0f} m2 and takes "
-        f"{largest.recirculating_discharge_m3_s:.2g} m3/s round with it{of}."
+        f"{printed(largest.recirculating_discharge_m3_s, digits=2)} m3/s round with it{of}."
     )
 
 

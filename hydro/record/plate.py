@@ -11,6 +11,7 @@ import shapely
 
 from .._kernels import pixels
 from ..contours import contour_lines
+from ..figure import printed
 from ..frame import Frame
 from ..reach import Reach
 from .model import Plate
@@ -243,7 +244,7 @@ def _legend(sheet: Drawing, window: Window, top: float, tube: float) -> None:
     sheet.image(ramp, x, y, 30, 2.4)
     sheet.text(x, y + 5, "0", size=2.4, ink=INK)
     sheet.text(x + 30, y + 5, f"{top:g} m/s", size=2.4, ink=INK, anchor="end")
-    words = f"stream tubes of {tube:.3g} m3/s, every second one darker" if tube > 0 else "speed, no stream tubes"
+    words = f"stream tubes of {printed(tube)} m3/s, every second one darker" if tube > 0 else "speed, no stream tubes"
     sheet.text(x + 34, y + 2, words, size=2.4, ink=INK)
     sheet.text(x + 34, y + 5, "eddies hatched: rising to the right turns clockwise seen from above", size=2.4, ink=INK)
 

@@ -8,6 +8,7 @@ from dataclasses import dataclass
 import numpy as np
 
 from .._kernels import move as kernel
+from ..figure import percent
 from ..frame import Frame
 from ..run import Run
 from ..streamfunction import OpenBoundary
@@ -253,6 +254,6 @@ def _warnings(run: Run, kept: np.ndarray, times: np.ndarray) -> list[str]:
     if share < 0.05:
         return []
     return [
-        f"frames stand {gap:g} s apart and the velocity changes by more than half between two of them on {share:.0%} of the "
+        f"frames stand {gap:g} s apart and the velocity changes by more than half between two of them on {percent(share)} of the "
         "water: paths there depend on what happened in between."
     ]
