@@ -18,7 +18,7 @@ import pypdf
 import pytest
 import tomlkit
 
-from dashboard import theme
+from dashboard import cli, theme
 from dashboard.choices import Choices
 from dashboard.cli import main
 from dashboard.pack.chapter import AtOnce, Chapter
@@ -27,6 +27,7 @@ from dashboard.reading import Reading
 from dashboard.studies import Studies
 from dashboard.views import frame_words
 from hydro.cautions import CAUTIONS
+from hydro.handbook import RELATIONS
 from hydro.review import SAMPLE
 
 A, B = "existing_bankfull_coarse", "proposed_low"
@@ -35,6 +36,11 @@ DUTY = {
     "eddies": {"no-roller", "no-secondary-currents", "wake-detail", "rotation-time", "sensitivity"},
     "section": {"section-discharge", "sensitivity", "uniform-flow", "no-secondary-currents", "no-roller"},
     "profile": {"uniform-flow", "no-secondary-currents", "no-roller"},
+    "weirs": {"weir-formula", "section-discharge", "no-roller"},
+    "openings": {"section-discharge", "no-secondary-currents", "screening"},
+    "places": {"screening", "hazard-class", "near-bed"},
+    "envelope": {"screening", "hazard-class", "near-bed"},
+    "observed": {"tracing", "screening"},
     "trace": {"tracing", "no-secondary-currents"},
     "drift": {"drift", "tracing", "no-roller"},
     "passage": {"passage", "endurance", "near-bed", "screening"},
@@ -101,6 +107,10 @@ COMMANDS = {
     "eddies": lambda f: ["eddies", file_of(A)],
     "section": lambda f: ["section", str(SAMPLE / "results" / f"{A}.nc")],
     "profile": lambda f: ["section", file_of(A), "--profile", "--line", "Bend"],
+    "weirs": lambda f: ["section", file_of(A), "--weirs", "broad-crested"],
+    "openings": lambda f: ["section", file_of(A), "--openings"],
+    "places": lambda f: ["section", file_of(A), "--places", "0.3"],
+    "observed": lambda f: ["observed", str(SAMPLE)],
     "trace": lambda f: ["trace", file_of(A), "--line", "Bend", "--spacing", "8"],
     "drift": lambda f: ["drift", str(f), "--run", A],
     "passage": lambda f: ["passage", str(f), "--run", A],
@@ -126,6 +136,27 @@ def test_a_command_prints_and_writes_what_its_figures_owe(folder, tmp_path, caps
     written = [p for p in (tmp_path / "out").rglob("*") if p.is_file()]
     assert written or command in NO_FOLDER
     assert {p.name: lacking(text_of(p), owed) for p in written} == {p.name: [] for p in written}
+
+
+def test_an_envelope_carries_what_it_owes(tmp_path):
+    assert main(["section", file_of(A), "--envelope", str(tmp_path / "most.gpkg")]) == 0
+    assert lacking(text_of(tmp_path / "most.gpkg"), DUTY["envelope"]) == []
+
+
+@pytest.mark.parametrize("name", RELATIONS)
+def test_a_relation_prints_the_cautions_that_it_owes(name):
+    """Its own, as the handbook has them: there is no relation without one, and none is left out of what is printed."""
+    from dashboard.commands.relation import _content
+
+    found = RELATIONS[name]
+    content = _content(found, {}, 1.0)
+    assert found.cautions and {c["id"] for c in content["cautions"]} == set(found.cautions)
+
+
+def test_every_command_that_gives_figures_is_looked_at_here():
+    """A new command must be entered above, or here with those that give none of their own."""
+    looked_at = {call(SAMPLE)[0] for call in COMMANDS.values()} | {"record", "pack", "relation"}
+    assert set(cli.COMMANDS) - looked_at == {"begin", "open", "queries", "settings"}
 
 
 def test_what_finds_no_eddy_still_says_that_this_is_no_evidence(tmp_path, capsys):
