@@ -59,6 +59,7 @@ class Page:
         self.own_section = start.section is not None
         self.push, self.sent = False, 0
         self.stop: int | None = None  # the saved view that is shown
+        self.photograph: int | None = None  # the one that is open
         self.file: File | None = None  # to be handed to the reader with the next drawing
         self.files_sent = 0
         self.map = MapFigure((0.0, 0.0, 100.0, 54.0), moved=self._moved)
@@ -203,6 +204,10 @@ class Page:
 
     def on_record(self, _: str) -> None:
         self.studies.make_record()
+
+    def on_photograph(self, value: str) -> None:
+        """Open one of the site's photographs, or close it."""
+        self.photograph = int(value) if value and self.photograph != int(value) else None
 
     def on_pack(self, kind: str) -> None:
         self.studies.packs.make(kind)

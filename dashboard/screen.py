@@ -17,7 +17,7 @@ from .raster import View
 from .reading import STORY
 from .results import Working
 from .theme import Look
-from .views import frame_words, marks
+from .views import backdrop, frame_words, marks, photographs
 from .views import map as drawing
 from .views.scene import Scene
 
@@ -39,6 +39,7 @@ class Screen:
         self._question = ""
         self._dressed: Look | None = None
         self._hidden = 0
+        self._laid: tuple[str, View, Look] | None = None  # of the backdrop that is shown
         self.at_stop = False
         self._scene: Scene | None = None
 
@@ -136,9 +137,23 @@ class Screen:
         page.map.show(sheet, *picture_of(scene, desk, view))
         self._put("caption", self._caption(page, desk, view))
         self._put("scale", marks.scale_bar(view.step, desk.units, label=look.label_px) + marks.north())
-        missing = self._missing(desk)
+        missing = self._missing(desk) or self._ground(page, desk, view)
         if missing is not None:
             raise missing
+
+    def _ground(self, page: Page, desk: Desk, view: View) -> Working | None:
+        """The review's backdrops under the water; while they are read the map keeps what it has."""
+        wide = view.widened(_PICTURE_SHARE)
+        wanted = (desk.run_id, wide, desk.look)
+        if self._laid == wanted:
+            return None
+        try:
+            layers = desk.studies.site.layers(desk.run_id, wide)
+        except Working as working:
+            return working
+        page.map.lay(backdrop.colours(layers, desk.look.palette), wide)
+        self._laid = wanted
+        return None
 
     def _missing(self, desk: Desk) -> Working | None:
         """The map shows only water until psi is there: then it is drawn again."""
@@ -154,6 +169,7 @@ class Screen:
         words = page.question.caption(desk, self._scene or Scene(), view)
         if self._hidden:
             words += f" {text.count(self._hidden, 'more eddy is', 'more eddies are')} too small to name here."
+        words += backdrop.words(desk.studies.site.backdrop_names())
         zoom = "".join(
             f'<button type="button" class="word" data-do="zoom" data-value="{value}" data-key="zoom-{value}">{label}</button> '
             for value, label in (*page.question.places, ("nearer", "nearer"), ("farther", "farther"), ("whole", "whole reach"))
@@ -179,6 +195,7 @@ class Screen:
             self._put("status", frame_words.working(self.said) if self.said else "")
         if "answer" not in self.slots or self.waits.get("answer"):
             self.slots.setdefault("answer", text.safe(self.said or "These results cannot be shown."))
+        self._photographs(page, desk)
         self._put("cautions", frame_words.cautions(question.cautions(desk), short=desk.look.hall))
         try:
             matter = page.reading.matter()
@@ -192,6 +209,14 @@ class Screen:
         place = matter.review.contents.place if matter.review else ""
         self._put("title", f"<b>Leewater</b><span>{text.safe(matter.title)}{'. ' + text.safe(place) if place else ''}</span>")
         self._put("foot", _foot(page, desk, matter.runs))
+
+    def _photographs(self, page: Page, desk: Desk) -> None:
+        """Their marks on the map, and the one that is open."""
+        found = _ready(lambda d: d.studies.site.photographs(d.run_id), desk) if page.question.has_map else None
+        local = [desk.run.mesh.to_local(np.array([p.x, p.y])) for p in found or ()]
+        self._put("places", photographs.marks(found or (), local, page.photograph))
+        chosen = found[page.photograph] if found and page.photograph is not None else None
+        self._put("photograph", photographs.shown(chosen, page.photograph or 0) if chosen else "")
 
     def _story(self, page: Page, desk: Desk) -> None:
         """Progress of long work, with its Stop: the question's own, else following the eddies through the run."""

@@ -27,6 +27,7 @@ from .packs import Packs  # noqa: E402
 from .page import Page  # noqa: E402
 from .reading import Reading  # noqa: E402
 from .results import Working  # noqa: E402
+from .site import Site  # noqa: E402
 from .studies import Studies  # noqa: E402
 from .wire import WEB  # noqa: E402
 
@@ -104,6 +105,23 @@ class Web(StaticFileHandler):
         self.set_header("Cache-Control", "no-cache")
         if path.endswith(".woff2"):
             self.set_header("Content-Type", "font/woff2")
+
+
+class Picture(RequestHandler):
+    """A site photograph of the review, made anew without its tags."""
+
+    def initialize(self, site: Site) -> None:
+        self.site = site
+
+    def get(self, number: str) -> None:
+        try:
+            content = self.site.picture(int(number))
+        except (Working, ValueError, OSError):
+            raise HTTPError(404) from None
+        self.set_header("Content-Type", "image/jpeg")
+        self.set_header("Cache-Control", "no-cache")
+        self.set_header("X-Content-Type-Options", "nosniff")
+        self.finish(content)
 
 
 class PackFile(StaticFileHandler):
@@ -196,7 +214,7 @@ def page_for(studies: Studies) -> pn.Template:
 
 _SLOTS = (
     "title", "rail", "foot", "asks", "answer", "status", "key", "scale", "alternative", "caption", "ribbon", "progress",
-    "section", "table", "body", "cautions",
+    "section", "table", "body", "cautions", "places", "photograph",
 )
 
 
@@ -269,6 +287,7 @@ def make_server(reading: Reading, port: int, gate: share.Gate | None = None, the
         extra_patterns=[
             (r"/ping", Ping), (r"/sw\.js", Worker), (r"/manifest\.webmanifest", Manifest), (r"/web/theme\.css", Theme),
             (r"/web/(.*)", Web, static), (r"/icons/(.*)", Web, {"path": str(WEB / "icons")}),
+            (r"/photograph/(\d+)", Picture, {"site": studies.site}),
             (r"/pack/(pack-.*)", PackFile, {"packs": studies.packs}),
         ],
     )

@@ -21,6 +21,7 @@ from hydro.review import open_review
 from .packs import Packs
 from .reading import Reading
 from .results import SOON
+from .site import Site
 
 QUERIES, SHARES = "queries", "shares"  # told to all viewers when they change
 TRIED = "drift tried"
@@ -48,6 +49,7 @@ class Studies:
         self.shares: dict[str, float] = {}  # how far the drift of a run is, 0 to 1
         self._stopped: set[str] = set()
         self.packs = Packs(reading)
+        self.site = Site(reading)
 
     def audit(self, run_id: str) -> list[Finding]:
         """What there is to ask about a run, gravest first."""

@@ -92,6 +92,24 @@ class Boundaries(_Table):
     closed: list[str] = []
 
 
+class BackdropEntry(_Table):
+    """A GeoTIFF, a picture with a world file, or a layer of a GeoPackage that maps show in grey under the water."""
+
+    file: str
+    layer: str | None = None
+    opacity: float = pydantic.Field(0.35, gt=0, le=1)
+
+
+class PhotographEntry(_Table):
+    """A picture of the site; ``x``, ``y`` (world, m) and ``bearing`` (degrees from north) where its own tags lack them."""
+
+    file: str
+    caption: str = ""
+    x: float | None = None
+    y: float | None = None
+    bearing: float | None = None
+
+
 class _Contents(_Table):
     """Everything review.toml may hold. Tables of releases, fish, checks and the record are checked
     by the modules that use them."""
@@ -118,6 +136,8 @@ class _Contents(_Table):
     flows: dict[str, Any] = {}
     record: dict[str, Any] = {}
     views: list[dict[str, Any]] = []
+    backdrop: list[BackdropEntry] = []
+    photograph: list[PhotographEntry] = []
 
 
 @dataclass(frozen=True, eq=False)

@@ -91,6 +91,14 @@ class MapFigure:
                 name: [_px(v[i]) if name == "size" else v[i] for i in chosen] for name, v in sheet.texts.items()
             }
 
+    def lay(self, colours: np.ndarray | None, view: View | None) -> None:
+        """Lay a backdrop, uint32 RGBA with rows from the south, under the water; None takes it away."""
+        if colours is None or view is None:
+            self.sources["ground"].data = _empty()["ground"]
+            return
+        west, south, _, _ = view.extent
+        self.sources["ground"].data = {"image": [colours], "x": [west], "y": [south], "dw": [view.width_m], "dh": [view.height_m]}
+
     def clear(self) -> None:
         """Blank water and no marks: there is nothing to show."""
         for name, data in _empty().items():
@@ -112,6 +120,7 @@ class MapFigure:
 
     def _glyphs(self) -> None:
         f: Any = self.figure
+        f.image_rgba("image", "x", "y", "dw", "dh", source=self.sources["ground"], level="image")
         f.image("image", "x", "y", "dw", "dh", source=self.sources["water"], color_mapper=self.colours, level="image")
         for name in ("under", "areas", "over"):
             if name == "areas":
@@ -139,7 +148,7 @@ def _empty() -> dict[str, dict]:
     blank = Sheet()
     texts = {font: dict(blank.texts) for font in _FONTS}
     water: dict[str, list] = {"image": [], "x": [], "y": [], "dw": [], "dh": []}
-    return {"water": water, "under": blank.under, "areas": blank.areas, "over": blank.over, **texts}
+    return {"water": water, "ground": dict(water), "under": blank.under, "areas": blank.areas, "over": blank.over, **texts}
 
 
 def _px(size: float) -> str:

@@ -278,9 +278,18 @@ class Desk {
     ];
   }
 
+  // Marks that are buttons stand at their place on the map.
+  places() {
+    for (const mark of document.querySelectorAll("#map [data-at]")) {
+      const [px, py] = this.toPixels(mark.dataset.at.split(",").map(Number));
+      mark.style.transform = `translate(${px}px, ${py}px)`;
+    }
+  }
+
   overlay() {
     const layer = document.getElementById("over");
     if (!layer || !this.figure()) return;
+    this.places();
     const ends = this.ends ?? this.state.ends;
     layer.hidden = !ends;
     if (!ends) return;

@@ -11,8 +11,12 @@ from collections.abc import Iterator
 from pathlib import Path
 from urllib.parse import parse_qs, urlsplit
 
+import numpy as np
 import pytest
+from PIL import Image
 from playwright.sync_api import Browser, Page, expect
+
+from hydro.review import open_review
 
 from .conftest import ROOT, Server, running_dashboard
 from .desk import PATIENCE, colours, faults, open_desk, plain, settled
@@ -30,9 +34,13 @@ def copy(tmp_path_factory: pytest.TempPathFactory) -> Path:
     rest = runs[-1][runs[-1].index("[settings]") :]
     chosen = next(r for r in runs if f'id = "{COARSE}"' in r)
     head = re.sub(r'^title = .*$', 'title = "Weir <script>document.title=1</script>"', head, flags=re.M)
-    (folder / "review.toml").write_text(f"{head}[[runs]]{chosen}\n{rest}", encoding="utf-8")
+    x, y = open_review(sample).reach.centre_line.at(np.array([540.0]))[0] + np.array(open_review(sample).origin)
+    photograph = f'[[photograph]]\nfile = "ramp.jpg"\ncaption = "The ramp <i>(invented)</i>"\nx = {x}\ny = {y}\nbearing = 90\n'
+    (folder / "review.toml").write_text(f"{head}{photograph}[[runs]]{chosen}\n{rest}", encoding="utf-8")
     (folder / "results").mkdir()
-    shutil.copy(sample / "lines.gpkg", folder)
+    for name in ("lines.gpkg", "plan.png", "plan.pgw"):
+        shutil.copy(sample / name, folder)
+    Image.new("RGB", (320, 200), (90, 120, 60)).save(folder / "ramp.jpg")
     shutil.copy(sample / "results" / f"{COARSE}.nc", folder / "results")
     return folder
 
@@ -82,6 +90,28 @@ def test_a_finding_becomes_a_query_in_one_action_and_is_answered(page: Page, min
     expect(row).to_contain_text("The pier was left out on purpose.")
     last = [json.loads(line) for line in (copy / "queries.jsonl").read_text(encoding="utf-8").splitlines()][-1]
     assert (last["who"], last["set"]["state"]) == ("C. Modeller", "answered")
+
+
+def test_a_photograph_is_opened_from_the_map_by_key(page: Page, mine: Server):
+    open_desk(page, mine.address)
+    page.click("button[data-do=zoom][data-value=whole]")
+    settled(page)
+    expect(page.locator("figcaption").first).to_contain_text("Backdrop: plan.png.")
+    mark = page.locator("#map .photo")
+    expect(mark).to_have_attribute("aria-label", "Photograph 1: The ramp <i>(invented)</i>, looking east (090\u00b0)")
+    box, frame = mark.bounding_box(), page.locator("#map").bounding_box()
+    assert box and frame
+    middle = box["x"] + box["width"] / 2
+    assert frame["x"] < middle < frame["x"] + frame["width"]
+    mark.focus()
+    page.keyboard.press("Enter")
+    picture = page.locator(".photograph img")
+    expect(picture).to_be_visible()
+    page.wait_for_function("() => document.querySelector('.photograph img').naturalWidth === 320")
+    expect(page.locator(".photograph figcaption")).to_contain_text("The ramp <i>(invented)</i>, looking east")
+    assert faults(page) == []
+    page.keyboard.press("Enter")  # the focus has stayed on the mark
+    expect(picture).to_have_count(0)
 
 
 def test_letting_logs_go_shows_how_far_it_is_and_can_be_stopped(page: Page, mine: Server):
