@@ -14,7 +14,7 @@ from typing import Any
 import numpy as np
 from shapely.geometry.base import BaseGeometry
 
-from hydro.contours import contour_lines, tube_levels
+from hydro.contours import psi_lines, tube_levels
 from hydro.eddies import Zone
 from hydro.frame import Frame
 from hydro.ledger import (
@@ -217,9 +217,9 @@ class Reading:
         ledger = self.entry(run_id, moment)
 
         def make() -> tuple[tuple[np.ndarray, ...], float]:
-            sf, mesh = ledger.sf, ledger.frame.mesh
+            sf = ledger.sf
             levels = tube_levels(sf, count)
-            lines = [line for level in levels for line in contour_lines(mesh, sf.psi, level, sf.domain)]
+            lines = [line for level in levels for line in psi_lines(sf, level)]
             return tuple(lines), float(np.median(np.diff(levels))) if len(levels) > 1 else 0.0
 
         return self.results.get(("tubes", run_id, moment, count), make, label="Drawing the stream tubes.", heavy=True)

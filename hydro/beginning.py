@@ -11,7 +11,7 @@ import geopandas
 import numpy as np
 import shapely
 
-from .contours import contour_lines
+from .contours import psi_lines
 from .provenance import files_hash
 from .reach import CentreLine
 from .readers import open_run
@@ -68,7 +68,7 @@ def proposed_course(run: Run) -> CentreLine:
         raise ValueError(f"no water passes through {run.name}; draw its centre line in lines.gpkg by hand.")
     banks = [w.psi_m3_s for w in sf.walls]
     level = (min(banks) + max(banks)) / 2
-    lines = contour_lines(run.mesh, sf.psi, level, sf.domain)
+    lines = psi_lines(sf, level)
     longest = max(lines, key=lambda p: float(np.hypot(*np.diff(p, axis=0).T).sum()))
     width = float(run.mesh.face_area.sum()) / float(np.hypot(*np.diff(longest, axis=0).T).sum())
     thin = shapely.get_coordinates(shapely.LineString(longest).simplify(_SIMPLER * width))

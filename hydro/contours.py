@@ -31,6 +31,23 @@ def contour_lines(mesh: Mesh, values: np.ndarray, level: float, domain: np.ndarr
     return [points[first[i] : first[i + 1]] for i in range(len(first) - 1)]
 
 
+def psi_lines(sf: StreamFunction, level: float) -> list[np.ndarray]:
+    """Lines of one level of psi, m3/s, over its whole domain; at a link's path they break, as psi does.
+
+    As :func:`contour_lines` otherwise.
+    """
+    mesh, (beside, _) = sf.frame.mesh, sf.seam
+    if not beside.size:
+        return contour_lines(mesh, sf.psi, level, sf.domain)
+    away = sf.domain.copy()
+    away[beside] = False
+    points, first = contour.lines(
+        mesh.node_xy[mesh.triangles[beside].ravel()], np.arange(3 * len(beside), dtype=np.int32).reshape(-1, 3),
+        np.full((len(beside), 3), -1, np.int32), np.ones(len(beside), bool), sf.corners(beside).ravel(), float(level),
+    )
+    return contour_lines(mesh, sf.psi, level, away) + [points[first[i] : first[i + 1]] for i in range(len(first) - 1)]
+
+
 def tube_levels(sf: StreamFunction, count: int) -> np.ndarray:
     """Levels of psi between stream tubes, m3/s: equal steps of the through-discharge over ``count``.
 

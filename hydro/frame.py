@@ -6,8 +6,8 @@ which psi and sections use as they are, and values at nodes, which drawing and t
 
 from __future__ import annotations
 
-from collections.abc import Iterable
-from dataclasses import dataclass, replace
+from collections.abc import Iterable, Mapping
+from dataclasses import dataclass, field, replace
 from functools import cached_property
 from typing import Any
 
@@ -52,6 +52,8 @@ class Frame:
         m3/s, positive from the left to the right of the directed edge; the truth where stored.
     wet_depth_m : float
         Depth above which water counts as wet.
+    series : mapping of name to m3/s
+        Discharges that the file holds beside the field, such as a culvert's.
     """
 
     mesh: Mesh
@@ -69,6 +71,7 @@ class Frame:
     face_unit_discharge: np.ndarray
     edge_discharge: np.ndarray | None
     wet_depth_m: float
+    series: Mapping[str, float] = field(default_factory=dict)
 
     @cached_property
     def level(self) -> np.ndarray:
@@ -170,6 +173,7 @@ def make_frame(
     kind: str,
     interval_s: float | None = None,
     wet_depth_m: float,
+    series: Mapping[str, float] | None = None,
 ) -> Frame:
     """A frame from what a reader found: the one rule for every derived field.
 
@@ -191,7 +195,7 @@ def make_frame(
             a.setflags(write=False)
     return Frame(
         mesh, index, seconds, time, kind, interval_s, raw.stored_on, node_bed, depth, q, face_bed, face_depth, face_q,
-        raw.edge_discharge, wet_depth_m,
+        raw.edge_discharge, wet_depth_m, series or {},
     )
 
 
@@ -210,6 +214,7 @@ def mean_frame(frames: Iterable[tuple[Frame, float]]) -> Frame:
     """
     sums: list[np.ndarray | None] | None = None
     total, first, last = 0.0, None, None
+    series: dict[str, float] = {}
     for frame, weight in frames:
         if frame.kind == "maximum":
             raise ValueError(f"frame at {frame.seconds:g} s holds maxima; maxima of different moments have no mean.")
@@ -219,11 +224,16 @@ def mean_frame(frames: Iterable[tuple[Frame, float]]) -> Frame:
         for s, f in zip(sums, fields, strict=True):
             if s is not None and f is not None:
                 s += weight * f
+        for name, value in frame.series.items():
+            series[name] = series.get(name, 0.0) + weight * value
         total, last = total + weight, frame
     if sums is None or first is None or last is None or not total > 0:
         raise ValueError("there is no frame to average in this window; widen it.")
     means: dict[str, Any] = {n: (None if s is None else s / total) for n, s in zip(_MEAN_OF, sums, strict=True)}
-    return replace(first, kind="mean", interval_s=total, seconds=last.seconds, time=last.time, index=last.index, **means)
+    held = {name: value / total for name, value in series.items()}
+    return replace(
+        first, kind="mean", interval_s=total, seconds=last.seconds, time=last.time, index=last.index, series=held, **means,
+    )
 
 
 _MEAN_OF = ("depth", "unit_discharge", "face_depth", "face_unit_discharge", "edge_discharge")

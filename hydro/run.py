@@ -135,6 +135,7 @@ class Run:
             time=None if t.instants is None else t.instants[i],
             kind=t.kinds[i], interval_s=None if np.isnan(interval) else interval,
             wet_depth_m=self.settings["wet_depth_m"],
+            series={name: float(values[i]) for name, values in self.series.items()},
         )
 
     def frames(self) -> Iterator[Frame]:

@@ -257,7 +257,7 @@ def profile_of(line: Section, ledger: FrameLedger, tube: float, subject: shapely
     """A cut as the drawing wants it: one station after the other, with gaps where the line leaves the mesh."""
     corners = line.frame.mesh.triangles[line.triangle]
     weight = barycentric(line.frame.mesh.node_xy, np.repeat(corners, 2, axis=0), line.xy.reshape(-1, 2))
-    psi = (weight * ledger.sf.psi[np.repeat(corners, 2, axis=0)]).sum(axis=1).reshape(-1, 2)
+    psi = (weight * ledger.sf.corners(np.repeat(line.triangle, 2))).sum(axis=1).reshape(-1, 2)
     wet = line.wet[:, None] & (line.depth > line.frame.wet_depth_m)
     speed = np.where(wet, line.flow / np.where(wet, line.depth, 1.0), np.nan)
     after = np.flatnonzero(line.distance[1:, 0] - line.distance[:-1, 1] > 1e-6) + 1

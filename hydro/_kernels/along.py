@@ -18,12 +18,23 @@ def crossing(xy, psi, i, j, level):
 
 
 @njit(cache=True, nogil=True)
-def follow(xy, triangles, neighbours, inside, psi, depth, open_side, t, x, y, level, forward, out_xy, out_t, out_tri):
+def _value(xy, triangles, psi, t, x, y):
+    """psi at a point of triangle t."""
+    a, b, c = triangles[t, 0], triangles[t, 1], triangles[t, 2]
+    area2 = (xy[b, 0] - xy[a, 0]) * (xy[c, 1] - xy[a, 1]) - (xy[b, 1] - xy[a, 1]) * (xy[c, 0] - xy[a, 0])
+    wa = ((xy[b, 0] - x) * (xy[c, 1] - y) - (xy[c, 0] - x) * (xy[b, 1] - y)) / area2
+    wb = ((xy[c, 0] - x) * (xy[a, 1] - y) - (xy[a, 0] - x) * (xy[c, 1] - y)) / area2
+    return wa * psi[a] + wb * psi[b] + (1.0 - wa - wb) * psi[c]
+
+
+@njit(cache=True, nogil=True)
+def follow(xy, triangles, neighbours, inside, psi, depth, open_side, beside, t, x, y, level, forward, out_xy, out_t, out_tri):
     """Follow psi = ``level`` from (x, y) in triangle t until it leaves, closes, or the arrays are full.
 
     Facing along the flow psi is higher on the left, so a line leaves an anticlockwise triangle where psi
     rises through the level along the side. Times come from depth over unit discharge, exact for linear
-    depth. Returns (points written, why it ended).
+    depth. ``beside`` (m,) marks triangles at a link's path: psi jumps between them and their neighbours, so the level
+    is read anew where the line enters. Returns (points written, why it ended).
     """
     room = out_xy.shape[0]
     out_xy[0, 0] = x
@@ -70,4 +81,6 @@ def follow(xy, triangles, neighbours, inside, psi, depth, open_side, t, x, y, le
             return n, LEFT if open_side[here] else WALL
         if n >= room:
             return n, LIMIT
+        if beside[t] or beside[u]:
+            level = _value(xy, triangles, psi, u, nx, ny)
         t = u

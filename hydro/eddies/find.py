@@ -22,6 +22,7 @@ from .wake import wake_of
 from .zone import SmallRegion, Zone, ZoneSet
 
 _STREAMLINES = 4  # drawn inside each zone
+_TURNS_BACK = 0.5  # least share of psi's return flow that the field itself must have in a zone
 _FINE_ACROSS = 8  # fewer triangles across than this: flagged
 
 
@@ -76,7 +77,13 @@ def find_zones(
     in_zones = np.zeros(sf.frame.mesh.n_triangles, bool)
     for c in kept:
         in_zones[c.shape.triangles] = True
-    zones = [_zone(sf, reach, c, in_zones, settings, roughness) for c in kept]
+    zones = []
+    for c in kept:
+        zone = _zone(sf, reach, c, in_zones, settings, roughness)
+        if _turned_back(sf, c.shape.triangles, zone.along) < _TURNS_BACK:
+            small.append(_small(sf, c.region, zone.recirculating_discharge_m3_s, zone.area_m2, "the field itself does not turn back there"))
+        else:
+            zones.append(zone)
     return ZoneSet(named(sf, reach, zones), tuple(small), tuple(_cut_by_edge(sf, settings)))
 
 
@@ -101,12 +108,32 @@ def _candidate(sf: StreamFunction, region: Region, settings: Settings) -> _Candi
     noise, size = noise_of(sf, shape.triangles)
     if flow <= noise:
         return _small(sf, region, flow, shape.area_m2, "weaker than the noise of psi")
+    if np.isin(shape.triangles, sf.seam[0]).any():
+        return _small(sf, region, flow, shape.area_m2, "cut by a link's path")
     across = narrow_of(shape.polygon)[0] / size
     if across < settings["zone_triangles_across"]:
         return _small(sf, region, flow, shape.area_m2, "too few triangles across")
     centre, psi_centre = peak_of(sf, region)
     cores = _cores_above(sf, region, shape, noise)
     return _Candidate(region, shape, centre, psi_centre, noise, across, cores, size)
+
+
+def _turned_back(sf: StreamFunction, triangles: np.ndarray, along: np.ndarray) -> float:
+    """Flow against the outer flow that the field itself has in a zone, over that of psi.
+
+    Where a reach fills or empties, psi closes on itself along banks whose water all goes one way: what goes into
+    storage is taken for flow along the bank. There the field has none of the return flow that psi draws.
+    """
+    mesh = sf.frame.mesh
+    a, b, c = (mesh.node_xy[mesh.triangles[triangles, k]] for k in range(3))
+    own = sf.corners(triangles)
+    twice = mesh.triangle_area[triangles] * 2
+    psi_x = (own[:, 0] * (b - c)[:, 1] + own[:, 1] * (c - a)[:, 1] + own[:, 2] * (a - b)[:, 1]) / twice
+    psi_y = (own[:, 0] * (c - b)[:, 0] + own[:, 1] * (a - c)[:, 0] + own[:, 2] * (b - a)[:, 0]) / twice
+    drawn = np.maximum(-(psi_y * along[0] - psi_x * along[1]), 0.0)
+    field = np.maximum(-(sf.frame.triangle_unit_discharge[triangles] @ along), 0.0)
+    whole = float(drawn @ twice)
+    return float(field @ twice) / whole if whole > 0 else 1.0
 
 
 def _small(sf: StreamFunction, region: Region, flow: float, area: float, why: str) -> SmallRegion:

@@ -110,8 +110,8 @@ class Zone:
 class SmallRegion:
     """A region under the floor: counted, and listed on request.
 
-    ``why`` is "weaker than the noise of psi", "under the least share", "too few triangles across" or
-    "open to the boundary".
+    ``why`` is "weaker than the noise of psi", "under the least share", "too few triangles across", "cut by a link's
+    path", "the field itself does not turn back there" or "open to the boundary".
     """
 
     centre: np.ndarray

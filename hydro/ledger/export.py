@@ -18,7 +18,7 @@ import pyogrio
 import shapely
 
 from ..cautions import OWED, caution
-from ..contours import contour_lines, tube_levels
+from ..contours import psi_lines, tube_levels
 from ..review import write_whole
 from ..run import Run
 from ..settings import Settings
@@ -169,9 +169,8 @@ def _tracks(entries: Sequence[FrameSummary], lives: Sequence[Life]) -> list[tupl
 
 def _tubes(entry: FrameLedger, settings: Settings) -> list[tuple]:
     sf, made = entry.sf, []
-    psi = np.nan_to_num(sf.psi)
     for level in tube_levels(sf, int(settings["tubes"])):
-        for line in contour_lines(sf.frame.mesh, psi, float(level), sf.domain):
+        for line in psi_lines(sf, float(level)):
             if len(line) > 1:
                 made.append((shapely.LineString(line), {"frame": entry.frame.index, "psi_m3_s": float(level)}))
     return made

@@ -112,7 +112,8 @@ def section_figures(section: Section, *, sf: StreamFunction | None = None, setti
 def psi_discharge(section: Section, sf: StreamFunction | None) -> float | None:
     """Discharge between the line's outermost stations on psi's domain, m3/s; None without psi there.
 
-    psi is one value along a wall, so a line that crosses an island or a pier still gets the whole.
+    psi is one value along a wall, so a line that crosses an island or a pier still gets the whole. What a link carries
+    past the line is not in it: where the line crosses the link's path, the jump of psi is left out.
     """
     if sf is None or not sf.drawn:
         return None
@@ -123,7 +124,19 @@ def psi_discharge(section: Section, sf: StreamFunction | None) -> float | None:
     corners = mesh.triangles[section.triangle[ends]]
     points = np.array([section.xy[ends[0], 0], section.xy[ends[1], 1]])
     left, right = (barycentric(mesh.node_xy, corners, points) * sf.psi[corners]).sum(axis=1)
-    return float(left - right)
+    return float(left - right) + _past_links(section, sf)
+
+
+def _past_links(section: Section, sf: StreamFunction) -> float:
+    """What the corners' own jumps add along the line, m3/s."""
+    triangles, jump = sf.seam
+    pieces = np.flatnonzero(np.isin(section.triangle, triangles))
+    if not pieces.size:
+        return 0.0
+    mesh, t = sf.frame.mesh, section.triangle[pieces]
+    own = jump[np.searchsorted(triangles, t)]
+    start, end = ((barycentric(mesh.node_xy, mesh.triangles[t], section.xy[pieces, k]) * own).sum(axis=1) for k in (0, 1))
+    return float((start - end).sum())
 
 
 def verticals(section: Section) -> tuple[np.ndarray, np.ndarray, np.ndarray]:

@@ -2,7 +2,8 @@
 
 from .boundaries import OpenBoundary
 from .core import Plan, StreamFunction, stream_function
+from .links import Link, LinkPath
 from .misfit import Misfit
 from .walls import Wall
 
-__all__ = ["Misfit", "OpenBoundary", "Plan", "StreamFunction", "Wall", "stream_function"]
+__all__ = ["Link", "LinkPath", "Misfit", "OpenBoundary", "Plan", "StreamFunction", "Wall", "stream_function"]

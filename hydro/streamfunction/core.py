@@ -5,6 +5,7 @@ from __future__ import annotations
 import copy
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, replace
+from functools import cached_property
 
 import numpy as np
 
@@ -15,6 +16,7 @@ from ..settings import Settings
 from . import misfit as parts
 from .boundaries import OpenBoundary, open_boundaries, with_discharge
 from .domain import Domain, domain_of
+from .links import Link, LinkPath, corner_jumps, jump_gradient, link_paths
 from .misfit import Misfit
 from .solve import System
 from .walls import Topology, Wall, topology_of
@@ -49,6 +51,11 @@ class StreamFunction:
         False where storage explains more than half of the flow, so that psi says little.
     shape : Topology
         The domain's edge, sorted.
+    links : tuple of Link
+        Culverts, pipes and single sources, across whose paths psi jumps; ``psi`` holds the value on the right of a
+        path, :meth:`corners` the value that a triangle sees.
+    links_left_out : tuple of str
+        Declared links that find no water at an end in this frame, or have no discharge in it.
     """
 
     frame: Frame
@@ -66,6 +73,22 @@ class StreamFunction:
     thin_faces: int
     drawn: bool
     shape: Topology
+    links: tuple[Link, ...] = ()
+    links_left_out: tuple[str, ...] = ()
+
+    @cached_property
+    def seam(self) -> tuple[np.ndarray, np.ndarray]:
+        """Triangles (t,) beside the links' paths, sorted, and what psi has there (t, 3) above its nodes' values, m3/s."""
+        return corner_jumps(self.links)
+
+    def corners(self, triangles: np.ndarray) -> np.ndarray:
+        """psi (k, 3) at the corners of triangles (k,), as each of them sees it, m3/s."""
+        beside, jump = self.seam
+        values = self.psi[self.frame.mesh.triangles[triangles]]
+        if beside.size:
+            place = np.minimum(np.searchsorted(beside, triangles), len(beside) - 1)
+            values = values + np.where((beside[place] == triangles)[:, None], jump[place], 0.0)
+        return values
 
     def wall(self, id_: str) -> Wall:
         """The wall with this id; an unknown one lists the known ones."""
@@ -86,6 +109,8 @@ class Plan:
         self.structures, self.centre_line = tuple(structures), centre_line
         self.boundaries = open_boundaries(frame, self.settings, boundary_sets)
         self._key: bytes | None = None
+        self.paths: tuple[LinkPath, ...] = ()
+        self.lost: tuple[str, ...] = ()
         self.shape: Topology
         self._psi: System
         self._phi: System | None = None
@@ -96,6 +121,7 @@ class Plan:
         if key == self._key:
             return
         self.shape = topology_of(frame.mesh, domain, boundaries, self.structures, self.centre_line)
+        self.paths, self.lost = link_paths(frame.mesh, self.shape, self.structures)
         self._psi, self._phi, self._key = _psi_system(frame, self.shape), None, key
 
     def sibling(self) -> Plan:
@@ -175,8 +201,10 @@ def stream_function(
     boundaries = with_discharge(frame, plan.boundaries, domain.triangles)
     plan.fit(frame, domain, boundaries)
     flow = _flow(frame, domain)
-    psi = _solved(frame, plan, flow)
-    parted, rest = _split(frame, plan, flow, psi, depth_rate, split)
+    links = tuple(Link(p, frame.series[p.series]) for p in plan.paths if p.series in frame.series)
+    jump = _of_links(frame, links)
+    psi = _solved(frame, plan, flow - jump)
+    parted, rest = _split(frame, plan, flow, flow - jump, psi, depth_rate, split)
     stored = None
     if depth_rate is not None:
         held = domain.triangles[frame.mesh.face_first_triangle[:-1]]
@@ -189,7 +217,8 @@ def stream_function(
         frame, psi, domain.triangles, walls, boundaries,
         float(discharges[discharges > 0].sum()), float(-discharges[discharges < 0].sum()), stored,
         _through(boundaries), parted, rest, domain.n_specks, domain.thin_faces,
-        parted.storage is None or parted.storage <= 0.5, plan.shape,
+        parted.storage is None or parted.storage <= 0.5, plan.shape, links,
+        (*plan.lost, *(p.name for p in plan.paths if p.series not in frame.series)),
     )
 
 
@@ -208,6 +237,16 @@ def _flow(frame: Frame, domain: Domain) -> np.ndarray:
     else:
         q = frame.triangle_unit_discharge
     return np.where((domain.triangles & ~domain.specks)[:, None], q, 0.0)
+
+
+def _of_links(frame: Frame, links: Sequence[Link]) -> np.ndarray:
+    """Unit discharge (m, 2) that the jumps along the links' paths stand for."""
+    out = np.zeros((frame.mesh.n_triangles, 2))
+    triangles, jump = corner_jumps(links)
+    if triangles.size:
+        gradient = jump_gradient(frame.mesh, triangles, jump)
+        out[triangles] = np.column_stack([gradient[:, 1], -gradient[:, 0]])
+    return out
 
 
 def _psi_system(frame: Frame, shape: Topology) -> System:
@@ -234,12 +273,15 @@ def _solved(frame: Frame, plan: Plan, flow: np.ndarray) -> np.ndarray:
 
 
 def _split(
-    frame: Frame, plan: Plan, flow: np.ndarray, psi: np.ndarray, depth_rate: np.ndarray | None, wanted: bool
+    frame: Frame, plan: Plan, flow: np.ndarray, continuous: np.ndarray, psi: np.ndarray, depth_rate: np.ndarray | None, wanted: bool
 ) -> tuple[Misfit, np.ndarray]:
-    """The misfit and the size of the unexplained unit discharge (m,) in each triangle."""
+    """The misfit and the size of the unexplained unit discharge (m,) in each triangle.
+
+    ``continuous`` (m, 2) is the flow without what the links' jumps stand for: what psi at the nodes is fitted to.
+    """
     mesh, shape = frame.mesh, plan.shape
     gradient = p1.gradients(mesh.node_xy, mesh.triangles, shape.triangles, psi)
-    rest = flow - np.column_stack([gradient[:, 1], -gradient[:, 0]])
+    rest = continuous - np.column_stack([gradient[:, 1], -gradient[:, 0]])
     rest[~shape.triangles] = 0.0
     whole = parts.norm(mesh, shape.triangles, flow)
     if whole == 0.0:

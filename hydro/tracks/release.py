@@ -44,9 +44,9 @@ def one_a_tube(sf: StreamFunction, line: np.ndarray, count: int) -> np.ndarray:
     Raises ``ValueError`` when no tube crosses the line.
     """
     section = cut(sf.frame, line)
-    corners = np.repeat(sf.frame.mesh.triangles[section.triangle], 2, axis=0)
-    xy = section.xy.reshape(-1, 2)
-    psi = (barycentric(sf.frame.mesh.node_xy, corners, xy) * sf.psi[corners]).sum(axis=1).reshape(-1, 2)
+    twice = np.repeat(section.triangle, 2)
+    weights = barycentric(sf.frame.mesh.node_xy, sf.frame.mesh.triangles[twice], section.xy.reshape(-1, 2))
+    psi = (weights * sf.corners(twice)).sum(axis=1).reshape(-1, 2)
     levels = tube_levels(sf, count)
     if len(levels) < 2:
         raise ValueError("the flow has no stream tubes: nothing passes through the model.")

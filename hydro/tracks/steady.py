@@ -58,7 +58,7 @@ def _one(sf: StreamFunction, number: int, start, t: int, sides, direction: str, 
     if t < 0 or not sf.domain[t]:
         return Track("streamline", number, start[None], np.zeros(1), np.array([t], np.int32), "outside the water")
     corners = mesh.triangles[t]
-    level = float(barycentric(mesh.node_xy, corners[None], start[None])[0] @ sf.psi[corners])
+    level = float(barycentric(mesh.node_xy, corners[None], start[None])[0] @ sf.corners(np.array([t]))[0])
     parts = {}
     for way in (("down", "up") if direction == "both" else (direction,)):
         parts[way] = _follow(sf, start, t, level, way == "down", sides, most)
@@ -77,15 +77,34 @@ def _one(sf: StreamFunction, number: int, start, t: int, sides, direction: str, 
     )
 
 
+def _seen_by_triangles(sf: StreamFunction):
+    """Nodes, triangles, psi and depth; triangles beside a link's path have corners of their own, with psi's jump in them.
+
+    Returns (xy, triangles, psi, depth, which triangles those are).
+    """
+    mesh, (beside, _) = sf.frame.mesh, sf.seam
+    psi, marked = np.where(np.isnan(sf.psi), np.inf, sf.psi), np.zeros(mesh.n_triangles, bool)
+    if not beside.size:
+        return mesh.node_xy, mesh.triangles, psi, sf.frame.depth, marked
+    marked[beside] = True
+    old = mesh.triangles[beside].ravel()
+    triangles = mesh.triangles.copy()
+    triangles[beside] = mesh.n_nodes + np.arange(len(old), dtype=triangles.dtype).reshape(-1, 3)
+    return (
+        np.vstack([mesh.node_xy, mesh.node_xy[old]]), triangles, np.concatenate([psi, sf.corners(beside).ravel()]),
+        np.concatenate([sf.frame.depth, sf.frame.depth[old]]), marked,
+    )
+
+
 def _follow(sf: StreamFunction, start, t, level, forward, sides, most):
-    mesh, room = sf.frame.mesh, 2048
-    psi = np.where(np.isnan(sf.psi), np.inf, sf.psi)
+    room = 2048
+    xy_of, triangles, psi, depth, beside = _seen_by_triangles(sf)
     while True:
         room = min(room, most)
         xy, time, tri = np.empty((room, 2)), np.empty(room), np.empty(room, np.int32)
         n, why = kernel.follow(
-            mesh.node_xy, mesh.triangles, mesh.neighbours, sf.domain, psi, sf.frame.depth, sides, t, start[0], start[1],
-            level, forward, xy, time, tri,
+            xy_of, triangles, sf.frame.mesh.neighbours, sf.domain, psi, depth, sides, beside, t, start[0], start[1], level, forward,
+            xy, time, tri,
         )
         if why != kernel.LIMIT or room >= most:
             return xy[:n].copy(), time[:n].copy(), tri[:n].copy(), why
