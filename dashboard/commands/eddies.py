@@ -41,7 +41,7 @@ def run(args: argparse.Namespace) -> int:
         return _mean(args, reader)
     entry = reader.frame(frame_index(run, args))
     _write(args, run, [entry])
-    _frame_table(entry, args)
+    _frame_table(run, entry, args)
     return 0
 
 
@@ -77,7 +77,7 @@ def _mean(args: argparse.Namespace, reader) -> int:
         done, stopped = _read(args, run, reader.reach, [int(i) for i in window], sensitivity=False)
         instants = None if stopped else instants_of(reader, entry, done)
     _write(args, run, [entry], instants=instants)
-    _frame_table(entry, args)
+    _frame_table(run, entry, args)
     _instants_table(entry, instants, args)
     return 0
 
@@ -120,9 +120,9 @@ def _out(args: argparse.Namespace):
     return sys.stderr if args.json == "-" else sys.stdout
 
 
-def _frame_table(entry, args: argparse.Namespace) -> None:
+def _frame_table(run, entry, args: argparse.Namespace) -> None:
     from hydro.figure import printed
-    from hydro.ledger.report import time_text
+    from hydro.ledger.report import balance_words, frame_json, time_text
 
     out, sf, frame = _out(args), entry.sf, entry.frame
     when = time_text(frame.time) or f"{frame.seconds:g} s"
@@ -130,6 +130,8 @@ def _frame_table(entry, args: argparse.Namespace) -> None:
           f"misfit {100 * sf.misfit.total:.2g} %, unexplained {100 * sf.misfit.unexplained:.2g} %", file=out)
     for b in sf.open_boundaries:
         print(f"  {b.name}: {printed(b.discharge_m3_s)} m3/s in", file=out)
+    for words in balance_words(frame_json(run, entry)):
+        print(f"  {words}.", file=out)
     for note in entry.zones.notes:
         print(f"  {note}", file=out)
     _zone_rows(entry.zones.zones, out)

@@ -7,6 +7,7 @@ from functools import cached_property
 
 import numpy as np
 
+from ..balance import Gauges
 from ..figure import Figure, Place
 from ..ledger.frames import depth_rate, plan_for
 from ..reach import CentreLine, Reach, automatic_sections, proposed_centre_line
@@ -64,6 +65,11 @@ class Material:
             frame = self.run.frame(index)
             self._known[index] = stream_function(frame, plan=self.plan, depth_rate=depth_rate(self.run, index, frame))
         return self._known[index]
+
+    @cached_property
+    def gauges(self) -> Gauges:
+        """The automatic sections along :attr:`axis`, ready to read the discharge of any frame."""
+        return Gauges(self.run.frame(0), self.axis, self.spacing_m)
 
     def chosen(self) -> list[int]:
         """Frames that stand for the run: the first, the fullest, and the last."""

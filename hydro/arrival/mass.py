@@ -7,7 +7,6 @@ import numpy as np
 from ..figure import Figure, percent
 from ..ledger.frames import depth_rate
 from ..reach import CentreLine
-from ..section import cut, section_figures
 from .finding import Finding, Material, first_of_each, point
 
 WALL_SHARE = 0.01  # of the through-discharge
@@ -88,37 +87,8 @@ def _sections(m: Material, index: int) -> list[Finding]:
     if centre is None or not sf.through_discharge_m3_s > 0:
         return []
     rate = depth_rate(m.run, index, frame) if m.run.n_frames > 1 else None
-    rows = []
-    face_s = centre.locate(frame.mesh.face_centroid)[0]
-    inlets = [(float(centre.locate(_middle(m, b.edges))[0][0]), b.discharge_m3_s) for b in sf.open_boundaries]
-    inlets += _links(m, centre, index)
-    for chainage, line in m.sections():
-        try:
-            q = section_figures(cut(frame, line)).discharge_m3_s
-        except ValueError:  # the line falls between two arms of the mesh
-            continue
-        due = sum(flow for s, flow in inlets if s < chainage)
-        if rate is not None:
-            due -= float((rate * frame.mesh.face_area)[face_s < chainage].sum())
-        rows.append((chainage, q - due))
-    return _steps(m, centre, index, np.array(rows), m.spacing_m) if len(rows) > 4 else []
-
-
-def _links(m: Material, centre: CentreLine, index: int) -> list[tuple[float, float]]:
-    """What declared links take out and give back: (chainage, m3/s into the model)."""
-    out = []
-    for link in m.reach.structures:
-        if link.represented_as == "link" and link.discharge_variable in m.run.series:
-            q = float(m.run.series[link.discharge_variable][index])
-            ends = np.asarray(link.geometry.coords)[[0, -1], :2]
-            taken, given = centre.locate(ends)[0]
-            out += [(float(taken), -q), (float(given), q)]
-    return out
-
-
-def _middle(m: Material, edges: np.ndarray) -> np.ndarray:
-    mesh = m.run.mesh
-    return mesh.node_xy[mesh.edge_nodes[edges]].mean(axis=(0, 1))[None]
+    rows = np.column_stack([m.gauges.chainage, m.gauges.surplus(sf, rate)])
+    return _steps(m, centre, index, rows, m.spacing_m) if len(rows) > 4 else []
 
 
 def _steps(m: Material, centre: CentreLine, index: int, rows: np.ndarray, spacing: float) -> list[Finding]:

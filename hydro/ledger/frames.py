@@ -7,6 +7,7 @@ from weakref import WeakKeyDictionary
 
 import numpy as np
 
+from ..balance import Balance, Gauges, balance_of
 from ..eddies import Zone, ZoneSet, find_zones
 from ..eddies.sensitivity import Readings
 from ..frame import Frame
@@ -25,13 +26,14 @@ _READINGS: WeakKeyDictionary[Plan, Readings] = WeakKeyDictionary()
 class FrameLedger:
     """Stream function and zones of one frame or of the mean over a window.
 
-    ``window_s`` (t1, t2) is given for a mean formed here.
+    ``window_s`` (t1, t2) is given for a mean formed here; ``balance`` is the water balance along the reach.
     """
 
     frame: Frame
     sf: StreamFunction
     zones: ZoneSet
     window_s: tuple[float, float] | None = None
+    balance: Balance | None = None
 
 
 class FrameReader:
@@ -48,6 +50,7 @@ class FrameReader:
         wanted = sensitivity and run.mesh.n_nodes <= _MOST_READ_NODES
         self.readings = _READINGS.setdefault(self.plan, Readings(self.plan)) if wanted else None
         self.left_out = sensitivity and self.readings is None
+        self._gauges: Gauges | None = None
 
     def frame(self, index: int) -> FrameLedger:
         """The entry of frame ``index``."""
@@ -77,7 +80,15 @@ class FrameReader:
         length = window[1] - window[0] if window else frame.interval_s
         if frame.kind == "mean" and length:
             found = replace(found, zones=tuple(with_periods(z, length, self.settings) for z in found.zones))
-        return FrameLedger(frame, sf, found, window)
+        moment = window is None and frame.kind == "instant" and self.run.n_frames > 1
+        return FrameLedger(frame, sf, found, window, balance_of(sf, self._gauges_for(frame), rate, moment=moment))
+
+    def _gauges_for(self, frame: Frame) -> Gauges | None:
+        """Automatic sections of the run's mesh, made once; None without a centre line."""
+        centre = self.reach.centre_line if self.reach else None
+        if centre is not None and self._gauges is None:
+            self._gauges = Gauges(frame, centre, max(centre.length / self.settings["automatic_sections"], 1.0))
+        return self._gauges
 
 
 def with_periods(zone: Zone, window_s: float, settings: Settings) -> Zone:

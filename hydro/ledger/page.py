@@ -8,6 +8,7 @@ from typing import Any
 
 from ..figure import Figure, printed
 from ..settings import Settings
+from .report import balance_words
 
 _COLUMNS = (
     ("area_m2", "area", "m2"), ("volume_m3", "volume", "m3"), ("length_m", "length", "m"), ("width_m", "width", "m"),
@@ -59,7 +60,7 @@ def _frame(entry: Mapping[str, Any]) -> str:
         f"<h2>{html.escape(entry['kind'].capitalize())} at {html.escape(when)}</h2><table><caption>"
         f"{printed(entry['through_discharge_m3_s'])} m3/s through; misfit of psi {100 * misfit['total']:.2g} %, unexplained "
         f"{100 * misfit['unexplained']:.2g} %; read from {html.escape(entry['field'])}; {entry['small_zones']} under the floor"
-        f"</caption><tr><th>id</th><th>zone</th><th>turns</th>{head}<th>flags</th></tr>{rows}</table>"
+        f"{''.join(f'. {html.escape(words)}' for words in balance_words(entry))}</caption><tr><th>id</th><th>zone</th><th>turns</th>{head}<th>flags</th></tr>{rows}</table>"
     )
 
 

@@ -10,8 +10,10 @@ from typing import Any
 
 import numpy as np
 
+from ..balance import Balance
 from ..cautions import OWED, told
 from ..eddies import Zone
+from ..figure import printed
 from ..mesh import Mesh
 from ..provenance import command_line, file_hash, versions
 from ..run import Run
@@ -94,6 +96,14 @@ def frame_json(run: Run, entry: FrameLedger) -> dict[str, Any]:
             "total": split.total, "storage": split.storage, "walls": split.walls, "unexplained": split.unexplained,
         },
         "open_boundaries": [{"name": b.name, "discharge_m3_s": b.discharge_m3_s} for b in sf.open_boundaries],
+        "balance": _balance(run, entry.balance),
+        "links": [
+            {"name": link.path.name, "discharge_m3_s": link.discharge_m3_s,
+             "path": run.mesh.to_world(run.mesh.node_xy[link.path.nodes]).round(3).tolist()}
+            for link in sf.links
+        ],
+        "links_left_out": list(sf.links_left_out),
+        "storage_dominates": not sf.drawn,
         "walls": [{"id": w.id, "psi_m3_s": w.psi_m3_s} for w in sf.walls],
         "dry_specks": sf.n_specks,
         "thin_faces": sf.thin_faces,
@@ -102,6 +112,41 @@ def frame_json(run: Run, entry: FrameLedger) -> dict[str, Any]:
         "open_to_the_boundary": len(entry.zones.open_to_boundary),
         "notes": list(entry.zones.notes),
     }
+
+
+def _balance(run: Run, balance: Balance | None) -> dict[str, Any] | None:
+    """The largest step between automatic sections and the compact sources; null where they were not looked for."""
+    if balance is None:
+        return None
+    sources = None
+    if balance.sources is not None:
+        sources = [
+            {"place": run.mesh.to_world(np.array(s.at)).round(3).tolist(), "discharge_m3_s": s.discharge_m3_s,
+             "chainage_m": s.chainage_m, "offset_m": s.offset_m}
+            for s in balance.sources
+        ]
+    return {"largest_section_difference": asdict(balance.step) if balance.step else None, "undeclared_sources": sources}
+
+
+def balance_words(entry: Mapping[str, Any]) -> list[str]:
+    """What an entry of ``frames`` says of the water balance: sections, undeclared sources, links, storage; no full stops."""
+    found, out = entry["balance"] or {}, []
+    step = found.get("largest_section_difference")
+    if step:
+        out.append(
+            f"Adjacent sections differ by at most {printed(abs(step['difference_m3_s']))} m3/s ({100 * step['share']:.2g} % of the "
+            f"flow), near chainage {step['chainage_m']:.0f} m"
+        )
+    for source in found.get("undeclared_sources") or ():
+        x, y = source["place"]
+        where = f"{x:.1f} E, {y:.1f} N" if source["chainage_m"] is None else f"chainage {source['chainage_m']:.0f} m"
+        word = "appear" if source["discharge_m3_s"] > 0 else "vanish"
+        out.append(f"{printed(abs(source['discharge_m3_s']))} m3/s {word} at {where}, undeclared")
+    out += [f"{link['name']} carries {printed(link['discharge_m3_s'])} m3/s past the field" for link in entry["links"]]
+    out += [f"{name} is left out: it has no water at an end, or no discharge in the file" for name in entry["links_left_out"]]
+    if entry["storage_dominates"]:
+        out.append("Storage explains more than half of the flow: psi is not drawn")
+    return out
 
 
 def zone_json(mesh: Mesh, zone: Zone) -> dict[str, Any]:

@@ -106,3 +106,21 @@ def test_simple_shear_is_no_eddy():
     sf = stream_function(builders.frame_of(mesh, 1.0, (lambda x, y: 0.1 * y, 0.0)))
     found = find_zones(sf)
     assert found.zones == () and found.small == () and found.open_to_boundary == ()
+
+
+@pytest.mark.parametrize("swing", [-0.25, -0.1, 0.0, 0.15, 0.25])
+def test_the_two_areas_of_the_double_gyre_through_its_cycle(swing: float):
+    """Source: Shadden, Lekien & Marsden 2005: psi = A sin(pi f) sin(pi y), f = e x^2 + (1 - 2 e) x with e = 0.25 sin(omega t).
+
+    The line between the gyres stands where f = 1. Tolerance: the boundary comes from psi linear between nodes.
+    """
+    def psi(x, y):
+        return 0.1 * np.sin(np.pi * (swing * x * x + (1 - 2 * swing) * x)) * np.sin(np.pi * y)
+
+    mesh = builders.channel(80, 40, 2.0, 1.0)
+    sf = stream_function(builders.frame_of(mesh, 1.0, builders.flow_of_psi(psi), stored_on="node"), boundary_sets={})
+    between = 1.0 if swing == 0 else (-(1 - 2 * swing) + np.sqrt((1 - 2 * swing) ** 2 + 4 * swing)) / (2 * swing)
+    zones = sorted(find_zones(sf).zones, key=lambda z: z.centre[0])
+    assert [z.rotation for z in zones] == ["anticlockwise", "clockwise"]  # psi is higher on the left of the flow
+    assert [z.area_m2 for z in zones] == pytest.approx([between, 2 - between], rel=0.02)
+    assert [z.recirculating_discharge_m3_s for z in zones] == pytest.approx([0.1, 0.1], rel=0.01)
