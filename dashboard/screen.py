@@ -38,7 +38,7 @@ class Screen:
         self.failed = ""
         self._question = ""
         self._dressed: Look | None = None
-        self._hidden = 0
+        self._hidden, self._key = 0, "nw"
         self._laid: tuple[str, View, Look] | None = None  # of the backdrop that is shown
         self.at_stop = False
         self._scene: Scene | None = None
@@ -130,10 +130,10 @@ class Screen:
         desk = page.desk(view)
         question, look = page.question, desk.look
         page.map.turn_to(view)
-        scene = question.scene(desk)
+        scene = replace(question.scene(desk), buttons=tuple((float(x), float(y)) for x, y in _taken_at(desk)))
         self._scene = scene
         sheet = drawing.draw(scene, view, look)
-        self._hidden = sheet.hidden
+        self._hidden, self._key = sheet.hidden, sheet.key
         page.map.show(sheet, *picture_of(scene, desk, view))
         self._put("caption", self._caption(page, desk, view))
         self._put("scale", marks.scale_bar(view.step, desk.units, label=look.label_px) + marks.north())
@@ -213,8 +213,7 @@ class Screen:
     def _photographs(self, page: Page, desk: Desk) -> None:
         """Their marks on the map, and the one that is open."""
         found = _ready(lambda d: d.studies.site.photographs(d.run_id), desk) if page.question.has_map else None
-        local = [desk.run.mesh.to_local(np.array([p.x, p.y])) for p in found or ()]
-        self._put("places", photographs.marks(found or (), local, page.photograph))
+        self._put("places", photographs.marks(found or (), _taken_at(desk), page.photograph))
         chosen = found[page.photograph] if found and page.photograph is not None else None
         self._put("photograph", photographs.shown(chosen, page.photograph or 0) if chosen else "")
 
@@ -252,7 +251,7 @@ class Screen:
             "mode": choices.mode, "view": "hall" if choices.hall else "desk", "question": choices.question,
             "query": choices.query(), "push": page.push, "title": f"{page.question.word} \u00b7 Leewater",
             "stop": "yes" if self.at_stop else "", "working": "yes" if self.said else "no", "ends": None, "time": None,
-            "arrangement": "map" if page.question.has_map else "words", "file": page.file_to_send(),
+            "key": self._key, "arrangement": "map" if page.question.has_map else "words", "file": page.file_to_send(),
         }
         if all(isinstance(key, tuple) and key[0] == "followed" for key in self.waits.get("map", ())):
             state["seen"] = page.sent
@@ -260,6 +259,12 @@ class Screen:
         state["ends"] = [list(end) for end in ends] if ends else None
         state["time"] = _ready(page.question.moments, desk) if page.question.has_time else None
         return state
+
+
+def _taken_at(desk: Desk) -> list[np.ndarray]:
+    """Local places of the site's photographs, once they are known."""
+    found = _ready(lambda d: d.studies.site.photographs(d.run_id), desk) or ()
+    return [desk.run.mesh.to_local(np.array([p.x, p.y])) for p in found]
 
 
 def picture_of(scene: Scene, desk: Desk, view: View) -> tuple[np.ndarray | None, View | None]:

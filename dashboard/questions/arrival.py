@@ -129,5 +129,5 @@ class Arrival(Question):
 def _ask(number: int) -> str:
     return (
         f'<button type="button" class="word" data-do="raise" data-value="{number}" data-key="raise-{number}" '
-        f'aria-label="Make finding {number} a query">make it a query</button>'
+        f'aria-label="make it a query: finding {number}">make it a query</button>'
     )

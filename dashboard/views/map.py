@@ -209,7 +209,7 @@ class _Draughtsman:
 
     def labels(self, scene: Scene) -> None:
         size = self.look.label_px
-        self.margins()
+        self.margins(scene)
         for name in scene.names:
             self.name(name)
         if scene.section is not None:
@@ -246,12 +246,23 @@ class _Draughtsman:
             else:
                 self.plain(tag, spot)
 
-    def margins(self) -> None:
-        """Keep labels off the key, the north arrow and the scale bar, which lie over the map's corners."""
+    def margins(self, scene: Scene) -> None:
+        """Keep labels off the key, the north arrow and the scale bar, which lie over the map's corners.
+
+        The key takes the first corner in which it covers nothing of the section.
+        """
         west, south, east, north = self.view.extent
         unit = self.look.label_px * self.px
-        key = (17.5, 9.5) if self.view.columns > 640 and not self.look.hall else (15, 5.5)
-        self.avoid.append((west, north - key[1] * unit, west + key[0] * unit, north))
+        wide, high = ((17.5, 9.5) if self.view.columns > 640 and not self.look.hall else (15, 5.5)) * np.array(unit)
+        corners = {
+            "nw": (west, north - high, west + wide, north), "sw": (west, south, west + wide, south + high),
+            "ne": (east - wide - 3.5 * unit, north - high, east, north),
+        }
+        taken = shapely.LineString(scene.section).buffer(22 * self.px * self.weight) if scene.section else shapely.Point()
+        self.sheet.key = next((name for name, box in corners.items() if not taken.intersects(shapely.box(*box))), "nw")
+        self.avoid.append(corners[self.sheet.key])
+        for x, y in scene.buttons:
+            self.avoid.append((x - unit, y - unit, x + unit, y + unit))
         self.avoid.append((east - 3.5 * unit, north - 5.5 * unit, east, north))
         self.avoid.append((east - 12 * unit, south, east, south + 3.4 * unit))
 

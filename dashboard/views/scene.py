@@ -122,4 +122,5 @@ class Scene:
     names: tuple[Name, ...] = ()
     tags: tuple[Tag, ...] = ()
     section: tuple[tuple[float, float], tuple[float, float]] | None = None
+    buttons: tuple[tuple[float, float], ...] = ()  # places of marks that the page itself lays over the map
     notes: tuple[str, ...] = field(default=())

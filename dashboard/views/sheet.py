@@ -20,13 +20,17 @@ def _columns(names: tuple[str, ...]) -> dict[str, list]:
 
 @dataclass
 class Sheet:
-    """Marks in local m, styled, ready for any renderer; ``hidden`` counts labels that found no room."""
+    """Marks in local m, styled, ready for any renderer; ``hidden`` counts labels that found no room.
+
+    ``key`` is the corner where the key covers nothing of the section: "nw", "sw" or "ne".
+    """
 
     under: dict[str, list] = field(default_factory=lambda: _columns(_LINE))
     areas: dict[str, list] = field(default_factory=lambda: _columns(_AREA))
     over: dict[str, list] = field(default_factory=lambda: _columns(_LINE))
     texts: dict[str, list] = field(default_factory=lambda: _columns(_TEXT))
     hidden: int = 0
+    key: str = "nw"
 
     def area(
         self, shape: shapely.Geometry, *, fill: str = "#ffffff", alpha: float = 0.0, hatch: str = " ",

@@ -57,7 +57,7 @@ class Desk {
     }
     this.state = state;
     if (state.seen === this.sent) this.release();
-    for (const name of ["mode", "view", "arrangement", "question", "working", "stop"]) root.dataset[name] = state[name] ?? "";
+    for (const name of ["mode", "view", "arrangement", "question", "working", "stop", "key"]) root.dataset[name] = state[name] ?? "";
     document.title = state.title;
     if (state.file && state.file.number !== this.kept) {
       this.kept = state.file.number;

@@ -191,3 +191,34 @@ def test_two_browsers_keep_their_own_state(page: Page, server: Server, browser: 
     expect(page.locator(".key")).to_contain_text("Depth")
     assert "Speed" in other.inner_text(".key")
     other.context.close()
+
+
+@pytest.mark.parametrize("width", [1440, 1024])
+def test_in_the_hall_the_cautions_stand_in_view_however_long_the_page(page: Page, server: Server, width: int):
+    page.set_viewport_size({"width": width, "height": 768})
+    open_desk(page, server.address, "question=sections&hall=yes")
+    page.evaluate("window.scrollTo(0, 0)")
+    last = page.locator("footer.cautions li").last.bounding_box()
+    assert last and last["y"] + last["height"] <= 768
+    assert page.evaluate("document.documentElement.scrollHeight") > 768, "the page is longer than the screen, else this proves nothing"
+    side, picture = page.locator(".side").bounding_box(), page.locator("#map").bounding_box()
+    assert side and picture and side["x"] >= picture["x"] + picture["width"]
+
+
+def test_the_section_s_end_and_the_key_do_not_cover_each_other(page: Page, server: Server):
+    apart = (
+        "() => { const a = document.querySelector('#end-left span').getBoundingClientRect(), b = document.querySelector('#map .key')"
+        ".getBoundingClientRect(); return a.right <= b.left || b.right <= a.left || a.bottom <= b.top || b.bottom <= a.top; }"
+    )
+    open_desk(page, server.address)
+    page.wait_for_function(apart)
+    key, ring = page.locator("#map .key").bounding_box(), page.locator("#end-left").bounding_box()
+    assert key and ring
+    page.mouse.move(ring["x"] + 22, ring["y"] + 22)
+    page.mouse.down()
+    page.mouse.move(key["x"] + key["width"] / 2, key["y"] + key["height"] / 2, steps=4)
+    page.mouse.up()
+    page.wait_for_function("x => document.querySelector('#end-left').getBoundingClientRect().x < x", arg=key["x"] + key["width"])
+    page.wait_for_function(apart)
+    settled(page)
+    assert page.evaluate(apart)

@@ -199,3 +199,20 @@ def test_a_table_has_headings_a_caption_and_buttons_that_say_what_they_do():
     assert [th.get("scope") for th in root.iter("th")] == ["col", "col", "row"]
     button = root.find(".//button")
     assert button.get("data-value") == 'E"1' and button.get("aria-label") == "Show <E1>"
+
+
+@pytest.mark.parametrize("ends, corner", [
+    (None, "nw"), (((20.0, 0.0), (30.0, -10.0)), "nw"), (((-45.0, 22.0), (10.0, 0.0)), "sw"), (((-45.0, 22.0), (-45.0, -22.0)), "ne"),
+    (((-60.0, 22.0), (60.0, 22.0)), "sw"),
+])
+def test_the_key_goes_where_it_covers_nothing_of_the_section(ends, corner):
+    """The view is 100 by 50 m about (0, 0); the key is some 28 by 15 m of it."""
+    sheet = drawing.draw(Scene(section=ends), VIEW, theme.look("day"))
+    assert sheet.key == corner
+
+
+def test_labels_keep_off_the_marks_that_the_page_lays_over_the_map():
+    tag = Tag("Pier 1", (10.0, 0.0))
+    free = drawing.draw(Scene(tags=(tag,)), VIEW, theme.look("day")).texts
+    kept = drawing.draw(Scene(tags=(tag,), buttons=((free["x"][0], free["y"][0]),)), VIEW, theme.look("day")).texts
+    assert np.hypot(kept["x"][0] - free["x"][0], kept["y"][0] - free["y"][0]) > 1.0

@@ -146,6 +146,7 @@ const PAGE = (() => {
     for (const z of zones) if (z !== chosen) MARKS.zone(ctx, v, z, false, look);
     if (chosen) MARKS.zone(ctx, v, chosen, true, look);
     const line = head.sections[state.section], taken = line ? MARKS.section(ctx, v, line.ends, look) : [];
+    place(v, line);
     const { offsetLeft: left, offsetTop: top, offsetWidth: wide, offsetHeight: high } = $("key");
     taken.push([left, top, left + wide, top + high], [v.w - 44, 0, v.w, 64], [v.w - 190, v.h - 44, v.w, v.h]); // key, north, scale
     names(ctx, v, taken);
@@ -155,6 +156,22 @@ const PAGE = (() => {
     for (const pin of QUERIES.pins(pack.runs[state.run].id, head.corner)) MARKS.query(ctx, v, pin, look);
     PLATE.flow(ctx, v, head.centre, taken, look);
     PLATE.frame(ctx, v, look, pack.length);
+  }
+
+  // The key takes the first corner in which it covers nothing of the section.
+  function place(v, line) {
+    const box = $("key"), [w, h] = [box.offsetWidth + 14, box.offsetHeight + 14], room = 24 * look.line;
+    const corners = { nw: [0, 0], sw: [0, v.h - h], ne: [v.w - w - 44, 0] };
+    const covers = ([left, top]) => {
+      if (!line) return false;
+      const [[ax, ay], [bx, by]] = line.ends.map(([x, y]) => [v.px(x), v.py(y)]);
+      for (let k = 0; k <= 40; k += 1) {
+        const x = ax + (k / 40) * (bx - ax), y = ay + (k / 40) * (by - ay);
+        if (x > left - room && x < left + w + room && y > top - room && y < top + h + room) return true;
+      }
+      return false;
+    };
+    root.dataset.key = Object.keys(corners).find((name) => !covers(corners[name])) ?? "nw";
   }
 
   // Names of structures, where they stand clear of what was placed before.
