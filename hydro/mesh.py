@@ -277,6 +277,8 @@ def _edges(faces, count, edge_nodes, file_node, file_face, world):
 
 def _like_file(edges, edge_faces, edge_nodes, file_node):
     """Number and direct edges as the file does; edges of the file that no face uses are left out."""
+    if not len(edge_nodes):
+        raise ValueError("edge_node_connectivity lists no edges; export all edges or none.")
     n = int(max(file_node.max(), edge_nodes.max())) + 1
     key = np.sort(file_node[edges].astype(np.int64), axis=1) @ np.array([n, 1])
     theirs = np.sort(edge_nodes.astype(np.int64), axis=1) @ np.array([n, 1])

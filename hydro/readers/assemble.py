@@ -75,7 +75,7 @@ def make_run(parts: Parts) -> Run:
     frames = _Frames(parts, node_bed, face_bed)
     parts.notes.extend(_derivations(parts))
     first = frames(0)
-    parts.notes.extend(faults.check_frame(parts.file, parts.mesh, first, parts.settings["wet_depth_m"]))
+    parts.notes.extend(faults.check_frame(parts.mesh, first, parts.settings["wet_depth_m"]))
     return Run(
         parts.name, parts.files, parts.mesh, parts.times, node_bed, face_bed, parts.ground.crs, parts.ground.datum,
         frames, parts.settings, _roughness(parts), parts.boundary_sets, (*parts.ground.notes, *parts.notes), parts.depth_is,
@@ -163,16 +163,20 @@ class _Frames:
             depth = self._depth(index)
             edge = self._edge_discharge(index)
             values = [r.result() for r in read]
+        if edge is not None and self._edge is not None:
+            faults.check_edge_flow(self._file, self._edge.name, self._mesh, index, edge)
         if not components:
             return RawFrame(stored_on, depth, None, edge)
         if self._flow.of_velocity:
             faults.check_velocity(self._file, components[0].name, index, values, depth > self._wet)
         flow = np.empty((len(depth), 2))
-        for k, value in enumerate(values):
-            np.multiply(value, depth if self._flow.of_velocity else 1.0, out=flow[:, k])
+        with np.errstate(over="ignore", invalid="ignore"):  # a fill value may be too large; that is told below
+            for k, value in enumerate(values):
+                np.multiply(value, depth if self._flow.of_velocity else 1.0, out=flow[:, k])
         dry = depth == 0
         if dry.any():
             flow[dry] = 0.0  # whatever the file holds there, NaN too
+        faults.check_flow(self._file, self._mesh, stored_on, index, flow, depth, self._wet)
         return RawFrame(stored_on, depth, flow, edge)
 
     def _read(self, f: Field, index: int) -> np.ndarray:
@@ -185,6 +189,7 @@ class _Frames:
         if self._from_level:
             values -= self._bed[source.location]
         depth = np.fmax(values, 0.0)  # fmax takes the number where the other is missing
+        faults.check_depth(self._file, self._mesh, source.location, index, depth)
         if source.location == self._flow.place:
             return depth
         if source.location == "node":

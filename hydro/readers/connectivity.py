@@ -49,6 +49,8 @@ def read_table(variable: Stored, row_dimension: str, n_targets: int, *, what: st
     raw = variable.raw()
     if variable.dimensions.index(row_dimension) == 1:
         raw = raw.T
+    if not raw.size:
+        raise ValueError(f"{variable} lists no {what}s; export the complete mesh.")
     if raw.dtype.kind not in "iuf":
         raise ValueError(f"{variable} holds no numbers; export the connectivity as integers.")
     notes: list[Note] = []
@@ -70,8 +72,8 @@ def _pads(variable: Stored, raw: np.ndarray, notes: list[Note]) -> np.ndarray:
     """Unused places: declared fill values, NaN, and undeclared ones that cannot be numbers of nodes."""
     pads = np.zeros(raw.shape, bool)
     for attribute in ("_FillValue", "missing_value"):
-        for value in np.atleast_1d(variable.attributes.get(attribute, [])):
-            if np.isfinite(float(value)):
+        for value in variable.numbers(attribute):
+            if np.isfinite(value):
                 pads |= raw == as_stored(value, raw.dtype)
     if raw.dtype.kind == "f":
         pads |= ~np.isfinite(raw)
@@ -90,13 +92,7 @@ def _pads(variable: Stored, raw: np.ndarray, notes: list[Note]) -> np.ndarray:
 
 def _start(variable: Stored, numbers: np.ndarray, pads: np.ndarray, n: int, notes: list[Note]) -> int:
     """The number of the first node: as declared, unless the numbers show that the declaration is wrong."""
-    stated = variable.attributes.get("start_index", 0)
-    try:
-        start = int(float(stated))
-    except (TypeError, ValueError):
-        start = -1
-    if start not in (0, 1):
-        raise ValueError(f"{variable}: start_index is {stated}; it must be 0 or 1: correct it and export again.")
+    start = stated_start(variable)
     used = numbers[~pads]
     if not used.size:
         return start
@@ -110,6 +106,18 @@ def _start(variable: Stored, numbers: np.ndarray, pads: np.ndarray, n: int, note
         text = f"{variable.name} {said} but counts from 1 (it names node {n} of {n}); read as counted from 1"
         notes.append(Note(text, variable.name))
         return 1
+    return start
+
+
+def stated_start(variable: Stored) -> int:
+    """The number of the first place as a table declares it, 0 where it does not; ``ValueError`` when it is neither 0 nor 1."""
+    stated = variable.attributes.get("start_index", 0)
+    try:
+        start = int(float(stated))
+    except (TypeError, ValueError, OverflowError):
+        start = -1
+    if start not in (0, 1):
+        raise ValueError(f"{variable}: start_index is {stated}; it must be 0 or 1: correct it and export again.")
     return start
 
 

@@ -79,7 +79,7 @@ def read_system(text: str, where: str) -> pyproj.CRS:
     """A coordinate system from WKT or an authority code; ``ValueError`` when it cannot be read."""
     try:
         return pyproj.CRS.from_user_input(text)
-    except CRSError:
+    except (CRSError, UnicodeError):
         raise ValueError(f"{where}: the coordinate system cannot be read ({text[:60]!r}); correct it.") from None
 
 
@@ -141,7 +141,10 @@ def _plain(attributes: dict[str, Any]) -> dict[str, Any]:
 
 
 def _factor(units: list[str], x: Stored, system: pyproj.CRS | None) -> float:
-    stated = {factor_to_si(u, "x") for u in units if u}
+    try:
+        stated = {factor_to_si(u, "x") for u in units if u}
+    except ValueError as error:
+        raise ValueError(f"{x} or y: {error}; correct the attribute or say mapping.x.unit and mapping.y.unit.") from None
     if len(stated) > 1:
         raise ValueError(f"{x} and y are in different units ({units[0]} and {units[1]}); export both in metres.")
     of_system = system_factor(system) if system is not None and system.is_projected else None

@@ -158,31 +158,49 @@ def check_velocity(file: str, name: str, index: int, velocity: Sequence[np.ndarr
         )
 
 
-def check_frame(file: str, mesh: Mesh, raw: RawFrame, wet_m: float) -> list[Note]:
-    """Values that a river can have; notes on what is missing in places.
-
-    Raises ``ValueError`` for depths and speeds beyond bounds, naming the first place.
-    """
-    location = "node" if raw.stored_on == "node" else "face"
-    depth = raw.depth
+def check_depth(file: str, mesh: Mesh, location: str, index: int, depth: np.ndarray) -> None:
+    """Depths that a river can have; ``ValueError`` names the first place of a frame that is beyond."""
+    if not depth.max(initial=0.0) > DEEPEST_M:
+        return
     deep = np.flatnonzero(depth > DEEPEST_M)
-    if deep.size:
+    raise ValueError(
+        f"{file}: the water is {depth[deep[0]]:.4g} m deep at {place(mesh, location, deep[0])} (and over {DEEPEST_M:g} m at "
+        f"{deep.size - 1} more) in frame {index}; check the unit and fill value of depth or level, and the bed."
+    )
+
+
+def check_flow(file: str, mesh: Mesh, location: str, index: int, flow: np.ndarray, depth: np.ndarray, wet_m: float) -> None:
+    """Unit discharge (k, 2) that a river can have; ``ValueError`` names the first place of a frame that is beyond.
+
+    In water no deeper than ``wet_m`` a speed means little: there the bound is on what it carries.
+    """
+    bound = FASTEST_M_S * np.where(depth > wet_m, depth, 1.0)
+    fast = np.flatnonzero((np.abs(flow) > bound[:, None]).any(axis=1))
+    if not fast.size:
+        return
+    i = fast[0]
+    raise ValueError(
+        f"{file}: the water moves at {np.abs(flow[i]).max() / depth[i]:.4g} m/s at {place(mesh, location, i)} (and over "
+        f"{FASTEST_M_S:g} m/s at {fast.size - 1} more) in frame {index}; check the unit and fill value of velocity."
+    )
+
+
+def check_edge_flow(file: str, name: str, mesh: Mesh, index: int, discharge: np.ndarray) -> None:
+    """Edge discharges (e,) m3/s that a river can have; ``ValueError`` names the first edge that is beyond."""
+    beyond = np.flatnonzero(np.abs(discharge) > FASTEST_M_S * DEEPEST_M * mesh.edge_length)
+    if beyond.size:
         raise ValueError(
-            f"{file}: the water is {depth[deep[0]]:.4g} m deep at {place(mesh, location, deep[0])} (and over "
-            f"{DEEPEST_M:g} m at "
-            f"{deep.size - 1} more); check the unit and fill value of depth or level, and the bed."
+            f"{file}: {name} is {discharge[beyond[0]]:.4g} m3/s at edge {mesh.file_edge[beyond[0]]} (and beyond bounds at "
+            f"{beyond.size - 1} more) in frame {index}; check its unit and fill value."
         )
+
+
+def check_frame(mesh: Mesh, raw: RawFrame, wet_m: float) -> list[Note]:
+    """What is unusual but sound in a first frame, as notes."""
     if raw.unit_discharge is None:
         return []
-    wet = depth > wet_m
-    speed = np.full(len(depth), 0.0)
-    speed[wet] = np.hypot(*raw.unit_discharge[wet].T) / depth[wet]
-    fast = np.flatnonzero(speed > FASTEST_M_S)
-    if fast.size:
-        raise ValueError(
-            f"{file}: the water moves at {speed[fast[0]]:.4g} m/s at {place(mesh, location, fast[0])} (and over "
-            f"{FASTEST_M_S:g} m/s at {fast.size - 1} more); check the unit and fill value of velocity."
-        )
+    location = "node" if raw.stored_on == "node" else "face"
+    wet = raw.depth > wet_m
     notes = []
     if not wet.any():
         notes.append(Note(f"no water deeper than {wet_m:g} m in the first frame", ""))

@@ -6,6 +6,7 @@ several with a ``time`` column, each place once a time.
 
 from __future__ import annotations
 
+import warnings
 from pathlib import Path
 
 import geopandas
@@ -36,6 +37,8 @@ def open_features(path: Path, asked: Asked, *, layer: str | None = None) -> Run:
     table = _layer(path, layer)
     where = f"{path.name}, layer {table.attrs['layer']}"
     system = read_system(said.plain["crs"], "mapping.crs") if "crs" in said.plain else table.crs
+    if system is None and table.attrs["unread"]:
+        raise ValueError(f"{where}: its coordinate system cannot be read ({table.attrs['unread']}); correct it or give mapping.crs.")
     factor = 1.0 if system is None else system_factor(system)
     place_of = ground(system, factor, said.plain.get("datum", ""), "geometry", where)
     axis, frame, notes = time_axis(where, table.drop(columns=[table.geometry.name]), said, asked.kind)
@@ -62,16 +65,18 @@ def open_features(path: Path, asked: Asked, *, layer: str | None = None) -> Run:
 def _layer(path: Path, layer: str | None) -> geopandas.GeoDataFrame:
     """The layer named, or the only one."""
     try:
-        names = [str(n) for n, geometry in pyogrio.list_layers(path) if geometry is not None]
-        if layer is None and len(names) != 1:
-            several = f"several layers: {', '.join(names)}; pick one with mesh"
-            what = several if names else "no layer with geometry; export one"
-            raise ValueError(f"{path.name} holds {what}.")
-        if layer is not None and layer not in names:
-            raise ValueError(f"{path.name} has no layer {layer!r}; it has {', '.join(names)}.")
-        chosen = layer or names[0]
-        table = geopandas.read_file(path, layer=chosen, engine="pyogrio")
-    except (DataSourceError, DataLayerError) as error:
+        with warnings.catch_warnings(record=True) as heard:
+            warnings.simplefilter("always", RuntimeWarning)
+            names = [str(n) for n, geometry in pyogrio.list_layers(path) if geometry is not None]
+            if layer is None and len(names) != 1:
+                several = f"several layers: {', '.join(names)}; pick one with mesh"
+                what = several if names else "no layer with geometry; export one"
+                raise ValueError(f"{path.name} holds {what}.")
+            if layer is not None and layer not in names:
+                raise ValueError(f"{path.name} has no layer {layer!r}; it has {', '.join(names)}.")
+            chosen = layer or names[0]
+            table = geopandas.read_file(path, layer=chosen, engine="pyogrio")
+    except (DataSourceError, DataLayerError, shapely.errors.GEOSException) as error:
         first = str(error).splitlines()[0].rstrip(".")
         raise ValueError(f"{path.name} cannot be read as a GeoPackage ({first}); export it again.") from None
     missing = np.flatnonzero(table.geometry.isna() | table.geometry.is_empty)
@@ -79,6 +84,7 @@ def _layer(path: Path, layer: str | None) -> geopandas.GeoDataFrame:
         what = f"feature {missing[0] + 1} has no geometry" if missing.size else "it has no features"
         raise ValueError(f"{path.name}, layer {chosen}: {what}; export it again.")
     table.attrs["layer"] = chosen
+    table.attrs["unread"] = next((str(w.message)[:60] for w in heard if "srs" in str(w.message).lower()), "")
     return table
 
 

@@ -90,7 +90,7 @@ def read_grid(store: Store) -> Grid:
         raise ValueError(f"{x} and {y.name} do not make a grid ({x.shape} and {y.shape}); export them again.")
     if min(xs.shape) < 2:
         raise ValueError(f"{x}: the grid has {xs.shape[0]} by {xs.shape[1]} places; a 2D model needs at least 2 by 2.")
-    return Grid(x, y, dimensions, xs, ys)
+    return Grid(x, y, dimensions, *(np.where(np.isfinite(v), v, np.nan) for v in (xs, ys)))
 
 
 def _coordinate(store: Store, axis: str) -> Stored | None:

@@ -115,6 +115,12 @@ def read_places(choice: Choice, dimension: str | None, index: int, listed: np.nd
         kept.remove(dimension)
     else:
         raw = variable.raw()
+    places_held = placed.size if placed.subset is None else len(placed.subset)
+    if len(kept) != raw.ndim or raw.size != places_held:
+        raise ValueError(
+            f"{variable} holds {' by '.join(map(str, raw.shape)) or 'one'} values for {places_held} {placed.location}s; the file "
+            "contradicts itself: export it again."
+        )
     sizes = dict(zip(kept, raw.shape, strict=True))
     places = [d for d in kept if d in placed.dimensions]
     raw = raw.reshape([sizes[d] for d in places])

@@ -11,6 +11,7 @@ from __future__ import annotations
 
 import re
 import threading
+import warnings
 from dataclasses import dataclass
 from pathlib import Path
 
@@ -18,7 +19,7 @@ import numpy as np
 import pandas as pd
 import pyproj
 import rasterio
-from rasterio.errors import RasterioError
+from rasterio.errors import NotGeoreferencedWarning, RasterioError
 
 from ..mesh import build_mesh
 from ..run import Note, Run, TimeAxis
@@ -93,11 +94,21 @@ class _Header:
 
 def _header(path: Path) -> _Header:
     try:
-        with rasterio.open(path) as source:
-            return _Header(path, source.shape, source.transform, source.crs.to_wkt() if source.crs else None)
+        with warnings.catch_warnings():
+            warnings.simplefilter("error", NotGeoreferencedWarning)
+            with rasterio.open(path) as source:
+                return _Header(path, source.shape, source.transform, source.crs.to_wkt() if source.crs else None)
+    except NotGeoreferencedWarning:
+        raise ValueError(
+            f"{path.name} has no georeference, so its cells have neither size nor place; export it with its transform."
+        ) from None
     except RasterioError as error:
-        first = str(error).splitlines()[0].rstrip(".")
-        raise ValueError(f"{path.name} cannot be read as a raster ({first}); export it again.") from None
+        raise ValueError(f"{path.name} cannot be read as a raster ({_first(error)}); export it again.") from None
+
+
+def _first(error: Exception) -> str:
+    """What a library says of a fault, its first line."""
+    return (str(error).splitlines() or [type(error).__name__])[0].rstrip(".")
 
 
 def _same_grid(first: _Header, other: _Header) -> None:
@@ -234,8 +245,7 @@ def _values(path: Path) -> np.ndarray:
             band = source.read(1, masked=True).astype(np.float64)
             scale, offset = source.scales[0], source.offsets[0]
     except RasterioError as error:
-        first = str(error).splitlines()[0].rstrip(".")
-        raise ValueError(f"{path.name} cannot be read ({first}); copy or export it again.") from None
+        raise ValueError(f"{path.name} cannot be read ({_first(error)}); copy or export it again.") from None
     return (band.filled(np.nan) * scale + offset).ravel()
 
 

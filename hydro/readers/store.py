@@ -151,7 +151,7 @@ class Stored:
     def _missing(self, raw: np.ndarray) -> np.ndarray | None:
         masks = []
         for name in ("_FillValue", "missing_value"):
-            for value in np.atleast_1d(self.attributes.get(name, [])):
+            for value in self.numbers(name):
                 if not _is_nan(value):
                     masks.append(raw == as_stored(value, raw.dtype))
         low, high = self._valid()
@@ -161,10 +161,18 @@ class Stored:
         return missing if missing is not None and missing.any() else None
 
     def _valid(self) -> tuple[Any, Any]:
-        both = self.attributes.get("valid_range")
-        if both is not None and np.size(both) == 2:
+        both = self.numbers("valid_range")
+        if len(both) == 2:
             return both[0], both[1]
-        return self.attributes.get("valid_min"), self.attributes.get("valid_max")
+        low, high = (self.numbers(name) for name in ("valid_min", "valid_max"))
+        return (low[0] if len(low) else None), (high[0] if len(high) else None)
+
+    def numbers(self, attribute: str) -> np.ndarray:
+        """An attribute's numbers, as stored; none where it is missing. ``ValueError`` when it holds something else."""
+        values = np.atleast_1d(self.attributes.get(attribute, [])).ravel()
+        if len(values) and values.dtype.kind not in "iufb":
+            raise ValueError(f"{self}: {attribute} is {self.attributes[attribute]!r}, which is no number; mend the attribute.")
+        return values
 
     def _number(self, attribute: str, default: float) -> float:
         value = self.attributes.get(attribute, default)
@@ -199,7 +207,7 @@ def open_store(path: Path) -> Store:
         warnings.simplefilter("ignore")
         try:
             return _open_hdf5(path) if kind == "hdf5" else _open_classic(path)
-        except (OSError, KeyError, RuntimeError, TypeError, IndexError, ValueError, AttributeError) as error:
+        except (OSError, KeyError, RuntimeError, TypeError, IndexError, ValueError, AttributeError, SyntaxError) as error:
             reason = _first_line(error)
         gc.collect()
     raise ValueError(f"{path.name} is cut short or damaged ({reason}); copy or export the file again.")
@@ -230,12 +238,14 @@ def sniff(path: Path) -> str:
 
 
 def _open_hdf5(path: Path) -> Store:
-    with h5netcdf.File(path, "r", phony_dims="sort") as file:
-        header = [
-            (name, tuple(v.dimensions), tuple(v.shape), v.dtype, _attributes(v.attrs), v.chunks)
-            for name, v in file.variables.items()
-        ]
-        attributes, groups = _attributes(file.attrs), tuple(file.groups)
+    with h5py.File(path, "r") as raw:
+        raw.attrs.get("_nc3_strict")  # a damaged root fails here; h5netcdf would leave itself half open
+        with h5netcdf.File(raw, "r", phony_dims="sort") as file:
+            header = [
+                (name, tuple(v.dimensions), tuple(v.shape), v.dtype, _attributes(v.attrs), v.chunks)
+                for name, v in file.variables.items()
+            ]
+            attributes, groups = _attributes(file.attrs), tuple(file.groups)
     return _store(path, attributes, header, groups, True)
 
 
@@ -267,6 +277,8 @@ def _attributes(given: Mapping[str, Any]) -> dict[str, Any]:
         elif isinstance(value, np.ndarray) and value.size == 1:
             value = value.ravel()[0]
             value = value.decode("utf-8", "replace") if isinstance(value, bytes) else value
+        if isinstance(value, str):  # bytes that are no UTF-8 come as halves of characters, which cannot be printed
+            value = value.encode("utf-8", "surrogateescape").decode("utf-8", "replace")
         out[name] = value
     return out
 

@@ -21,7 +21,7 @@ from ..mesh import Mesh, build_mesh
 from ..run import Note, Run
 from . import faults
 from .assemble import Asked, Parts, make_run
-from .columns import column_of, fields_of, split_heading, time_axis, values_of
+from .columns import Column, column_of, fields_of, split_heading, time_axis, values_of
 from .crs import Ground, ground, read_system, system_factor
 from .lattice import LONGEST_SIDE, lattice_of, triangles_of
 from .mapping import Said
@@ -151,6 +151,18 @@ def _node_columns(table: pd.DataFrame, said: Said) -> list[str]:
     return sorted(found, key=lambda h: int(h.split("_")[1]))
 
 
+def _numbered(file: str, nodes: pd.DataFrame, heading: str) -> dict[int, int]:
+    """The row of each node number; ``ValueError`` for a row without one, or a number that stands twice."""
+    values = values_of(file, nodes, Column(heading, 1.0))
+    wrong = np.flatnonzero(~np.isfinite(values) | (values != np.round(values)))
+    if wrong.size:
+        raise ValueError(f"{file}: row {wrong[0] + 1} has no whole number in column {heading!r}; number every node.")
+    found, count = np.unique(values, return_counts=True)
+    if (count > 1).any():
+        raise ValueError(f"{file}: node {int(found[count > 1][0])} stands twice in column {heading!r}; keep one row of it.")
+    return {int(n): i for i, n in enumerate(values)}
+
+
 def _mesh_of_faces(file, table, nodes, node_file, said, origin) -> tuple[Mesh, np.ndarray]:
     """The mesh of a face table and a node table, and the face of each row."""
     heading = said.variable("node") or next((h for h in nodes.columns if split_heading(h)[0] == "node"), None)
@@ -161,8 +173,8 @@ def _mesh_of_faces(file, table, nodes, node_file, said, origin) -> tuple[Mesh, n
     xy = np.column_stack([
         values_of(node_file, nodes, column_of(node_file, nodes, axis, said)) for axis in "xy"
     ])
-    number = {int(n): i for i, n in enumerate(nodes[heading])}
-    listed = table[_node_columns(table, said)].apply(pd.to_numeric, errors="coerce").to_numpy(float)
+    number = _numbered(node_file, nodes, heading)
+    listed = np.column_stack([values_of(file, table, Column(h, 1.0)) for h in _node_columns(table, said)])
     rows, first, place = np.unique(np.nan_to_num(listed, nan=-1.0), axis=0, return_index=True, return_inverse=True)
     faces = np.full(rows.shape, -1, np.int32)
     for i, row in enumerate(rows):

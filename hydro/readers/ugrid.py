@@ -11,7 +11,7 @@ from dataclasses import dataclass
 import numpy as np
 
 from ..run import Note
-from .connectivity import MOST_CORNERS, read_table
+from .connectivity import MOST_CORNERS, read_table, stated_start
 from .names import Placed
 from .store import Store, Stored
 
@@ -267,7 +267,7 @@ def _on_index_set(topology: Topology, variable: Stored, notes: list[Note]) -> Pl
 
 def read_index_set(index: Stored, size: int) -> np.ndarray:
     """The numbers, from 0, in a location index set (U4, U11); ``ValueError`` when out of range."""
-    numbers = index.raw().astype(np.int64) - int(float(index.attributes.get("start_index", 0)))
+    numbers = index.raw().astype(np.int64) - stated_start(index)
     wrong = np.flatnonzero((numbers < 0) | (numbers >= size))
     if wrong.size:
         raise ValueError(

@@ -116,10 +116,11 @@ def _boundary_sets(topology: Topology, placed: list[Placed], mesh: Mesh, notes: 
 def _flagged(variable: Stored, flags: np.ndarray) -> list[tuple[str, np.ndarray]]:
     """Meanings of a flag variable with the edges that carry each; masks take part bit by bit."""
     meanings = variable.text("flag_meanings").split()
-    values = np.atleast_1d(variable.attributes.get("flag_values", []))
-    masks = np.atleast_1d(variable.attributes.get("flag_masks", []))
+    values, masks = variable.numbers("flag_values"), variable.numbers("flag_masks")
     if len(values) not in (0, len(meanings)) or len(masks) not in (0, len(meanings)) or not (len(values) or len(masks)):
         raise ValueError(f"{variable} has {len(meanings)} flag_meanings for {len(values)} flag_values; correct them.")
+    if len(masks) and (flags.dtype.kind not in "iu" or masks.dtype.kind not in "iu"):
+        raise ValueError(f"{variable} has flag_masks that are no whole numbers; correct them.")
     out = []
     for i, meaning in enumerate(meanings):
         part = flags & masks[i] if len(masks) else flags
