@@ -63,3 +63,19 @@ def stray_nodes(xy, triangles, grid, start, items):
             if apart and lowest > -1e-9:
                 return (1 if lowest < 1e-9 else 2), i, t
     return 0, -1, -1
+
+
+@njit(cache=True, nogil=True)
+def too_fast(flow, depth, wet, fastest):
+    """First place and number of places whose unit discharge, by component, is beyond ``fastest`` times depth.
+
+    In water no deeper than ``wet`` the bound is ``fastest`` itself; NaN is no flow. (-1, 0) where all is within.
+    """
+    first, count = -1, 0
+    for i in range(depth.size):
+        bound = fastest * (depth[i] if depth[i] > wet else 1.0)
+        if abs(flow[i, 0]) > bound or abs(flow[i, 1]) > bound:
+            if first < 0:
+                first = i
+            count += 1
+    return first, count

@@ -21,6 +21,7 @@ from hypothesis import HealthCheck, given, settings
 from hypothesis import strategies as st
 
 from dashboard.cli import main
+from hydro._kernels import meshcheck
 from hydro.readers import open_run
 from tests import reader_drafts as drafts
 from tests.hydro.readers import test_doors as doors
@@ -182,6 +183,15 @@ def test_a_damaged_root_of_an_hdf5_file_leaves_no_noise(tmp_path, capsys):
     data[at : at + 64] = bytes(64)
     path.write_bytes(data)
     assert "cut short or damaged" in told(path, capsys)
+
+
+@given(st.lists(st.tuples(st.floats(-1e3, 1e3), st.floats(-1e3, 1e3), st.floats(0, 5)), min_size=1, max_size=30))
+def test_the_search_for_absurd_speeds_is_its_numpy_twin(rows):
+    """Second method: the same bound with whole arrays."""
+    u, v, depth = np.array(rows).T
+    flow, wet, fastest = np.column_stack([u, v]), 0.05, 50.0
+    beyond = np.flatnonzero((np.abs(flow) > fastest * np.where(depth > wet, depth, 1.0)[:, None]).any(axis=1))
+    assert meshcheck.too_fast(flow, depth, wet, fastest) == (beyond[0] if beyond.size else -1, beyond.size)
 
 
 def test_rasters_without_a_place_are_refused(tmp_path, capsys):
