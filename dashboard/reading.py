@@ -16,6 +16,7 @@ from shapely.geometry.base import BaseGeometry
 
 from hydro.contours import psi_lines, tube_levels
 from hydro.eddies import Zone
+from hydro.eddies.travelling import Traveller
 from hydro.frame import Frame
 from hydro.ledger import (
     FrameLedger,
@@ -24,6 +25,7 @@ from hydro.ledger import (
     Instants,
     Life,
     follow,
+    follow_travelling,
     instants_of,
     lumped_area,
     twin_of,
@@ -78,6 +80,7 @@ class Beat:
     seconds: float
     discharge_m3_s: float
     zones: tuple[Zone, ...]
+    travelling: tuple[Traveller, ...] = ()
 
 
 @dataclass(frozen=True, eq=False)
@@ -86,6 +89,7 @@ class Followed:
 
     lives: tuple[Life, ...]
     zones: dict[int, tuple[Zone, ...]]
+    travelling: dict[int, tuple[Traveller, ...]]
 
 
 @dataclass(frozen=True, eq=False)
@@ -167,6 +171,7 @@ class Reading:
         followed = self.results.peek(("followed", run_id))
         if followed is not None and index in followed.zones:
             zones = followed.zones[index]
+            entry = replace(entry, zones=replace(entry.zones, travelling=followed.travelling[index]))
         else:
             zones = tuple(replace(z, id=str(k + 1)) for k, z in enumerate(entry.zones.zones))
         return replace(entry, zones=replace(entry.zones, zones=zones))
@@ -303,7 +308,7 @@ class Reading:
 
     def _beat(self, run_id: str, index: int) -> Beat:
         entry = self.entry(run_id, index, rank=AHEAD)
-        return Beat(entry.frame.seconds, entry.sf.through_discharge_m3_s, entry.zones.zones)
+        return Beat(entry.frame.seconds, entry.sf.through_discharge_m3_s, entry.zones.zones, entry.zones.travelling)
 
     def _follow(self, run_id: str) -> Followed:
         run = self.run(run_id)
@@ -312,7 +317,8 @@ class Reading:
         lives, zones = follow(
             [beats[i].zones for i in known], run.times.seconds[known], lumped_area(run.mesh), run.settings, known,
         )
-        return Followed(tuple(lives), dict(zip(known, zones)))
+        moved = follow_travelling([beats[i].travelling for i in known], run.times.seconds[known])
+        return Followed(tuple(lives), dict(zip(known, zones)), dict(zip(known, moved)))
 
     def _has_psi(self, run_id: str, moment: Moment) -> bool:
         return isinstance(moment, tuple) or self.run(run_id).times.kinds[moment] != "maximum"

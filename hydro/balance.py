@@ -6,7 +6,7 @@ from collections.abc import Sequence
 from dataclasses import dataclass
 
 import numpy as np
-from scipy.sparse import coo_array, csr_array
+from scipy.sparse import coo_array
 
 from .frame import Frame
 from .mesh import Mesh
@@ -130,7 +130,7 @@ def compact_sources(
         for at, q in _link_ends(mesh, link):
             near = inside & (np.hypot(*(mesh.node_xy - at).T) < _RINGS * _edge(mesh))
             source[near] -= q * near[near] / max(near.sum(), 1)
-    ring = _adjacency(mesh) @ source
+    ring = mesh.node_graph @ source
     scatter = 1.4826 * float(np.median(np.abs(ring[inside]))) if inside.any() else 0.0
     least = max(least_share * sf.through_discharge_m3_s, _STANDS_OUT * scatter, 1e-12)
     found: list[CompactSource] = []
@@ -181,15 +181,3 @@ def _link_ends(mesh: Mesh, link) -> Sequence[tuple[np.ndarray, float]]:
 
 def _edge(mesh: Mesh) -> float:
     return float(np.median(mesh.edge_length))
-
-
-def _adjacency(mesh: Mesh) -> csr_array:
-    """Ones (n, n) between a node, itself and its neighbours; kept with the mesh."""
-    kept = mesh.__dict__.get("_adjacency")
-    if kept is None:
-        i, j = mesh.edge_nodes.T
-        own = np.arange(mesh.n_nodes)
-        ones = np.ones(2 * len(i) + mesh.n_nodes)
-        kept = coo_array((ones, (np.concatenate([i, j, own]), np.concatenate([j, i, own]))), shape=(mesh.n_nodes,) * 2).tocsr()
-        mesh.__dict__["_adjacency"] = kept
-    return kept

@@ -11,6 +11,7 @@ from dataclasses import dataclass
 from functools import cached_property
 
 import numpy as np
+from scipy.sparse import coo_array, csr_array
 
 from ._kernels import curve, locate, topology
 
@@ -143,6 +144,14 @@ class Mesh:
     def to_world(self, xy: np.ndarray) -> np.ndarray:
         """Local coordinates (..., 2) to world ones, m."""
         return np.asarray(xy, float) + self.origin
+
+    @cached_property
+    def node_graph(self) -> csr_array:
+        """Ones (n, n) between each node, itself and the nodes that an edge joins it to."""
+        i, j = self.edge_nodes.T
+        own = np.arange(self.n_nodes)
+        rows, columns = np.concatenate([i, j, own]), np.concatenate([j, i, own])
+        return coo_array((np.ones(len(rows)), (rows, columns)), shape=(self.n_nodes, self.n_nodes)).tocsr()
 
     def triangle_to_face(self, values: np.ndarray) -> np.ndarray:
         """Area-weighted mean (f, ...) of values (m, ...) on triangles."""

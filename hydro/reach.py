@@ -11,6 +11,8 @@ import numpy as np
 import shapely
 from shapely.geometry.base import BaseGeometry
 
+from ._kernels import polyline
+
 REPRESENTED_AS = (
     "hole", "dry", "raised bed", "resistance", "crest edge", "slit", "link", "absent", "unknown",
 )
@@ -40,23 +42,9 @@ class CentreLine:
         The nearest point of the line decides; beyond its ends the end segments go on, so chainage
         may be negative or above the length.
         """
-        xy = np.atleast_2d(np.asarray(xy, float))
-        a, d = self.points[:-1], np.diff(self.points, axis=0)
-        length = np.hypot(*d.T)
-        best = np.full(len(xy), np.inf)
+        xy = np.ascontiguousarray(np.atleast_2d(np.asarray(xy, float)))
         s, n = np.zeros(len(xy)), np.zeros(len(xy))
-        for i in range(len(a)):
-            rel = xy - a[i]
-            along = rel @ d[i] / length[i]
-            low = -np.inf if i == 0 else 0.0
-            high = np.inf if i == len(a) - 1 else length[i]
-            foot = np.clip(along, low, high)
-            across = (d[i, 0] * rel[:, 1] - d[i, 1] * rel[:, 0]) / length[i]
-            distance = np.hypot(across, along - foot)
-            nearer = distance < best - 1e-12
-            best[nearer] = distance[nearer]
-            s[nearer] = (self.chainages[i] + foot)[nearer]
-            n[nearer] = (np.where(across < 0, -1.0, 1.0) * distance)[nearer]
+        polyline.locate(xy, np.ascontiguousarray(self.points, dtype=np.float64), self.chainages, s, n)
         return s, n
 
     def at(self, chainage: np.ndarray, offset: np.ndarray | float = 0.0) -> np.ndarray:

@@ -13,6 +13,8 @@ from .frame import Frame, RawFrame, make_frame, mean_frame
 from .mesh import Mesh
 from .settings import Settings
 
+_HELD = 3  # frames kept in memory: one and its neighbours
+
 
 @dataclass(frozen=True, slots=True)
 class TimeAxis:
@@ -105,6 +107,7 @@ class Run:
     depth_is: str = "mean"
     statements: dict[str, str] = field(default_factory=dict)
     series: dict[str, np.ndarray] = field(default_factory=dict)
+    _recent: dict[str, tuple[Frame, ...]] = field(init=False, default_factory=dict, repr=False)
     stored_level: StoredLevel | None = None
 
     @property
@@ -127,6 +130,14 @@ class Run:
         if not -n <= index < n:
             raise ValueError(f"there is no frame {index}; {self.name} has {n}, numbered 0 to {n - 1}.")
         i = index % n
+        # Neighbours are asked for again and again: for storage, for what moves. One tuple in place of another, so that
+        # two threads never see it half changed.
+        held = self._recent.get("frames", ())
+        frame = next((f for f in held if f.index == i), None) or self._made(i)
+        self._recent["frames"] = (*(f for f in held if f.index != i), frame)[-_HELD:]
+        return frame
+
+    def _made(self, i: int) -> Frame:
         t = self.times
         interval = float(t.intervals_s[i])
         return make_frame(

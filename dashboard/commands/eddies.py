@@ -46,7 +46,7 @@ def run(args: argparse.Namespace) -> int:
 
 
 def _all(args: argparse.Namespace, run, reach) -> int:
-    from hydro.ledger import follow, lumped_area
+    from hydro.ledger import follow, follow_travelling, lumped_area
 
     done, stopped = _read(args, run, reach, range(run.n_frames), sensitivity=True)
     if not done:
@@ -57,7 +57,8 @@ def _all(args: argparse.Namespace, run, reach) -> int:
         [s.zones for s in done], np.array([s.seconds for s in done]), lumped_area(run.mesh), run.settings,
         [s.index for s in done],
     )
-    done = [s.with_zones(z) for s, z in zip(done, zones, strict=True)]
+    moved = follow_travelling([s.travelling for s in done], np.array([s.seconds for s in done]))
+    done = [s.with_zones(z).with_travelling(t) for s, z, t in zip(done, zones, moved, strict=True)]
     _write(args, run, done, lives=lives, stopped_after=len(done) if stopped else None)
     _life_table(lives, done, args)
     if stopped:
@@ -135,6 +136,13 @@ def _frame_table(run, entry, args: argparse.Namespace) -> None:
     for note in entry.zones.notes:
         print(f"  {note}", file=out)
     _zone_rows(entry.zones.zones, out)
+    for t in entry.zones.travelling:
+        x, y = frame.mesh.to_world(t.core.centre)
+        size = "core only" if t.core_only else f"{printed(t.area_m2)} m2, circulates {printed(t.recirculating_discharge_m3_s)} m3/s"
+        print(
+            f"{t.id:4} travelling, seen moving with it     {t.core.rotation:13} {x:.1f} E, {y:.1f} N at {printed(float(abs(complex(*t.speed))))} m/s "
+            f"({t.speed_from}); {size}; misfit of that view {100 * t.misfit:.0f} %", file=out,
+        )
     hidden, cut = entry.zones.small, entry.zones.open_to_boundary
     print(f"under the floor: {len(hidden)}; open to the boundary: {len(cut)}", file=out)
     for s in (*hidden, *cut) if args.small else ():

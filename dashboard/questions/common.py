@@ -10,6 +10,7 @@ import numpy as np
 import shapely
 
 from hydro.eddies import Zone
+from hydro.eddies.travelling import Traveller
 from hydro.ledger import FrameLedger
 from hydro.reach import CentreLine, Structure
 from hydro.section import Section, SectionFigures, cut, section_figures
@@ -20,6 +21,7 @@ from .. import text
 from ..choices import SHADES, TUBES
 from ..reading import Ends, Story
 from ..results import Working
+from ..units import Units
 from ..views import marks, ribbon, section
 from ..views.scene import Name, Scene, StructureMark, Water, ZoneMark
 from .base import Desk, footnote
@@ -62,6 +64,13 @@ def zone_mark(zone: Zone, subject: bool) -> ZoneMark:
         zone.id, zone.contour, tuple(zone.streamlines[1::2][:2]), zone.rotation, np.asarray(zone.centre), subject,
         UNDER_RESOLVED in zone.flags, zone.kind == "travelling", zone.separation, zone.reattachment,
     )
+
+
+def traveller_mark(eddy: Traveller, units: Units) -> ZoneMark:
+    """How a travelling eddy stands on the map: its outline in the view that moves with it, else its core."""
+    speed = units.quantity(float(np.hypot(*eddy.speed)), "m/s", digits=2)
+    outline = eddy.contour if eddy.contour is not None else shapely.Point(eddy.core.centre).buffer(eddy.core.radius_m)
+    return ZoneMark(f"{eddy.id}, {speed}", outline, (), eddy.core.rotation, eddy.core.centre, travelling=True)
 
 
 def water_words(desk: Desk, scene: Scene) -> str:

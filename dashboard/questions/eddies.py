@@ -10,6 +10,7 @@ from shapely import get_coordinates, get_parts
 from hydro.cautions import OWED
 from hydro.eddies import Zone
 from hydro.eddies.sensitivity import range_outlines
+from hydro.eddies.travelling import Traveller
 from hydro.ledger import FrameLedger, ledger_json
 from hydro.ledger.export import rows_of
 
@@ -87,8 +88,10 @@ class Eddies(Question):
         if not scene.shore:
             return scene
         chosen = self.subject_id(desk)
-        zones = tuple(common.zone_mark(z, z.id == chosen) for z in self.ledger(desk).zones.zones)
-        return replace(scene, zones=zones, lines=(*scene.lines, *self.lines(desk)), section=self.section_ends(desk))
+        found = self.ledger(desk).zones
+        zones = tuple(common.zone_mark(z, z.id == chosen) for z in found.zones)
+        zones += tuple(common.traveller_mark(t, desk.units) for t in found.travelling)
+        return replace(scene, zones=zones, lines=(*scene.lines, *self.lines(desk), *self.paths(desk)), section=self.section_ends(desk))
 
     def lines(self, desk: Desk) -> tuple[LineMark, ...]:
         """The subject's outline at both ends of its range, and in each moment of a mean."""
@@ -101,6 +104,18 @@ class Eddies(Question):
         for outline in instances.outlines.get(zone.id, ()) if instances else ():
             marks_ += [LineMark("path", get_coordinates(part.exterior)) for part in get_parts(outline)]
         return tuple(marks_)
+
+    def paths(self, desk: Desk) -> list[LineMark]:
+        """Where the travelling eddies of this frame have come from."""
+        followed = desk.reading.known(("followed", desk.run_id))
+        if followed is None or isinstance(desk.moment, tuple):
+            return []
+        out = []
+        for eddy in self.ledger(desk).zones.travelling:
+            way = [t.core.centre for i in sorted(followed.travelling) if i <= desk.index for t in followed.travelling[i] if t.id == eddy.id]
+            if len(way) > 1:
+                out.append(LineMark("dotted", np.array(way)))
+        return out
 
     def view(self, desk: Desk):
         zone = self.subject(desk)
@@ -124,10 +139,15 @@ class Eddies(Question):
         ledger = self.ledger(desk)
         u = desk.units
         through = u.quantity(ledger.sf.through_discharge_m3_s, "m3/s")
+        moving = "; ".join(
+            f"{t.id} travelling at {u.quantity(float(np.hypot(*t.speed)), 'm/s', digits=2)}, {t.core.rotation}" for t in ledger.zones.travelling
+        )
         eddies = "; ".join(
             f"{text.safe(z.id)} {_where(z, u)}, {z.rotation}, {u.quantity(z.area_m2, 'm2')}" for z in ledger.zones.zones
         )
-        return f"Map of the reach with {through} flowing through, in tubes of equal discharge. Eddies: {eddies or 'none'}."
+        return f"Map of the reach with {through} flowing through, in tubes of equal discharge. Eddies: {eddies or 'none'}." + (
+            f" Seen by one who moves with them: {moving}." if moving else ""
+        )
 
     def ribbon(self, desk: Desk) -> str:
         return strip.draw(self.course(desk), common.ribbon_box(desk), desk.units)
@@ -173,6 +193,7 @@ class Eddies(Question):
             zones = zones[: 3 if desk.look.hall else 6]
         lines = [_line(z, z.id == chosen, desk, ids) for z in zones]
         few = desk.look.hall or desk.sizes.narrow
+        lines += [] if few else [_moving_line(t, desk) for t in ledger.zones.travelling]
         columns = (
             table.Column("Eddy", figure=False), table.Column("Where", figure=False),
             table.Column("Area,", f"{u.label('m2')}{footnote(ids, 'sensitivity')}"),
@@ -310,3 +331,13 @@ def _line(zone: Zone, subject: bool, desk: Desk, ids: tuple[str, ...]) -> table.
     )
 
 
+def _moving_line(eddy: Traveller, desk: Desk) -> table.Line:
+    """A travelling eddy, apart from those that stand: its area and flow are those that an observer who moves with it sees."""
+    u = desk.units
+    speed = u.quantity(float(np.hypot(*eddy.speed)), "m/s", digits=2)
+    how = "" if eddy.speed_from == "matched cores" else "speed assumed"
+    area = "core only" if eddy.area_m2 is None else u.number(eddy.area_m2, "m2", digits=2)
+    flow = "" if eddy.recirculating_discharge_m3_s is None else u.number(eddy.recirculating_discharge_m3_s, "m3/s", digits=2)
+    return table.Line((
+        (f"{marks.turning(eddy.core.rotation)} {text.safe(eddy.id)}", ""), (f"travels at {speed}", how), (area, "seen moving with it"), (flow, ""), ("", ""),
+    ))

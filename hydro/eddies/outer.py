@@ -69,8 +69,8 @@ def band_of(sf: StreamFunction, polygon: shapely.Geometry, width: float) -> np.n
     )
     index = np.flatnonzero(near)
     shapely.prepare(polygon)
-    distance = shapely.distance(polygon, shapely.points(centre[index]))
-    near[index] = (distance > 0) & (distance <= width)
+    points = shapely.points(centre[index])
+    near[index] = shapely.dwithin(polygon, points, width) & ~shapely.intersects(polygon, points)
     return near
 
 

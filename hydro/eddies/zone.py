@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Mapping
 from dataclasses import dataclass, field
+from typing import TYPE_CHECKING
 
 import numpy as np
 import shapely
@@ -11,6 +12,9 @@ import shapely
 from ..figure import Place
 from .regions import Region
 from .wake import Wake
+
+if TYPE_CHECKING:
+    from .travelling import Traveller
 
 KINDS = ("behind structure", "at bank", "side bay", "free", "travelling")
 
@@ -126,13 +130,14 @@ class ZoneSet:
     """The zones of one frame.
 
     ``zones`` are those kept, along the reach; ``small`` are those under the floor; ``open_to_boundary`` those
-    that the model's edge cuts.
+    that the model's edge cuts; ``travelling`` are seen in instants only, each in the view that moves with it.
     """
 
     zones: tuple[Zone, ...]
     small: tuple[SmallRegion, ...] = ()
     open_to_boundary: tuple[SmallRegion, ...] = ()
     notes: tuple[str, ...] = field(default=())
+    travelling: tuple[Traveller, ...] = ()
 
     def zone(self, id_: str) -> Zone:
         """The zone with this id; an unknown one lists the known ones."""

@@ -65,7 +65,7 @@ def read_all(
 
 
 def summary_of(run: Run, entry: FrameLedger) -> FrameSummary:
-    return FrameSummary(entry.frame.index, entry.frame.seconds, frame_json(run, entry), entry.zones.zones)
+    return FrameSummary(entry.frame.index, entry.frame.seconds, frame_json(run, entry), entry.zones.zones, entry.zones.travelling)
 
 
 _readers: dict[tuple, tuple[Run, FrameReader]] = {}

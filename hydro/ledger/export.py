@@ -141,7 +141,14 @@ def _layers(run: Run, frames, settings: Settings, lives: Sequence[Life]) -> dict
     tubes = [t for entry in held for t in _tubes(entry, settings)]
     walls = [w for entry in held for w in _walls(entry)]
     tracks = _tracks(entries, lives)
+    moving = [
+        (t, {"frame": e.index, "seconds": e.seconds, **{k: v for k, v in row.items() if k not in ("centre", "speed_m_s")}})
+        for e in entries for t, row in zip(e.travelling, e.values["travelling"], strict=True)
+    ]
     return {
+        "travelling": table([shapely.Point(t.core.centre) for t, _ in moving], [r for _, r in moving]),
+        "travelling_contours": table([t.contour for t, _ in moving], [r for _, r in moving]),
+        "travelling_tracks": table(*_moving_tracks(entries)),
         "zones": table([z.contour for z in zones], flat),
         "zones_inner": table([z.inner for z in zones], [{k: r[k] for k in ("frame", "id", "name")} for r in flat]),
         "centres": points("centre"),
@@ -151,6 +158,17 @@ def _layers(run: Run, frames, settings: Settings, lives: Sequence[Life]) -> dict
         "stream_tubes": table([g for g, _ in tubes], [r for _, r in tubes]),
         "walls": table([g for g, _ in walls], [r for _, r in walls]),
     }
+
+
+def _moving_tracks(entries: Sequence[FrameSummary]) -> tuple[list, list[dict]]:
+    """The path of each travelling eddy's core that is seen in more than one frame."""
+    paths: dict[str, list] = {}
+    for e in entries:
+        for t in e.travelling:
+            paths.setdefault(t.id, []).append((e.seconds, t.core.centre))
+    kept = {id_: path for id_, path in paths.items() if len(path) > 1}
+    records = [{"id": id_, "first_s": path[0][0], "last_s": path[-1][0]} for id_, path in kept.items()]
+    return [shapely.LineString([at for _, at in path]) for path in kept.values()], records
 
 
 def _tracks(entries: Sequence[FrameSummary], lives: Sequence[Life]) -> list[tuple]:

@@ -8,6 +8,7 @@ from dataclasses import dataclass, field, replace
 import numpy as np
 
 from ..eddies import Zone
+from ..eddies.travelling import Traveller, matched
 from ..settings import Settings
 
 _LEAST_OVERLAP = 0.2  # of the smaller core's area
@@ -205,3 +206,31 @@ def _why_lost(life: _Open, own: Sequence[Zone], times: np.ndarray) -> str:
     if periods and len(steps) and jumps and np.median(steps) > np.median(periods) / _FRAMES_A_PERIOD:
         return "frames too far apart"
     return ""
+
+
+def follow_travelling(
+    eddies: Sequence[Sequence[Traveller]], seconds: np.ndarray,
+) -> list[tuple[Traveller, ...]]:
+    """Travelling eddies of successive frames with lasting ids T1, T2 ...: each is the one that its core became.
+
+    An eddy that is missing in one frame is another one when it comes back: its place meanwhile is a guess.
+    """
+    count, named = 0, []
+    before: list[Traveller] = []
+    for j, here in enumerate(eddies):
+        gap = float(seconds[j] - seconds[j - 1]) if j else 0.0
+        names: dict[int, str] = {}
+        for old in before:
+            core = matched(old.core, [e.core for e in here], gap)
+            place = next((k for k, e in enumerate(here) if e.core is core), None)
+            if place is not None:
+                names.setdefault(place, old.id)
+        own = []
+        for k, eddy in enumerate(here):
+            if k not in names:
+                count += 1
+                names[k] = f"T{count}"
+            own.append(replace(eddy, id=names[k]))
+        named.append(tuple(own))
+        before = own
+    return named

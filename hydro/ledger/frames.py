@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from dataclasses import dataclass, replace
 from weakref import WeakKeyDictionary
 
@@ -10,6 +11,7 @@ import numpy as np
 from ..balance import Balance, Gauges, balance_of
 from ..eddies import Zone, ZoneSet, find_zones
 from ..eddies.sensitivity import Readings
+from ..eddies.travelling import Traveller, swirl_cores, travelling_eddies
 from ..frame import Frame
 from ..reach import Reach
 from ..run import Run
@@ -81,7 +83,20 @@ class FrameReader:
         if frame.kind == "mean" and length:
             found = replace(found, zones=tuple(with_periods(z, length, self.settings) for z in found.zones))
         moment = window is None and frame.kind == "instant" and self.run.n_frames > 1
+        if moment:
+            found = replace(found, travelling=self._travelling(sf, found.zones))
         return FrameLedger(frame, sf, found, window, balance_of(sf, self._gauges_for(frame), rate, moment=moment))
+
+    def _travelling(self, sf: StreamFunction, zones: Sequence[Zone]) -> tuple[Traveller, ...]:
+        """Travelling eddies of a moment, their speed from the frame after it (at the run's end, before it)."""
+        frame, run = sf.frame, self.run
+        cores = swirl_cores(frame, sf.domain, self.settings)
+        beside = frame.index + 1 if frame.index + 1 < run.n_frames else frame.index - 1
+        if not cores or run.times.kinds[beside] != "instant":
+            return travelling_eddies(sf, zones, cores)
+        other = run.frame(beside)
+        later = swirl_cores(other, other.wet_triangles, self.settings)
+        return travelling_eddies(sf, zones, cores, later=later, gap_s=other.seconds - frame.seconds)
 
     def _gauges_for(self, frame: Frame) -> Gauges | None:
         """Automatic sections of the run's mesh, made once; None without a centre line."""

@@ -6,6 +6,8 @@ import html
 from collections.abc import Mapping
 from typing import Any
 
+import numpy as np
+
 from ..figure import Figure, printed
 from ..settings import Settings
 from .report import balance_words
@@ -61,6 +63,27 @@ def _frame(entry: Mapping[str, Any]) -> str:
         f"{printed(entry['through_discharge_m3_s'])} m3/s through; misfit of psi {100 * misfit['total']:.2g} %, unexplained "
         f"{100 * misfit['unexplained']:.2g} %; read from {html.escape(entry['field'])}; {entry['small_zones']} under the floor"
         f"{''.join(f'. {html.escape(words)}' for words in balance_words(entry))}</caption><tr><th>id</th><th>zone</th><th>turns</th>{head}<th>flags</th></tr>{rows}</table>"
+        + (_travelling(entry["travelling"]) if entry["travelling"] else "")
+    )
+
+
+def _travelling(eddies: list[Mapping[str, Any]]) -> str:
+    """Travelling eddies: listed apart, since none of them closes in the fixed frame."""
+    rows = []
+    for e in eddies:
+        speed = float(np.hypot(*e["speed_m_s"]))
+        size = "core only" if e["core_only"] else printed(e["area_m2"])
+        flow = "" if e["core_only"] else printed(e["recirculating_discharge_m3_s"])
+        rows.append(
+            f"<tr><td>{e['id']}</td><td>{e['rotation']}</td><td class=\"n\">{e['centre'][0]:.1f}</td><td class=\"n\">{e['centre'][1]:.1f}</td>"
+            f'<td class="n">{printed(speed)}</td><td>{e["speed_from"]}</td><td class="n">{printed(e["circulation_m2_s"])}</td>'
+            f'<td class="n">{size}</td><td class="n">{flow}</td><td class="n">{100 * e["misfit_of_its_view"]:.0f} %</td></tr>'
+        )
+    return (
+        "<table><caption>Travelling eddies, each seen by an observer who moves with it</caption><tr><th>id</th><th>turns</th>"
+        '<th class="n">east <small>m</small></th><th class="n">north <small>m</small></th><th class="n">moves <small>m/s</small></th>'
+        '<th>speed from</th><th class="n">circulation <small>m2/s</small></th><th class="n">area <small>m2</small></th>'
+        f'<th class="n">circulates <small>m3/s</small></th><th class="n">misfit</th></tr>{"".join(rows)}</table>'
     )
 
 

@@ -13,6 +13,7 @@ import numpy as np
 from ..balance import Balance
 from ..cautions import OWED, told
 from ..eddies import Zone
+from ..eddies.travelling import Traveller
 from ..figure import printed
 from ..mesh import Mesh
 from ..provenance import command_line, file_hash, versions
@@ -108,9 +109,21 @@ def frame_json(run: Run, entry: FrameLedger) -> dict[str, Any]:
         "dry_specks": sf.n_specks,
         "thin_faces": sf.thin_faces,
         "zones": [zone_json(frame.mesh, z) for z in entry.zones.zones],
+        "travelling": [traveller_json(frame.mesh, t) for t in entry.zones.travelling],
         "small_zones": len(entry.zones.small),
         "open_to_the_boundary": len(entry.zones.open_to_boundary),
         "notes": list(entry.zones.notes),
+    }
+
+
+def traveller_json(mesh: Mesh, eddy: Traveller) -> dict[str, Any]:
+    """One entry of ``travelling``: a core of swirl, and what the view that moves with it tells."""
+    core = eddy.core
+    return {
+        "id": eddy.id, "rotation": core.rotation, "centre": mesh.to_world(core.centre).round(3).tolist(), "core_radius_m": core.radius_m,
+        "swirl_1_s": core.swirl_1_s, "circulation_m2_s": core.circulation_m2_s, "speed_m_s": [float(v) for v in eddy.speed],
+        "speed_from": eddy.speed_from, "misfit_of_its_view": eddy.misfit, "core_only": eddy.core_only, "area_m2": eddy.area_m2,
+        "recirculating_discharge_m3_s": eddy.recirculating_discharge_m3_s,
     }
 
 

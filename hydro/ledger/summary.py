@@ -7,6 +7,7 @@ from dataclasses import dataclass, replace
 from typing import Any
 
 from ..eddies import Zone
+from ..eddies.travelling import Traveller
 
 
 @dataclass(frozen=True, eq=False)
@@ -17,6 +18,7 @@ class FrameSummary:
     seconds: float
     values: dict[str, Any]
     zones: tuple[Zone, ...]
+    travelling: tuple[Traveller, ...] = ()
 
     def with_zones(self, zones: Sequence[Zone]) -> FrameSummary:
         """The same frame with the ids and flags that following in time gave its zones."""
@@ -25,3 +27,8 @@ class FrameSummary:
             for row, zone in zip(self.values["zones"], zones, strict=True)
         ]
         return replace(self, values={**self.values, "zones": rows}, zones=tuple(zones))
+
+    def with_travelling(self, eddies: Sequence[Traveller]) -> FrameSummary:
+        """The same frame with the ids that following in time gave its travelling eddies."""
+        rows = [{**row, "id": eddy.id} for row, eddy in zip(self.values["travelling"], eddies, strict=True)]
+        return replace(self, values={**self.values, "travelling": rows}, travelling=tuple(eddies))

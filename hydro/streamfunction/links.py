@@ -20,6 +20,7 @@ from scipy.sparse.csgraph import dijkstra
 
 from ..mesh import Mesh
 from ..reach import Structure
+from .solve import node_triangles
 from .walls import Topology
 
 _NEAR_EDGES = 3.0  # an end on dry ground is joined to water no further away than this many edges
@@ -127,7 +128,9 @@ def _end(mesh: Mesh, shape: Topology, usable: np.ndarray, at: np.ndarray, edge: 
 
 def _shares(mesh: Mesh, shape: Topology, nodes: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
     touched: dict[int, np.ndarray] = {}
-    around = [np.flatnonzero((mesh.triangles == n).any(axis=1) & shape.triangles) for n in nodes]
+    start, triangles_of = node_triangles(mesh)
+    around = [triangles_of[start[n] : start[n + 1]] for n in nodes]
+    around = [own[shape.triangles[own]] for own in around]
     for k, node in enumerate(nodes):
         ahead = mesh.node_xy[nodes[k + 1]] - mesh.node_xy[node] if k + 1 < len(nodes) else None
         back = mesh.node_xy[nodes[k - 1]] - mesh.node_xy[node] if k > 0 else None
