@@ -335,9 +335,9 @@ def _moving_line(eddy: Traveller, desk: Desk) -> table.Line:
     """A travelling eddy, apart from those that stand: its area and flow are those that an observer who moves with it sees."""
     u = desk.units
     speed = u.quantity(float(np.hypot(*eddy.speed)), "m/s", digits=2)
-    how = "" if eddy.speed_from == "matched cores" else "speed assumed"
+    how = "seen moving with it" + ("" if eddy.speed_from == "matched cores" else "; speed assumed")
     area = "core only" if eddy.area_m2 is None else u.number(eddy.area_m2, "m2", digits=2)
     flow = "" if eddy.recirculating_discharge_m3_s is None else u.number(eddy.recirculating_discharge_m3_s, "m3/s", digits=2)
     return table.Line((
-        (f"{marks.turning(eddy.core.rotation)} {text.safe(eddy.id)}", ""), (f"travels at {speed}", how), (area, "seen moving with it"), (flow, ""), ("", ""),
+        (f"{marks.turning(eddy.core.rotation)} {text.safe(eddy.id)}", ""), (f"travels at {speed}", how), (area, ""), (flow, ""), ("", ""),
     ))
