@@ -23,7 +23,7 @@ class Choices:
     from and to, counted alike, whose mean flow is looked at in place of one moment. ``section`` is the
     world (x, y) of its left and right end, ``beside`` the name of a second one to compare it with, ``course``
     the figure of it that the ribbon shows, and ``view`` the world centre and width of the map in m, None
-    where the question chooses. ``run`` and ``against`` are ids of the review, ``subject`` names what the
+    where the question chooses; ``parcel`` is the world (x, y) where one is let go, and when, s. ``run`` and ``against`` are ids of the review, ``subject`` names what the
     map and the sentence speak of.
     """
 
@@ -37,6 +37,7 @@ class Choices:
     beside: str = ""
     course: str = "discharge"
     view: tuple[float, float, float] | None = None
+    parcel: tuple[float, float, float] | None = None
     shade: str = "speed"
     tubes: int = 22
     units: str = "SI"
@@ -132,7 +133,7 @@ class History:
 
 
 _SWEPT = frozenset({"seconds", "view", "section"})
-_NUMBERS = {"section": 4, "view": 3, "window": 2}
+_NUMBERS = {"section": 4, "view": 3, "window": 2, "parcel": 3}
 
 
 def _written(value: object) -> str:

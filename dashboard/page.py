@@ -17,7 +17,7 @@ from .packs import PACKS
 from .questions import QUESTIONS, saving
 from .questions.base import Desk, Question, Sizes
 from .questions.moments import window_for, window_of
-from .questions.stations import typed_ends
+from .questions.stations import typed_ends, typed_place
 from .raster import View
 from .reading import STORY
 from .results import Working
@@ -62,7 +62,7 @@ class Page:
         self.photograph: int | None = None  # the one that is open
         self.file: File | None = None  # to be handed to the reader with the next drawing
         self.files_sent = 0
-        self.map = MapFigure((0.0, 0.0, 100.0, 54.0), moved=self._moved)
+        self.map = MapFigure((0.0, 0.0, 100.0, 54.0), moved=self._moved, pressed=self._pressed)
         self.wire = Wire(self.hear)
         self.screen = Screen()
         self._scheduled = False
@@ -117,7 +117,7 @@ class Page:
     def on_run(self, run_id: str) -> None:
         if run_id not in [id_ for id_, _ in self.reading.matter().runs]:
             raise ValueError(f"there is no run {run_id!r} in this review.")
-        self.choose(run=run_id, seconds=None, window=None)
+        self.choose(run=run_id, seconds=None, window=None, parcel=None)
 
     def on_frame(self, value: dict) -> None:
         self.sent = int(value.get("sent", 0))
@@ -208,6 +208,17 @@ class Page:
     def on_photograph(self, value: str) -> None:
         """Open one of the site's photographs, or close it."""
         self.photograph = int(value) if value and self.photograph != int(value) else None
+
+    def on_parcel(self, form: dict | str) -> None:
+        """Let a parcel go where the form says, or in the middle of the map; or take it away."""
+        if form == "":
+            self.choose(parcel=None)
+        elif form == "middle":
+            view = self.view()
+            self._let_go(np.array([view.x, view.y]))
+        else:
+            x, y = typed_place(form)  # type: ignore[arg-type]
+            self._let_go(self.desk().run.mesh.to_local(np.array([x, y])))
 
     def on_pack(self, kind: str) -> None:
         self.studies.packs.make(kind)
@@ -349,6 +360,21 @@ class Page:
         except Working:
             return
         self.soon()
+
+    def _pressed(self, x: float, y: float) -> None:
+        """The reader pressed on the map: a parcel is let go there."""
+        if not self.question.has_map:
+            return
+        try:
+            self._let_go(np.array([x, y]))
+        except Working:
+            return
+        self.soon()
+
+    def _let_go(self, local: np.ndarray) -> None:
+        desk = self.desk()
+        x, y = (round(float(v), 2) for v in desk.run.mesh.to_world(local))
+        self.choose(parcel=(x, y, float(desk.run.times.seconds[desk.index])))
 
     def _settle(self) -> None:
         """Hold the view and the section still once they are known, so that time moves only the water."""

@@ -17,7 +17,7 @@ from .raster import View
 from .reading import STORY
 from .results import Working
 from .theme import Look
-from .views import backdrop, frame_words, marks, photographs
+from .views import backdrop, frame_words, marks, parcel, photographs
 from .views import map as drawing
 from .views.scene import Scene
 
@@ -132,14 +132,34 @@ class Screen:
         page.map.turn_to(view)
         scene = replace(question.scene(desk), buttons=tuple((float(x), float(y)) for x, y in _taken_at(desk)))
         self._scene = scene
+        scene, waited = self._parcel(desk, scene)
         sheet = drawing.draw(scene, view, look)
         self._hidden, self._key = sheet.hidden, sheet.key
         page.map.show(sheet, *picture_of(scene, desk, view))
         self._put("caption", self._caption(page, desk, view))
         self._put("scale", marks.scale_bar(view.step, desk.units, label=look.label_px) + marks.north())
-        missing = self._missing(desk) or self._ground(page, desk, view)
+        missing = self._missing(desk) or waited or self._ground(page, desk, view)
         if missing is not None:
             raise missing
+
+    def _parcel(self, desk: Desk, scene: Scene) -> tuple[Scene, Working | None]:
+        """The scene with the parcel that was let go, and what it waits for; what is wrong with it is said in its place."""
+        place, parcels = desk.choices.parcel, desk.studies.parcels
+        self._put("parcel", "")
+        if place is None:
+            return scene, None
+        line = None
+        try:
+            if desk.choices.question == "eddies":
+                line = parcels.streamline(desk.run_id, desk.moment, place)
+            found = parcels.parcel(desk.run_id, desk.moment, place)
+        except Working as working:
+            return parcel.onto(scene, None, line, 0.0), working
+        except ValueError as error:
+            self._put("parcel", text.safe(error))
+            return parcel.onto(scene, None, line, 0.0), None
+        self._put("parcel", parcel.words(found, place, desk.units, line is not None))
+        return parcel.onto(scene, found, line, float(desk.run.times.seconds[desk.index])), None
 
     def _ground(self, page: Page, desk: Desk, view: View) -> Working | None:
         """The review's backdrops under the water; while they are read the map keeps what it has."""
@@ -174,7 +194,7 @@ class Screen:
             f'<button type="button" class="word" data-do="zoom" data-value="{value}" data-key="zoom-{value}">{label}</button> '
             for value, label in (*page.question.places, ("nearer", "nearer"), ("farther", "farther"), ("whole", "whole reach"))
         )
-        return f"<span>{words}</span><span class=zoom>{zoom}{saving.words(page.question)}</span>"
+        return f"<span>{words}</span><span class=zoom>{zoom}{parcel.form()} {saving.words(page.question)}</span>"
 
     # ---- what stands on every screen ----------------------------------------------------------------
 

@@ -214,7 +214,7 @@ def page_for(studies: Studies) -> pn.Template:
 
 _SLOTS = (
     "title", "rail", "foot", "asks", "answer", "status", "key", "scale", "alternative", "caption", "ribbon", "progress",
-    "section", "table", "body", "cautions", "places", "photograph",
+    "section", "table", "body", "cautions", "places", "parcel", "photograph",
 )
 
 

@@ -19,6 +19,7 @@ from hydro.record.write import write_record
 from hydro.review import open_review
 
 from .packs import Packs
+from .parcels import Parcels
 from .reading import Reading
 from .results import SOON
 from .site import Site
@@ -50,6 +51,7 @@ class Studies:
         self._stopped: set[str] = set()
         self.packs = Packs(reading)
         self.site = Site(reading)
+        self.parcels = Parcels(reading)
 
     def audit(self, run_id: str) -> list[Finding]:
         """What there is to ask about a run, gravest first."""

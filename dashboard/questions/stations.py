@@ -97,6 +97,17 @@ def typed_ends(form: Mapping[str, object]) -> tuple[float, float, float, float]:
     return x1, y1, x2, y2
 
 
+def typed_place(form: Mapping[str, object]) -> tuple[float, float]:
+    """World x and y typed into the form; ``ValueError`` for what is no number."""
+    try:
+        x, y = (float(str(form.get(name, ""))) for name in ("x", "y"))
+        if np.isfinite([x, y]).all():
+            return x, y
+    except ValueError:
+        pass
+    raise ValueError("the place is not two numbers; give east and north in metres, such as 52378.16 and 31120.5.")
+
+
 def beside_words(desk: Desk, named: Mapping[str, Ends]) -> str:
     """The second section, as a word that changes it; empty without sections in the review."""
     if not named:

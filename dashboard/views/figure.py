@@ -7,7 +7,7 @@ from typing import Any
 
 import numpy as np
 from bokeh.core.properties import value
-from bokeh.events import RangesUpdate
+from bokeh.events import RangesUpdate, Tap
 from bokeh.models import ColumnDataSource, LinearColorMapper, PanTool, Range1d, SingleIntervalTicker, WheelZoomTool
 from bokeh.plotting import figure
 
@@ -30,9 +30,11 @@ class MapFigure:
     ----------
     moved : callable, optional
         Called with the local (west, south, east, north) after the reader has panned or zoomed.
+    pressed : callable, optional
+        Called with the local x and y of a press on the map.
     """
 
-    def __init__(self, bounds: tuple[float, float, float, float], *, moved: Callable | None = None) -> None:
+    def __init__(self, bounds: tuple[float, float, float, float], *, moved: Callable | None = None, pressed: Callable | None = None) -> None:
         west, south, east, north = bounds
         size = max(east - west, north - south)
         self.x, self.y = (
@@ -52,6 +54,8 @@ class MapFigure:
         self._glyphs()
         if moved is not None:
             self.figure.on_event(RangesUpdate, lambda e: moved((e.x0, e.y0, e.x1, e.y1)))
+        if pressed is not None:
+            self.figure.on_event(Tap, lambda e: pressed(e.x, e.y))
 
     def turn_to(self, view: View) -> None:
         """Show another window."""

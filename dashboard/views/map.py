@@ -171,7 +171,7 @@ class _Draughtsman:
             else:
                 self.cased(line, colour, width, dash)
         if mark.kind == "pathline":
-            for tick in self.seen(strokes.minute_marks(mark.points, 60, 8 * self.px)):
+            for tick in self.seen(strokes.cross_ticks(mark.points, mark.tick, 8 * self.px)):
                 self.sheet.line(tick, colour, 1.2 * self.weight)
         if mark.kind == "timeline" and len(mark.points) > 1:
             for end, other in ((0, 1), (-1, -2)):
@@ -188,7 +188,7 @@ class _Draughtsman:
         if mark.kind == "rest":
             self.sheet.area(circle, fill=self.p.paper, alpha=1, line=colour, width=1.6 * self.weight)
         elif mark.kind == "parcel":
-            self.sheet.area(shapely.Point(mark.at).buffer(0.7 * r), fill=colour, alpha=1, line=self.p.paper, width=1.5)
+            self.cased(strokes.bar(mark.at, 0.0, 0.1 * self.px), colour, 9.0)  # a line with round ends, over its own path
         elif mark.kind == "fish":
             self.sheet.area(_lens(mark.at, mark.angle, 2.4 * r), fill=colour, alpha=1, line=self.p.paper, width=1.2)
         elif mark.kind in ("drogue", "query", "answered"):

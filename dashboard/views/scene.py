@@ -48,12 +48,13 @@ class ZoneMark:
 
 @dataclass(frozen=True, eq=False)
 class LineMark:
-    """A line of one of ``LINE_KINDS``; ``subject`` draws it in signal."""
+    """A line of one of ``LINE_KINDS``; ``subject`` draws it in signal; a pathline has a cross tick every ``tick`` points."""
 
     kind: str
     points: np.ndarray
     label: str = ""
     subject: bool = False
+    tick: int = 60
 
 
 @dataclass(frozen=True, eq=False)

@@ -83,7 +83,7 @@ def bar(at: np.ndarray, angle: float, length: float) -> np.ndarray:
     return np.array([at - half, at + half])
 
 
-def minute_marks(points: np.ndarray, every: int, size: float) -> list[np.ndarray]:
+def cross_ticks(points: np.ndarray, every: int, size: float) -> list[np.ndarray]:
     """Cross ticks at every ``every``-th point of a line."""
     out = []
     for i in range(every, len(points) - 1, every):

@@ -212,6 +212,7 @@ class Desk {
       if (step) this.tell("pan", step);
       else if (e.key === "+" || e.key === "=") this.tell("zoom", "nearer");
       else if (e.key === "-") this.tell("zoom", "farther");
+      else if (e.key === "Enter") this.tell("parcel", "middle");
       else return;
       e.preventDefault();
     }

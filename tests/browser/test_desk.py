@@ -222,3 +222,32 @@ def test_the_section_s_end_and_the_key_do_not_cover_each_other(page: Page, serve
     page.wait_for_function(apart)
     settled(page)
     assert page.evaluate(apart)
+
+
+def test_a_parcel_is_let_go_by_a_press_by_key_and_by_its_coordinates(page: Page, server: Server):
+    open_desk(page, server.address, "question=eddies&view=52455,31178,120")
+    box, told = page.locator("#map").bounding_box(), page.locator("p.parcel")
+    assert box
+    page.mouse.click(box["x"] + 0.5 * box["width"], box["y"] + 0.5 * box["height"])
+    expect(told).to_contain_text("Parcel let go at", timeout=90_000)
+    expect(told).to_contain_text("not for judging swimming, boating or rescue")
+    assert "parcel=" in page.url
+    settled(page)
+    first = told.inner_text()
+    page.click("button[data-key=parcel-away]")
+    expect(told).to_be_hidden()
+    page.focus("#map")
+    page.keyboard.press("Enter")
+    expect(told).to_contain_text("Parcel let go at", timeout=90_000)
+    places = [[float(v) for v in re.findall(r"at ([\d.]+), ([\d.]+)", plain(words))[0]] for words in (first, told.inner_text())]
+    assert places[0] == pytest.approx(places[1], abs=0.5)  # a press is a whole pixel
+    page.click("summary:has-text('let a parcel go')")
+    page.fill("#parcel-x", "here")
+    page.fill("#parcel-y", "31120")
+    page.click("form[data-send=parcel] button")
+    expect(page.locator(".status").first).to_contain_text("the place is not two numbers")
+    page.fill("#parcel-x", "52000")
+    page.keyboard.press("Enter")
+    expect(told).to_contain_text("there is no water there", timeout=90_000)
+    settled(page)
+    assert faults(page) == []
