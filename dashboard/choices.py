@@ -11,6 +11,7 @@ QUESTIONS = ("arrival", "eddies", "drift", "passage", "sections", "change", "rec
 SHADES = ("speed", "depth")
 TUBES = (11, 22, 44)
 COURSES = ("discharge", "level", "head", "speed", "area")  # of a section, through time
+COMPARED = ("difference", "swipe")
 UNITS = ("SI", "US survey feet", "international feet")
 MODES = ("day", "night")
 
@@ -23,8 +24,9 @@ class Choices:
     from and to, counted alike, whose mean flow is looked at in place of one moment. ``section`` is the
     world (x, y) of its left and right end, ``beside`` the name of a second one to compare it with, ``course``
     the figure of it that the ribbon shows, and ``view`` the world centre and width of the map in m, None
-    where the question chooses; ``parcel`` is the world (x, y) where one is let go, and when, s. ``run`` and ``against`` are ids of the review, ``subject`` names what the
-    map and the sentence speak of.
+    where the question chooses; ``parcel`` is the world (x, y) where one is let go, and when, s. ``run`` and
+    ``against`` are ids of the review, ``subject`` names what the map and the sentence speak of. ``compared``
+    says how two runs stand on one map, ``divider`` where the swipe's divider stands, as a share of its width.
     """
 
     question: str = "eddies"
@@ -38,6 +40,8 @@ class Choices:
     course: str = "discharge"
     view: tuple[float, float, float] | None = None
     parcel: tuple[float, float, float] | None = None
+    compared: str = "difference"
+    divider: float = 0.5
     shade: str = "speed"
     tubes: int = 22
     units: str = "SI"
@@ -67,7 +71,7 @@ class Choices:
         return urlencode(pairs, safe=",:")
 
 
-_OFFERED = {"question": QUESTIONS, "shade": SHADES, "units": UNITS, "mode": MODES, "tubes": TUBES, "course": COURSES}
+_OFFERED = {"question": QUESTIONS, "shade": SHADES, "units": UNITS, "mode": MODES, "tubes": TUBES, "course": COURSES, "compared": COMPARED}
 
 
 def from_query(query: str, start: Choices | None = None) -> Choices:
@@ -132,7 +136,7 @@ class History:
         return True
 
 
-_SWEPT = frozenset({"seconds", "view", "section"})
+_SWEPT = frozenset({"seconds", "view", "section", "divider"})
 _NUMBERS = {"section": 4, "view": 3, "window": 2, "parcel": 3}
 
 
@@ -155,6 +159,11 @@ def _read(name: str, text: str) -> object:
             return values
         if name == "seconds":
             return _finite(text)
+        if name == "divider":
+            share = _finite(text)
+            if not 0 <= share <= 1:
+                raise ValueError
+            return share
         if name == "tubes":
             return int(text)
         if name == "hall":

@@ -106,7 +106,7 @@ class Page:
     def choose(self, **changed: object) -> None:
         """Take new choices into the history."""
         self.stop = None
-        self.push = self.history.go(self.choices.with_(**changed)) and not set(changed) <= {"seconds", "window", "view", "section"} or bool(changed.get("window"))
+        self.push = self.history.go(self.choices.with_(**changed)) and not set(changed) <= {"seconds", "window", "view", "section", "divider"} or bool(changed.get("window"))
 
     def on_question(self, key: str) -> None:
         self.choose(question=key)
@@ -164,6 +164,18 @@ class Page:
 
     def on_against(self, run_id: str) -> None:
         self.choose(against=run_id)
+
+    def on_compared(self, value: str) -> None:
+        self.choose(compared=value)
+
+    def on_divider(self, value: dict) -> None:
+        """The swipe's divider was moved to a share of the map's width."""
+        self.sent = int(value.get("sent", 0))
+        self.choose(divider=round(float(np.clip(float(value["share"]), 0.0, 1.0)), 3))
+
+    def on_visit(self, number: str) -> None:
+        """Take the map to the place of a sentence of the comparison."""
+        self._look_at(*QUESTIONS["change"].place_of(self.desk(), int(number)))  # type: ignore[attr-defined]
 
     def on_ask(self, form: dict) -> None:
         review = self.reading.matter().review

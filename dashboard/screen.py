@@ -17,7 +17,7 @@ from .raster import View
 from .reading import STORY
 from .results import Working
 from .theme import Look
-from .views import backdrop, frame_words, marks, parcel, photographs
+from .views import backdrop, frame_words, marks, parcel, photographs, swipe
 from .views import map as drawing
 from .views.scene import Scene
 
@@ -276,6 +276,7 @@ class Screen:
         if all(isinstance(key, tuple) and key[0] == "followed" for key in self.waits.get("map", ())):
             state["seen"] = page.sent
         ends = _ready(page.question.section_ends, desk) if page.question.has_map else None
+        state["swipe"] = _ready(page.question.swipe, desk)
         state["ends"] = [list(end) for end in ends] if ends else None
         state["time"] = _ready(page.question.moments, desk) if page.question.has_time else None
         return state
@@ -296,7 +297,13 @@ def picture_of(scene: Scene, desk: Desk, view: View) -> tuple[np.ndarray | None,
     wide = view.widened(_PICTURE_SHARE)
     wide = replace(wide, columns=round(wide.columns * ratio), rows=round(wide.rows * ratio))
     raster = desk.reading.raster(desk.run_id, wide)
-    return raster.paint(w.frame, w.value, w.top, psi=w.psi, tube=w.tube_m3_s, carries=w.carries), wide
+    picture = raster.paint(w.frame, w.value, w.top, psi=w.psi, tube=w.tube_m3_s, carries=w.carries)
+    if scene.beside is not None:
+        b, (east, north) = scene.beside.water, scene.beside.shift
+        other = desk.reading.raster(scene.beside.run_id, replace(wide, x=wide.x - east, y=wide.y - north))
+        painted = other.paint(b.frame, b.value, b.top, psi=b.psi, tube=b.tube_m3_s, carries=b.carries)
+        picture = swipe.composed(picture, painted, wide, scene.beside)
+    return picture, wide
 
 
 def _ready(make: Callable[[Desk], Any], desk: Desk) -> Any:

@@ -10,7 +10,7 @@ import shapely
 from shapely.geometry.base import BaseGeometry
 
 from hydro.arrival import Finding, audit
-from hydro.change import Change, compare, pair_frames
+from hydro.change import Change, Pair, compare, pair_frames
 from hydro.drift.report import DriftAnswer, study
 from hydro.passage import Answer, Fish, assess, read_fish
 from hydro.queries import Query, queries
@@ -69,12 +69,20 @@ class Studies:
         ra, rb = self.reading.reach(run_id), self.reading.reach(other)
 
         def make() -> Change:
-            pair = next((p for p in pair_frames(a, b) if p.a == index), None)
-            if pair is None:
-                raise ValueError(f"no frame of {b.name} is near the chosen time of {a.name}; choose another time.")
-            return compare(a, b, pair, reach_a=ra, reach_b=rb)
+            return compare(a, b, self.pair(run_id, index, other), reach_a=ra, reach_b=rb)
 
         return self.reading.results.get(("change", run_id, index, other), make, label="Comparing the two runs.", heavy=True)
+
+    def pair(self, run_id: str, index: int, other: str) -> Pair:
+        """A frame of a run and the one of another run that stands beside it.
+
+        Raises ``ValueError`` where none is near its time.
+        """
+        a, b = self.reading.run(run_id), self.reading.run(other)
+        pair = next((p for p in pair_frames(a, b) if p.a == index), None)
+        if pair is None:
+            raise ValueError(f"no frame of {b.name} is near the chosen time of {a.name}; choose another time.")
+        return pair
 
     def change_areas(self, run_id: str, index: int, other: str, step: float) -> tuple[BaseGeometry, BaseGeometry]:
         """Where the water is faster and slower by more than ``step``, m/s."""

@@ -150,6 +150,10 @@ class Question:
         """Ids of the cautions that concern this screen's figures, in order of their letters."""
         return ()
 
+    def swipe(self, desk: Desk) -> dict[str, object] | None:
+        """The swipe's divider: its share of the map's width and what stands left and right of it; None: there is none."""
+        return None
+
     def section_ends(self, desk: Desk) -> tuple[tuple[float, float], tuple[float, float]] | None:
         """Local left and right end of the section line; None: there is none."""
         return None

@@ -16,12 +16,13 @@ from hydro.eddies import Zone
 from .. import text
 from ..raster import View
 from ..units import Units
+from ..views import marks, swipe, table
 from ..views import ribbon as strip
-from ..views import table
-from ..views.scene import AreaMark, LineMark, Scene, Tag, Water
+from ..views.scene import AreaMark, LineMark, Scene, Tag, Water, ZoneMark
 from . import common
 from .base import Desk, Question, footnote
 
+_ROUND_A_PLACE = 120.0  # m: width of the map that a sentence takes its reader to
 SPEED_STEP = 0.1  # m/s: smaller changes of speed stay blank on the map (Leewater's own, stated in the caption)
 
 
@@ -75,6 +76,8 @@ class Change(Question):
         scene = common.water_scene(desk)
         if not self.other(desk) or not scene.shore:
             return scene
+        if desk.choices.compared == "swipe":
+            return self._side_by_side(desk, scene)
         change = self.change(desk)
         faster, slower = desk.studies.change_areas(desk.run_id, desk.index, self.other(desk), SPEED_STEP)
         areas = [AreaMark("dots", faster, "more"), AreaMark("levels", slower, "less")]
@@ -96,6 +99,42 @@ class Change(Question):
             section=None,
         )
 
+    def _side_by_side(self, desk: Desk, scene: Scene) -> Scene:
+        """This run left of the divider, the other right of it, at one time and with one ramp."""
+        other, reading = self.other(desk), desk.reading
+        change, frame = self.change(desk), desk.studies.pair(desk.run_id, desk.index, other).b
+        reading.tubes(other, frame, desk.choices.tubes)  # until psi is there, nothing is drawn of it
+        second = replace(desk, choices=desk.choices.with_(run=other, seconds=float(reading.run(other).times.seconds[frame])))
+        there = common.water_scene(second)
+        assert scene.water is not None and there.water is not None and desk.view is not None  # a map is drawn in a view
+        top = max(scene.water.top, there.water.top)
+        zones = [tuple(_mark(z, side) for z in change.zones if (side := getattr(z, name)) is not None) for name in ("a", "b")]
+        west, _, east, _ = desk.view.extent
+        return swipe.joined(
+            replace(scene, water=replace(scene.water, top=top), zones=zones[0], section=None),
+            replace(there, water=replace(there.water, top=top), zones=zones[1]),
+            other, west + desk.choices.divider * (east - west), np.subtract(change.b.mesh.origin, change.a.mesh.origin),
+            (reading.label(desk.run_id), reading.label(other)),
+        )
+
+    def swipe(self, desk: Desk) -> dict[str, object] | None:
+        other = self.other(desk)
+        if desk.choices.compared != "swipe" or not other:
+            return None
+        return {"share": desk.choices.divider, "left": desk.reading.label(desk.run_id), "right": desk.reading.label(other)}
+
+    def place_of(self, desk: Desk, number: int) -> tuple[float, float, float]:
+        """Local centre and width, m, of a map that shows what a sentence speaks of.
+
+        Raises ``ValueError`` for a sentence without a place.
+        """
+        findings = self.change(desk).findings
+        at = findings[number].at if 0 <= number < len(findings) else None
+        if at is None:
+            raise ValueError(f"sentence {number + 1} of the comparison names no place; choose another.")
+        x, y = at
+        return x, y, _ROUND_A_PLACE
+
     def view(self, desk: Desk):
         if not self.other(desk):
             return None
@@ -113,13 +152,24 @@ class Change(Question):
         if not offered:
             return "<i>Plate 6.</i> There is one run only."
         other = common.chooser("against", self.other(desk), {"": "choose a run", **offered}, "the run that is compared")
+        ways = {"difference": "Difference", "swipe": "Swipe"}
+        way = common.chooser("compared", desk.choices.compared, ways, "how the two runs stand on the map")
+        mine = text.safe(runs[desk.run_id])
+        if desk.choices.compared == "swipe":
+            here, there = (desk.units.quantity(w.water.tube_m3_s if w and w.water else 0.0, "m3/s") for w in (scene, scene.beside))
+            right = f" Right of the divider a tube carries {there}." if scene.beside is not None and there != here else ""
+            return f"<i>Plate 6.</i> {way}: left of the divider {mine}, right of it {other}. {common.water_words(desk, scene)}{right}"
         step = desk.units.quantity(SPEED_STEP, "m/s", digits=1)
         return (
-            f"<i>Plate 6.</i> {other} less {text.safe(runs[desk.run_id])}; speed changed by less than {step} is blank. Eddies: dotted "
+            f"<i>Plate 6.</i> {way}: {other} less {mine}; speed changed by less than {step} is blank. Eddies: dotted "
             "before, drawn out after."
         )
 
     def key_html(self, desk: Desk) -> str:
+        if desk.choices.compared == "swipe" and self.other(desk):
+            shade = desk.choices.shade
+            top = max(desk.reading.top(i, shade) for i in (desk.run_id, self.other(desk)))
+            return marks.ramp_key(shade.capitalize(), top, "m/s" if shade == "speed" else "m", desk.units)
         return (
             '<div class="hatches"><div><svg class="swatch more" viewBox="0 0 28 13" aria-hidden="true">'
             '<g><circle cx="5" cy="4" r="1.3"/><circle cx="11" cy="9" r="1.3"/><circle cx="17" cy="4" r="1.3"/>'
@@ -129,7 +179,11 @@ class Change(Question):
         )
 
     def alternative(self, desk: Desk) -> str:
-        return desk.units.sentence(" ".join(f.sentence for f in self.change(desk).findings)) if self.other(desk) else ""
+        if not self.other(desk):
+            return ""
+        told = desk.units.sentence(" ".join(f.sentence for f in self.change(desk).findings))
+        stands = self.swipe(desk)
+        return f"Left of the divider {stands['left']}, right of it {stands['right']}. {told}" if stands else told
 
     def ribbon(self, desk: Desk) -> str:
         return strip.draw(common.plain_course(desk), common.ribbon_box(desk), desk.units)
@@ -147,7 +201,7 @@ class Change(Question):
         )
         lines = [_zone_line(z, u) for z in change.zones]
         zones = table.html(table.Table("Eddies, matched", "", "Eddies of both runs", columns, lines, "No eddy in either run."))
-        first = "".join(f"<li>{text.safe(desk.units.sentence(f.sentence))}</li>" for f in change.findings)
+        first = "".join(f"<li>{_told(f.sentence, i, f.at is not None, u)}</li>" for i, f in enumerate(change.findings))
         before = "".join(f"<li>{text.safe(_differs(d, desk.units))}</li>" for d in change.setup)
         said = f"<h2>In words</h2><ul>{first}</ul>" if first else ""
         differs = before or "<li>Nothing that Leewater can see.</li>"
@@ -182,6 +236,19 @@ def _faces(change: Compared, chosen: np.ndarray) -> shapely.Geometry:
 def _outline(zone: Zone, kind: str, subject: bool) -> LineMark:
     part = max(shapely.get_parts(zone.contour), key=lambda p: p.area)
     return LineMark(kind, shapely.get_coordinates(part.exterior), subject=subject)
+
+
+def _mark(change: ZoneChange, zone: Zone) -> ZoneMark:
+    """An eddy of either run under the one name that both have in the comparison."""
+    return replace(common.zone_mark(zone, change.state == "gone"), tag=change.zone.id)
+
+
+def _told(sentence: str, number: int, placed: bool, u: Units) -> str:
+    """A sentence; one with a place is a button that takes the map there."""
+    words = text.safe(u.sentence(sentence))
+    if not placed:
+        return words
+    return f'<button type="button" class="tale" data-do="visit" data-value="{number}" data-key="visit-{number}">{words}</button>'
 
 
 def _tag(z: ZoneChange, units: Units) -> str:

@@ -12,6 +12,7 @@ from .. import text, theme
 from ..raster import View
 from ..sheets import Drawn, File, of_page, sheet
 from ..views import map as drawing
+from ..views import swipe
 from ..views.vector import map_svg
 from .base import Desk, Question
 
@@ -57,7 +58,7 @@ def _map(question: Question, desk: Desk, view: View) -> Drawn:
     from ..screen import picture_of
 
     look = theme.look("day")
-    scene = question.scene(desk)
+    scene = swipe.labelled(question.scene(desk), view)
     marks = drawing.draw(scene, view, look)
     shade = desk.choices.shade
     ramp = shade.capitalize(), scene.water.top if scene.water else 1.0, "m/s" if shade == "speed" else "m"

@@ -31,6 +31,17 @@ class Water:
 
 
 @dataclass(frozen=True, eq=False)
+class Beside:
+    """A second run's water, shown east of ``x``; ``shift`` (m) brings its coordinates to the first run's."""
+
+    run_id: str
+    water: Water
+    x: float
+    shift: tuple[float, float]
+    names: tuple[str, str]
+
+
+@dataclass(frozen=True, eq=False)
 class ZoneMark:
     """An eddy: outline, two inner streamlines, its turning and its tag."""
 
@@ -114,6 +125,7 @@ class Scene:
     """Everything on one map, back to front."""
 
     water: Water | None = None
+    beside: Beside | None = None
     shore: tuple[np.ndarray, ...] = ()
     structures: tuple[StructureMark, ...] = ()
     zones: tuple[ZoneMark, ...] = ()

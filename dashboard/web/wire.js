@@ -65,6 +65,7 @@ class Desk {
     }
     this.address(state);
     this.time(state);
+    this.divider();
     this.overlay();
   }
 
@@ -162,6 +163,7 @@ class Desk {
       timer = setTimeout(() => this.measure(), 120);
     });
     this.listenEnds();
+    this.listenDivider();
     this.followMap();
   }
 
@@ -230,6 +232,64 @@ class Desk {
     });
   }
 
+  // ---- the divider between two runs ------------------------------------------------------------
+
+  // It stands where the reader has it; the map follows.
+  divider() {
+    const layer = document.getElementById("swipe");
+    if (!layer) return;
+    const swipe = this.state.swipe;
+    layer.hidden = !swipe;
+    if (!swipe) return;
+    const share = this.divided ?? swipe.share;
+    layer.style.setProperty("--share", share);
+    layer.querySelector(".left").textContent = swipe.left;
+    layer.querySelector(".right").textContent = swipe.right;
+    const slider = document.getElementById("divider");
+    const percent = Math.round(100 * share);
+    slider.setAttribute("aria-valuenow", percent);
+    slider.setAttribute("aria-valuetext", `${swipe.left} on the left ${percent} % of the map, ${swipe.right} on the rest`);
+  }
+
+  moveDivider(share) {
+    this.divided = Math.min(Math.max(share, 0), 1);
+    this.divider();
+    this.sweep("divider", { share: this.divided });
+    clearTimeout(this.rest);
+    this.rest = setTimeout(() => {
+      this.divided = undefined;
+      this.divider();
+    }, 1500);
+  }
+
+  listenDivider() {
+    const slider = document.getElementById("divider");
+    if (!slider) return;
+    slider.addEventListener("pointerdown", (e) => {
+      e.preventDefault();
+      e.stopPropagation();
+      slider.focus({ focusVisible: false, preventScroll: true });
+      slider.setPointerCapture(e.pointerId);
+    });
+    slider.addEventListener("pointermove", (e) => {
+      if (!slider.hasPointerCapture(e.pointerId)) return;
+      const box = document.getElementById("map").getBoundingClientRect();
+      this.moveDivider((e.clientX - box.left) / box.width);
+    });
+    slider.addEventListener("keydown", (e) => {
+      const share = this.divided ?? this.state.swipe.share;
+      const step = (e.shiftKey ? 10 : 2) / 100;
+      const to = {
+        ArrowLeft: share - step, ArrowDown: share - step, ArrowRight: share + step, ArrowUp: share + step,
+        PageDown: share - 0.1, PageUp: share + 0.1, Home: 0, End: 1,
+      }[e.key];
+      if (to === undefined) return;
+      e.preventDefault();
+      e.stopPropagation();
+      this.moveDivider(to);
+    });
+  }
+
   // ---- the section line over the map -----------------------------------------------------------
 
   figure() {
@@ -256,7 +316,7 @@ class Desk {
   quiet(node) {
     for (const element of node.querySelectorAll("*")) {
       if (element.shadowRoot) this.quiet(element.shadowRoot);
-      if (element.tabIndex >= 0 && !element.matches("button")) element.tabIndex = -1;
+      if (element.tabIndex >= 0 && !element.matches("button, [role=slider]")) element.tabIndex = -1;
     }
   }
 

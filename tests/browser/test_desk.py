@@ -8,7 +8,7 @@ import pytest
 from playwright.sync_api import Browser, Page, expect
 
 from .conftest import Server, Watch
-from .desk import FLOOD, answer, colours, faults, open_desk, plain, settled
+from .desk import FLOOD, PATIENCE, answer, colours, faults, open_desk, plain, settled
 
 pytestmark = pytest.mark.browser
 
@@ -251,3 +251,38 @@ def test_a_parcel_is_let_go_by_a_press_by_key_and_by_its_coordinates(page: Page,
     expect(told).to_contain_text("there is no water there", timeout=90_000)
     settled(page)
     assert faults(page) == []
+
+
+def test_the_divider_between_two_runs_moves_by_key_and_pointer_and_shows_each_run_on_its_side(page: Page, server: Server):
+    view = "question=change&run=existing_bankfull&view=52530.70,31271.61,90.00"
+    open_desk(page, server.address, f"{view}&compared=swipe&divider=0.5")
+    page.wait_for_selector("#map-alternative:has-text('Left of the divider')", state="attached", timeout=PATIENCE)
+    divider = page.get_by_role("slider", name="Divider between the two runs")
+    divider.focus()
+    page.keyboard.press("Shift+ArrowRight")
+    page.wait_for_url("**divider=0.6*", timeout=PATIENCE)
+    assert divider.get_attribute("aria-valuetext") == "Existing, bankfull on the left 60 % of the map, Proposed, bankfull on the rest"
+    page.keyboard.press("Home")
+    page.wait_for_url("**divider=0", timeout=PATIENCE)
+    assert divider.get_attribute("aria-valuenow") == "0"
+    page.keyboard.press("End")
+    page.wait_for_url("**divider=1", timeout=PATIENCE)
+    box, at = page.locator("#map").bounding_box(), divider.bounding_box()
+    assert box and at
+    page.mouse.move(at["x"] + 10, at["y"] + at["height"] / 3)
+    page.mouse.down()
+    page.mouse.move(box["x"] + 0.25 * box["width"], at["y"] + at["height"] / 3, steps=4)
+    page.mouse.up()
+    page.wait_for_url("**divider=0.25*", timeout=PATIENCE)
+    assert faults(page) == []
+
+
+def test_a_sentence_of_the_comparison_takes_the_map_to_its_place_by_key(page: Page, server: Server):
+    open_desk(page, server.address, "question=change&run=existing_bankfull")
+    sentence = page.get_by_role("button", name=re.compile("The eddy Pier 1, left rear"))
+    sentence.wait_for(timeout=PATIENCE)
+    sentence.focus()
+    page.keyboard.press("Enter")
+    page.wait_for_url("**,120.00*", timeout=PATIENCE)
+    east, north, _ = (float(v) for v in re.search(r"view=([\d.]+),([\d.]+),([\d.]+)", page.url).groups())
+    assert abs(east - 52530) < 40 and abs(north - 31271) < 40  # the piers' surroundings
