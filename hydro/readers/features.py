@@ -83,6 +83,10 @@ def _layer(path: Path, layer: str | None) -> geopandas.GeoDataFrame:
     if not len(table) or missing.size:
         what = f"feature {missing[0] + 1} has no geometry" if missing.size else "it has no features"
         raise ValueError(f"{path.name}, layer {chosen}: {what}; export it again.")
+    at, of = shapely.get_coordinates(table.geometry.values, return_index=True)
+    if not np.isfinite(at).all():
+        row = int(of[~np.isfinite(at).all(axis=1)][0])
+        raise ValueError(f"{path.name}, layer {chosen}: feature {row + 1} has coordinates that are no numbers; export it again.")
     table.attrs["layer"] = chosen
     table.attrs["unread"] = next((str(w.message)[:60] for w in heard if "srs" in str(w.message).lower()), "")
     return table

@@ -17,6 +17,7 @@ import numpy as np
 import pandas as pd
 import pytest
 import rasterio
+import shapely
 from hypothesis import HealthCheck, given, settings
 from hypothesis import strategies as st
 
@@ -243,6 +244,13 @@ def test_a_grid_with_coordinates_that_are_no_numbers_says_so(tmp_path):
     with h5py.File(path, "a") as file:
         file["yc"][...] = -np.inf
     assert "no place of the grid has both coordinates" in finite_or_one_sentence(path)
+
+
+def test_points_without_a_finite_place_are_told(tmp_path):
+    table = geopandas.read_file(doors.polygons(tmp_path, points=True))
+    table.loc[2, "geometry"] = shapely.Point(np.inf, 0)
+    table.to_file(tmp_path / "away.gpkg")
+    assert "feature 3 has coordinates that are no numbers" in finite_or_one_sentence(tmp_path / "away.gpkg")
 
 
 def test_polygons_with_a_broken_ring_are_told(tmp_path):
