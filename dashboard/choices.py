@@ -10,6 +10,7 @@ from urllib.parse import parse_qsl, urlencode
 QUESTIONS = ("arrival", "eddies", "drift", "passage", "sections", "change", "record")
 SHADES = ("speed", "depth")
 TUBES = (11, 22, 44)
+ALONG = ("thalweg", "streamline")
 COURSES = ("discharge", "level", "head", "speed", "area")  # of a section, through time
 COMPARED = ("difference", "swipe")
 UNITS = ("SI", "US survey feet", "international feet")
@@ -23,9 +24,9 @@ class Choices:
     ``seconds`` counts from the run's first frame (None: the question's own choice); ``window`` is the time
     from and to, counted alike, whose mean flow is looked at in place of one moment. ``section`` is the
     world (x, y) of its left and right end, ``beside`` the name of a second one to compare it with, ``course``
-    the figure of it that the ribbon shows, and ``view`` the world centre and width of the map in m, None
-    where the question chooses; ``parcel`` is the world (x, y) where one is let go, and when, s. ``run`` and
-    ``against`` are ids of the review, ``subject`` names what the map and the sentence speak of. ``compared``
+    the figure of it that the ribbon shows, ``along`` the line of the profile, and ``view`` the world centre and
+    width of the map in m, None where the question chooses; ``parcel`` is the world (x, y) where one is let go,
+    and when, s. ``run`` and ``against`` are ids of the review, ``subject`` names what the map and the sentence speak of. ``compared``
     says how two runs stand on one map, ``divider`` where the swipe's divider stands, as a share of its width.
     """
 
@@ -38,6 +39,7 @@ class Choices:
     section: tuple[float, float, float, float] | None = None
     beside: str = ""
     course: str = "discharge"
+    along: str = "thalweg"
     view: tuple[float, float, float] | None = None
     parcel: tuple[float, float, float] | None = None
     compared: str = "difference"
@@ -71,7 +73,10 @@ class Choices:
         return urlencode(pairs, safe=",:")
 
 
-_OFFERED = {"question": QUESTIONS, "shade": SHADES, "units": UNITS, "mode": MODES, "tubes": TUBES, "course": COURSES, "compared": COMPARED}
+_OFFERED = {
+    "question": QUESTIONS, "shade": SHADES, "units": UNITS, "mode": MODES, "tubes": TUBES, "course": COURSES, "along": ALONG,
+    "compared": COMPARED,
+}
 
 
 def from_query(query: str, start: Choices | None = None) -> Choices:

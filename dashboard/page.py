@@ -152,6 +152,9 @@ class Page:
     def on_beside(self, name: str) -> None:
         self.choose(beside=name)
 
+    def on_along(self, value: str) -> None:
+        self.choose(along=value)
+
     def on_course(self, value: str) -> None:
         self.choose(course=value)
 

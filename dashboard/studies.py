@@ -12,6 +12,7 @@ from shapely.geometry.base import BaseGeometry
 from hydro.arrival import Finding, audit
 from hydro.change import Change, Pair, compare, pair_frames
 from hydro.drift.report import DriftAnswer, study
+from hydro.observations import Observed, compare_observations
 from hydro.passage import Answer, Fish, assess, read_fish
 from hydro.queries import Query, queries
 from hydro.record.build import Material, build_record
@@ -57,6 +58,15 @@ class Studies:
         """What there is to ask about a run, gravest first."""
         run, reach = self.reading.run(run_id), self.reading.reach(run_id)
         return self.reading.results.get(("audit", run_id), lambda: audit(run, reach), label="Looking at what has arrived.", rank=SOON)
+
+    def observed(self, run_id: str) -> list[Observed]:
+        """What was observed in the field, beside a run; empty where the review declares nothing for it."""
+        review, run = self.reading.matter().review, self.reading.run(run_id)
+        if review is None or not any(str(o.get("run")) == run_id for o in review.contents.observations):
+            return []
+        return self.reading.results.get(
+            ("observed", run_id), lambda: compare_observations(review, run, run_id), label="Comparing with what was observed.", rank=SOON,
+        )
 
     def queries(self) -> list[Query] | None:
         """The review's queries as they stand; None where there is no review to keep them."""

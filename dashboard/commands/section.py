@@ -23,6 +23,8 @@ def arguments(parser: argparse.ArgumentParser) -> None:
     which.add_argument("--all", action="store_true", help="every frame")
     what = parser.add_mutually_exclusive_group()
     what.add_argument("--profile", action="store_true", help="take the lines as profiles along the flow")
+    what.add_argument("--thalweg", action="store_true", help="the profile along the deepest bed, from the review's centre line")
+    what.add_argument("--streamline", metavar='"X,Y"', help="the profile along the streamline through a place, world coordinates in m")
     what.add_argument(
         "--weirs", metavar="RELATION", help="the review's weirs: section heads, and the discharge by broad-crested, rehbock or kindsvater-carter"
     )
@@ -46,10 +48,37 @@ def run(args: argparse.Namespace) -> int:
         return _envelope(args, run_)
     if args.weirs or args.openings or args.places is not None:
         return _works(args, review, run_, frames)
+    if args.thalweg or args.streamline:
+        return _profiles(args, run_, [_along(args, review, run_, frames[0])])
     lines = _lines(args.line, review, run_)
     if args.profile:
         return _profiles(args, run_, lines)
     return _sections(args, review, run_, lines, frames)
+
+
+def _along(args, review, run_, index: int):
+    """The thalweg or a streamline, as a name and its local points."""
+    import numpy as np
+
+    from hydro.section.profile import thalweg
+    from hydro.tracks import streamlines
+
+    if args.thalweg:
+        centre = review.reach.centre_line if review else None
+        if centre is None:
+            raise ValueError("the thalweg is found beside a centre line; draw one in the review's lines.gpkg.")
+        return "thalweg", thalweg(run_.frame(index), centre, max(centre.length / 200, 1.0))
+    try:
+        x, y = (float(v) for v in args.streamline.split(","))
+    except ValueError as error:
+        raise ValueError(f'--streamline {args.streamline!r} is no place; write it as "x,y".') from error
+    psi = _psi_of(run_, review)
+    if psi is None:
+        raise ValueError(f"{run_.name} holds maxima, which have no streamlines; choose instants or means.")
+    track = streamlines(psi(index), run_.mesh.to_local(np.array([[x, y]]))).tracks[0]
+    if track.ended == "outside the water":
+        raise ValueError(f"{x:.1f} E, {y:.1f} N lies outside the water; give a place in it.")
+    return "streamline", track.xy
 
 
 def _sections(args, review, run_, lines, frames) -> int:

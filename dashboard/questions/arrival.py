@@ -11,7 +11,7 @@ from hydro.cautions import OWED
 
 from .. import text
 from ..raster import View
-from ..views import query_log, table
+from ..views import observed, query_log, table
 from ..views import ribbon as strip
 from ..views.scene import PointMark, Scene
 from . import common
@@ -59,7 +59,8 @@ class Arrival(Question):
             PointMark("query", np.array(f.at), label=str(i), subject=str(i) == chosen)
             for i, f in enumerate(self.findings(desk), 1) if f.at is not None
         ]
-        return replace(scene, points=tuple(marks))
+        points, lines, tags = observed.marks(desk.studies.observed(desk.run_id), desk.units)
+        return replace(scene, points=(*marks, *points), lines=(*scene.lines, *lines), tags=(*scene.tags, *tags))
 
     def view(self, desk: Desk):
         number = desk.choices.subject
@@ -69,7 +70,9 @@ class Arrival(Question):
         return None
 
     def caption(self, desk: Desk, scene: Scene, view: View) -> str:
-        return f"<i>Plate 1.</i> Numbers stand where a finding has a place. {common.water_words(desk, scene)}"
+        rings = " Rings: model minus observed." if any(p.kind == "rest" for p in scene.points) else ""
+        tracks = " Dotted: a drogue; solid: its parcel in the model." if any(p.kind == "drogue" for p in scene.points) else ""
+        return f"<i>Plate 1.</i> Numbers stand where a finding has a place.{rings}{tracks} {common.water_words(desk, scene)}"
 
     def key_html(self, desk: Desk) -> str:
         return common.ramp_key(desk)
@@ -92,14 +95,14 @@ class Arrival(Question):
 
         lines = [
             table.Line(
-                ((str(i), ""), (f.grade, _ask(i) if asks else ""), (told(f.sentence), f"{told(f.meaning)} <b>{told(f.question)}</b>")),
+                ((str(i), ""), (f.grade, ""), (told(f.sentence), f"{told(f.meaning)} <b>{told(f.question)}</b>{_ask(i) if asks else ''}")),
                 str(i) == desk.choices.subject, ("subject", str(i)), f"Show finding {i}",
             )
             for i, f in enumerate(self.findings(desk), 1)
         ]
         columns = (table.Column("No.", figure=False), table.Column("Do", figure=False), table.Column("Finding", figure=False))
         findings = table.Table("Findings", "gravest first", "Findings of the audit, gravest first", columns, lines, "Nothing found.")
-        return {"table": table.html(findings), "body": self.queries(desk)}
+        return {"table": table.html(findings), "body": observed.html(desk.studies.observed(desk.run_id), desk.units) + self.queries(desk)}
 
     def queries(self, desk: Desk) -> str:
         """The log of queries, and a form to write one; empty without a review to keep them in."""
@@ -128,6 +131,6 @@ class Arrival(Question):
 
 def _ask(number: int) -> str:
     return (
-        f'<button type="button" class="word" data-do="raise" data-value="{number}" data-key="raise-{number}" '
+        f' <button type="button" class="word" data-do="raise" data-value="{number}" data-key="raise-{number}" '
         f'aria-label="make it a query: finding {number}">make it a query</button>'
     )

@@ -90,7 +90,7 @@ class Sections(Question):
         if other is not None:
             second = common.section_html(desk, other[1], ledger, None, self.cautions(desk))
             drawn += second.replace("<h2>Section", f"<h2>{text.safe(other[0])}", 1)
-        return {"section": drawn, "table": self.table(desk), "body": "" if desk.look.hall else stations.ends_form(desk, ends)}
+        return {"section": drawn, "table": self.table(desk), "body": "" if desk.look.hall else stations.along_html(desk, ends) + stations.ends_form(desk, ends)}
 
     def beside(self, desk: Desk) -> tuple[str, common.Ends] | None:
         """The second section with its name, if one is chosen."""

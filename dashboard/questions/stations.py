@@ -7,10 +7,13 @@ from collections.abc import Hashable, Mapping
 import numpy as np
 
 from hydro.section import Section, SectionFigures, cut, section_figures
+from hydro.section.profile import Profile, profile, thalweg
+from hydro.tracks import streamlines
 
 from .. import text
 from ..choices import COURSES
 from ..reading import Ends
+from ..views import profile as profile_view
 from ..views import ribbon as strip
 from . import common
 from .base import Desk
@@ -68,6 +71,40 @@ def rows(desk: Desk, line: Section) -> list[dict[str, object]]:
     }
     table = zip(*columns.values(), strict=True)
     return [{name: None if np.isnan(v) else float(v) for name, v in zip(columns, row, strict=True)} for row in table]
+
+
+def along_html(desk: Desk, ends: Ends) -> str:
+    """The profile along the thalweg, or along the streamline through the middle of the line's water, HTML."""
+    offered = {"thalweg": "the thalweg", "streamline": "the streamline through the middle of the line"}
+    chooser = common.chooser("along", desk.choices.along, offered, "the line of the profile")
+    title = f'<h2>Profile along {chooser} <span class="beside">downstream to the right; dashed: head; dotted: critical depth</span></h2>'
+    try:
+        found = _along(desk, ends)
+    except ValueError as error:
+        return f'{title}<p class="figures">{text.safe(error)}</p>'
+    u, loss = desk.units, found.loss()
+    words = f"{u.quantity(float(found.distance[-1]), 'm')} long"
+    words += f"; head falls by {u.quantity(loss, 'm')} over it" if loss is not None else ""
+    if found.jumps:
+        words += f"; the flow passes from Froude above 1 to below at {text.listed(u.quantity(j, 'm') for j in found.jumps)}"
+    if desk.choices.along == "streamline":
+        words += ". Along one streamline head may rise in eddies and shear layers"
+    drawn = profile_view.draw(found, max(desk.sizes.ribbon, 280), desk.look.label_px, u)
+    return f'{title}{drawn}<p class="figures">{words}.</p>'
+
+
+def _along(desk: Desk, ends: Ends) -> Profile:
+    ledger = desk.reading.ledger(desk.run_id, desk.moment)
+    frame, centre = ledger.frame, desk.reading.reach(desk.run_id).centre_line
+    assert centre is not None  # one is proposed where the review has none
+    if desk.choices.along == "thalweg":
+        return profile(frame, thalweg(frame, centre, max(centre.length / 200, 1.0)), settings=desk.run.settings)
+    line, _ = measured(desk, ends)
+    wet = np.flatnonzero(line.wet)
+    if not wet.size:
+        raise ValueError("the line crosses no water, so no streamline starts on it; move its ends.")
+    track = streamlines(ledger.sf, line.xy[wet[len(wet) // 2]].mean(axis=0)[None]).tracks[0]
+    return profile(frame, track.xy, settings=desk.run.settings)
 
 
 def ends_form(desk: Desk, ends: Ends) -> str:

@@ -193,3 +193,13 @@ def test_a_review_is_begun_round_a_file_with_a_centre_line_that_follows_the_bend
     assert proposed.length > 0.9 * drawn.length
     assert main(["begin", str(tmp_path / "new"), LOW]) == 2
     assert "exists already" in capsys.readouterr().err
+
+
+def test_the_thalweg_loses_as_much_head_as_the_streamline_beside_it(capsys):
+    """Source: both lie in one river from end to end; their losses of head agree within a tenth."""
+    bankfull = str(SAMPLE / "results" / "existing_bankfull.nc")
+    (deepest,) = answer(capsys, "section", bankfull, "--thalweg")["profiles"]
+    (stream,) = answer(capsys, "section", bankfull, "--streamline", "52029.6,31004.5")["profiles"]
+    assert deepest["head_lost_m"] == pytest.approx(stream["head_lost_m"], rel=0.1)
+    assert "outside the water" in refused(capsys, "section", bankfull, "--streamline", "1,1")
+    assert "write it as" in refused(capsys, "section", bankfull, "--streamline", "here")

@@ -13,8 +13,11 @@ from dashboard import theme
 from dashboard.raster import View
 from dashboard.units import Units
 from dashboard.views import map as drawing
-from dashboard.views import marks, ribbon, section, shore, strokes, table, tags
+from dashboard.views import marks, observed, ribbon, section, shore, strokes, table, tags
+from dashboard.views import profile as lengthwise
 from dashboard.views.scene import PointMark, Scene, StructureMark, Tag, ZoneMark
+from hydro.observations import Observed
+from hydro.section.profile import Profile
 from tests.builders import channel, frame_of, with_hole
 
 VIEW = View(0.0, 0.0, 100.0, 800, 400)
@@ -216,3 +219,30 @@ def test_labels_keep_off_the_marks_that_the_page_lays_over_the_map():
     free = drawing.draw(Scene(tags=(tag,)), VIEW, theme.look("day")).texts
     kept = drawing.draw(Scene(tags=(tag,), buttons=((free["x"][0], free["y"][0]),)), VIEW, theme.look("day")).texts
     assert np.hypot(kept["x"][0] - free["x"][0], kept["y"][0] - free["y"][0]) > 1.0
+
+
+def test_a_profile_draws_bed_water_head_and_a_mark_at_every_jump():
+    d = np.linspace(0, 100, 51)
+    bed = np.where(d < 50, 2.0, 1.0)
+    found = Profile(d, np.column_stack([d, d]), bed, np.full(51, 1.0), bed + 1, bed + 0.4, bed + 1.2, np.ones(51), np.full(51, 0.3), (50.0,))
+    drawn = lengthwise.draw(found, 700, 13.0, Units())
+    tree = ElementTree.fromstring(drawn)
+    lines = [e for e in tree.iter() if e.tag.endswith("polyline")]
+    assert len(lines) == 4  # bed, surface, head, critical depth
+    (mark,) = [e for e in tree.iter() if e.get("class") == "subject"]
+    right = 700 - 5.2 * 13
+    assert float(mark.get("d", "")[1:].split()[0]) + 5 == pytest.approx(right / 2, abs=0.5)
+    surface = np.array([[float(v) for v in p.split(",")] for p in lines[1].get("points", "").split()])
+    assert surface[0, 1] < surface[-1, 1]  # it falls downstream
+
+
+def test_a_dry_profile_draws_nothing():
+    nothing = np.full(3, np.nan)
+    found = Profile(np.arange(3.0), np.zeros((3, 2)), np.ones(3), np.zeros(3), nothing, nothing, nothing, np.zeros(3), nothing, ())
+    assert lengthwise.draw(found, 700, 13.0, Units()) == ""
+
+
+def test_observed_marks_stand_on_the_map_with_their_difference():
+    found = [Observed("marks", "Marks", "made up", "m", {}, np.array([[1.0, 2.0]]), np.array([-0.04]))]
+    points, lines, tags_ = observed.marks(found, Units())
+    assert points[0].kind == "rest" and tags_[0].text.replace("\u00a0", " ") == "\u22120.040 m" and not lines
