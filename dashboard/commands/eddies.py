@@ -46,7 +46,8 @@ def run(args: argparse.Namespace) -> int:
 
 
 def _all(args: argparse.Namespace, run, reach) -> int:
-    from hydro.ledger import follow, follow_travelling, lumped_area
+    from hydro.ledger import FrameReader, follow, follow_travelling, lumped_area
+    from hydro.ledger.report import balance_words, frame_json
 
     done, stopped = _read(args, run, reach, range(run.n_frames), sensitivity=True)
     if not done:
@@ -59,8 +60,14 @@ def _all(args: argparse.Namespace, run, reach) -> int:
     )
     moved = follow_travelling([s.travelling for s in done], np.array([s.seconds for s in done]))
     done = [s.with_zones(z).with_travelling(t) for s, z, t in zip(done, zones, moved, strict=True)]
-    _write(args, run, done, lives=lives, stopped_after=len(done) if stopped else None)
+    mean = None
+    if not stopped and "instant" in run.times.kinds and run.n_frames > 1:
+        mean = FrameReader(run, reach=reach, sensitivity=False).mean(0.0, float(run.times.seconds[-1]))
+    _write(args, run, done, lives=lives, stopped_after=len(done) if stopped else None, mean=mean)
     _life_table(lives, done, args)
+    if mean is not None:
+        for words in balance_words(frame_json(run, mean)):
+            print(f"  In the mean of the run: {words}.", file=_out(args))
     if stopped:
         print(f"leewater: stopped; {len(done)} of {run.n_frames} frames are written.", file=sys.stderr)
         return 2

@@ -299,6 +299,7 @@ def _left_out(ledger: FrameLedger, unlisted: int) -> str:
     parts = []
     if unlisted > 0:
         parts.append(f"{unlisted} smaller {'eddy is' if unlisted == 1 else 'eddies are'} not listed at this width")
+    parts += [text.safe(note) for note in ledger.zones.notes]
     small, cut = len(ledger.zones.small), len(ledger.zones.open_to_boundary)
     if small:
         parts.append(f"{text.count(small, 'region')} under the noise or the floor {'is' if small == 1 else 'are'} left out")

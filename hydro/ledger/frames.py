@@ -79,6 +79,7 @@ class FrameReader:
                 "thresholds"
             )
             found = replace(found, notes=(*found.notes, note))
+        found = replace(found, notes=(*found.notes, *_bare_piers(found, self.reach)))
         length = window[1] - window[0] if window else frame.interval_s
         if frame.kind == "mean" and length:
             found = replace(found, zones=tuple(with_periods(z, length, self.settings) for z in found.zones))
@@ -104,6 +105,17 @@ class FrameReader:
         if centre is not None and self._gauges is None:
             self._gauges = Gauges(frame, centre, max(centre.length / self.settings["automatic_sections"], 1.0))
         return self._gauges
+
+
+def _bare_piers(found: ZoneSet, reach: Reach | None) -> list[str]:
+    """Piers without an eddy, and whether this mesh has them as something that water passes through."""
+    out = []
+    for pier in reach.structures if reach else ():
+        if pier.kind != "pier" or any(zone.name.startswith(pier.name) for zone in found.zones):
+            continue
+        how = "" if pier.represented_as in ("hole", "dry") else f"; it is not solid in this mesh: water passes through it ({pier.represented_as})"
+        out.append(f"no eddy is kept behind {pier.name}{how}")
+    return out
 
 
 def with_periods(zone: Zone, window_s: float, settings: Settings) -> Zone:

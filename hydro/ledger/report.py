@@ -30,6 +30,7 @@ SCHEMA = "leewater/eddies/1"
 def ledger_json(
     run: Run, frames: Iterable[FrameLedger | FrameSummary], settings: Settings | None = None, *,
     lives: Iterable[Life] = (), instants: Mapping[str, Instants] | None = None, stopped_after: int | None = None,
+    mean: FrameLedger | None = None,
 ) -> dict[str, Any]:
     """The ledger of a run as a dict of schema leewater/eddies/1.
 
@@ -41,6 +42,7 @@ def ledger_json(
     lives : the eddies followed through those frames; the zones' ids are theirs
     instants : for the zones of a mean, by id, what the instants of its window say
     stopped_after : frames done, where the work was stopped before its end
+    mean : the mean flow of the whole run, for its balance: single moments hold no undeclared sources
     """
     entries = [f.values if isinstance(f, FrameSummary) else frame_json(run, f) for f in frames]
     known = instants or {}
@@ -58,6 +60,8 @@ def ledger_json(
     eddies = [_plain(asdict(life)) for life in lives]
     if eddies:
         whole["eddies"] = eddies
+    if mean is not None:
+        whole["balance_of_the_mean"] = _balance(run, mean.balance)
     if stopped_after is not None:
         whole["stopped_after_frames"] = stopped_after
     return whole

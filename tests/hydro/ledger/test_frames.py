@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import re
 from pathlib import Path
 
 import geopandas
@@ -9,6 +10,7 @@ import numpy as np
 import pytest
 from distributed import LocalCluster
 
+from dashboard.cli import main
 from hydro.ledger import FrameReader, Job, instants_of, ledger_json, read_all, write_tables
 from hydro.review import open_review
 from hydro.run import Run
@@ -98,3 +100,21 @@ def test_bands_along_banks_that_only_fill_are_no_eddies(flood):
     entry = FrameReader(run, reach=reach, sensitivity=False).frame(30)
     assert all(z.max_reverse_speed_m_s > 0.1 for z in entry.zones.zones)
     assert any(s.why == "the field itself does not turn back there" for s in entry.zones.small)
+
+
+def test_the_sample_answers_for_a_pier_that_water_passes_through(flood):
+    """Pier 2 of the existing design is drag in the mesh (sample_reach/runs.py): no eddy, and the reason said."""
+    run, reach = flood
+    notes = FrameReader(run, reach=reach, sensitivity=False).frame(30).zones.notes
+    assert any("no eddy is kept behind Pier 2; it is not solid in this mesh" in note for note in notes)
+
+
+def test_the_sample_says_that_the_flood_cannot_follow_a_shedding_eddy_and_the_burst_counts_its_periods(capsys):
+    """Frames of the flood are 10 s apart, of the burst 1 s; the wake sheds every 12 to 16 s (Strouhal 0.2 as plausibility only)."""
+    assert main(["eddies", str(FLOOD), "--all"]) == 0
+    said = capsys.readouterr().out
+    assert "Pier 1" in said and "not followed: frames too far apart" in said
+    assert main(["eddies", str(SAMPLE / "results" / "existing_burst.nc"), "--mean", "0", "90"]) == 0
+    periods = re.search(r"([\d.]+) periods of ([\d.]+) s \(measured\)", capsys.readouterr().out)
+    assert periods is not None
+    assert 5 < float(periods[1]) < 12 and 8 < float(periods[2]) < 18
