@@ -43,7 +43,8 @@ class Figure:
 
     ``value`` is SI (NaN or None: not available). ``low`` and ``high`` bound its sensitivity: a
     reading of this file only, not the model's error. ``flags`` are short words ("under-resolved");
-    ``cautions`` are ids of :mod:`hydro.cautions`.
+    ``cautions`` are ids of :mod:`hydro.cautions`. ``decimals`` is for levels, chainages and counts, whose zero
+    says nothing of their precision: they are printed to so many places, not to so many digits.
     """
 
     quantity: str
@@ -57,6 +58,7 @@ class Figure:
     source: Source | None = None
     note: str = ""
     extra: Mapping[str, object] = field(default_factory=dict)
+    decimals: int | None = None
 
     def as_dict(self) -> dict[str, object]:
         """Plain values for JSON, full digits; what is not a number is None."""

@@ -4,7 +4,8 @@ from __future__ import annotations
 
 from ..automatic import automatic_choices
 from ..figure import Figure
-from ..review import Review
+from ..provenance import file_hash
+from ..review import Document, Review
 from ..review_log import told
 from ..run import Run
 from ..settings import REGISTRY
@@ -42,7 +43,7 @@ def documents(review: Review) -> Part:
     tables = (
         Table(
             "documents", "Documents received", ("Document", "Version", "Date", "Received", "SHA-256"),
-            tuple((d.name, d.version, d.date, d.received, d.sha256[:16]) for d in got),
+            tuple((d.name, d.version, d.date, d.received, _document_hash(review, d)) for d in got),
         ),
         Table(
             "documents-awaited", "Documents asked for and not received", ("Document", "Version", "Date"),
@@ -51,6 +52,17 @@ def documents(review: Review) -> Part:
     )
     say = "" if review.contents.documents else "The review lists no documents; name those received under [[documents]]."
     return Part("documents", "Documents", (say,) if say else (), tables)
+
+
+def _document_hash(review: Review, document: Document) -> str:
+    """What identifies a document: the hash of its file in the review, else the one entered."""
+    path = review.folder / document.file
+    if not document.file or not path.is_file():
+        missing = f"{document.file} is not in the review; " if document.file else ""
+        return missing + (document.sha256[:16] or "hash not available")
+    found = file_hash(path)
+    changed = document.sha256 and document.sha256 != found
+    return f"{found[:16]}, not the {document.sha256[:16]} that was entered" if changed else found[:16]
 
 
 def runs(review: Review, opened: dict[str, Run]) -> Part:
@@ -63,7 +75,7 @@ def runs(review: Review, opened: dict[str, Run]) -> Part:
         start = "undated" if t.instants is None else f"{str(t.instants[0])[:19]}Z"
         rows.append((
             entry.label, entry.design, entry.event, "/".join(sorted(set(t.kinds))),
-            Figure("frames", float(len(t)), ""), when, start, run.hash[:16],
+            Figure("frames", float(len(t)), "", decimals=0), when, start, run.hash[:16],
         ))
         notes += [(entry.label, n.text, n.variable) for n in run.notes]
     first = opened[review.runs[0].id] if review.runs else None

@@ -19,6 +19,7 @@ from ..run import Run
 from . import basis
 from . import review_parts as parts
 from .eddies import Reading, eddies, read
+from .in_time import InTime, persistence, read_in_time
 from .model import Part, Record
 
 LIMITS = (
@@ -57,6 +58,16 @@ class Material:
         return [r for r in self.readings if r.run.n_frames == 1]
 
     @cached_property
+    def in_time(self) -> list[InTime]:
+        """Runs of several frames, read through."""
+        out = []
+        for r in self.readings:
+            if sum(kind != "maximum" for kind in r.run.times.kinds) > 1:
+                self.progress(f"following the eddies of {r.entry.label}")
+                out.append(read_in_time(r))
+        return out
+
+    @cached_property
     def changes(self) -> list[tuple[Reading, Reading, Change]]:
         """Every pair of designs compared."""
         self.progress("comparing designs")
@@ -86,6 +97,7 @@ PARTS: dict[str, Callable[[Material], Part]] = {
     "arrival": lambda m: parts.arrival(m.review, m.readings),
     "queries": lambda m: parts.asked(m.review),
     "eddies": lambda m: eddies(m.readings),
+    "persistence": lambda m: persistence(m.in_time),
     "sections": lambda m: parts.sections(m.readings),
     "change": lambda m: parts.change(m.changes),
     "checks": lambda m: parts.checks(m.review, m.readings, m.changes),
@@ -147,7 +159,8 @@ def _inputs(material: Material) -> list[dict[str, Any]]:
     out = [
         {"kind": "run", "id": e.id, "file": ", ".join(e.files), "sha256": material.runs[e.id].hash} for e in review.runs
     ]
-    for name in ("review.toml", review.contents.lines):
+    documents = [d.file for d in review.contents.documents if d.received and d.file]
+    for name in ("review.toml", review.contents.lines, *documents):
         if (review.folder / name).is_file():
             out.append({"kind": "file", "id": name, "file": name, "sha256": file_hash(review.folder / name)})
     return out

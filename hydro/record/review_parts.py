@@ -28,6 +28,8 @@ _SECTION = (
     ("width_m", "m"), ("mean_velocity_m_s", "m/s"), ("froude", "-"), ("mean_level_m", "m"), ("head_m", "m"),
 )
 
+_LEVELS = ("mean_level_m", "head_m")
+
 
 def arrival(review: Review, readings: Sequence[Reading]) -> Part:
     """Findings of the audit, run by run. Not a verdict."""
@@ -61,7 +63,8 @@ def sections(readings: Sequence[Reading]) -> Part:
             section = cut(r.ledger.frame, np.asarray(line.geometry.coords)[:, :2], centre_line=r.reach.centre_line)
             found = asdict(section_figures(section, sf=r.ledger.sf, settings=r.run.settings))
             rows.append((line.name, *(
-                Figure(name, found[name], unit, cautions=("section-discharge",), source=at, note="not available") for name, unit in _SECTION
+                Figure(name, found[name], unit, cautions=("section-discharge",), source=at, note="not available",
+                    decimals=3 if name in _LEVELS else None) for name, unit in _SECTION
             )))
         columns = ("Section", "Q, m3/s", "Read within, m3/s", "Q by psi, m3/s", "Q mid-section, m3/s", "Area, m2", "Width, m", "Mean speed, m/s", "Froude", "Level, m", "Head, m")
         tables.append(Table(f"sections-{r.entry.id}", f"Sections, {r.entry.label}", columns, tuple(rows)))
@@ -97,7 +100,7 @@ def change(compared: Sequence[tuple[Reading, Reading, Change]]) -> Part:
         tables.append(Table(f"changes-{key}", f"What changes, {label}", ("Finding",), tuple((f.sentence,) for f in c.findings)))
         if c.levels is not None:
             rows = tuple(
-                (Figure("chainage", float(s), "m"), Figure("rise", float(d), "m", cautions=("change",)), "yes" if o else "in the works")
+                (Figure("chainage", float(s), "m", decimals=0), Figure("rise", float(d), "m", cautions=("change",), decimals=3), "yes" if o else "in the works")
                 for s, d, o in zip(c.levels.chainage, c.levels.rise, c.levels.outside, strict=True)
             )
             tables.append(Table(f"afflux-{key}", f"Rise of the width-mean level, {label}", ("Chainage, m", "Rise, m", "Outside the works"), rows))

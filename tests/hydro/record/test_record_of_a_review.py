@@ -12,7 +12,7 @@ import pytest
 
 from hydro.provenance import file_hash
 from hydro.record.build import PARTS, Material, build_record
-from hydro.record.model import as_json
+from hydro.record.model import as_json, cell_text
 from hydro.record.verify import verify
 from hydro.record.write import write_record
 from hydro.review import SAMPLE, open_review
@@ -26,6 +26,7 @@ def folder(tmp_path_factory):
     where = tmp_path_factory.mktemp("desk") / "review"
     (where / "results").mkdir(parents=True)
     shutil.copy(SAMPLE / "lines.gpkg", where)
+    shutil.copytree(SAMPLE / "documents", where / "documents")
     shutil.copy(SAMPLE / "results" / f"{RUN}.nc", where / "results")
     text = (SAMPLE / "review.toml").read_text(encoding="utf-8")
     head, *runs = re.split(r"(?m)^\[\[runs\]\]\n", text)
@@ -109,3 +110,26 @@ def test_an_unknown_part_lists_the_known_ones(folder, tmp_path):
     path.write_text(path.read_text().replace('"arrival"', '"magic"'))
     with pytest.raises(ValueError, match="there is no part 'magic'; the parts are documents"):
         build_record(Material(open_review(copy)))
+
+
+def test_documents_received_and_awaited_stand_apart_each_with_what_identifies_it(written):
+    received, awaited = next(p for p in written.parts if p.id == "documents").tables
+    note = file_hash(SAMPLE / "documents" / "model_note.txt")[:16]
+    assert [row[-1] for row in received.rows] == [note, "hash not available"]
+    assert len(awaited.rows) == 2 and not {row[0] for row in awaited.rows} & {row[0] for row in received.rows}
+    assert all(row[0] in written.front["Still awaited"] for row in awaited.rows)
+
+
+def test_one_changed_byte_of_a_received_document_is_named(folder, written, tmp_path):
+    moved = tmp_path / "review"
+    shutil.copytree(folder, moved)
+    note = moved / "documents" / "model_note.txt"
+    note.write_bytes(note.read_bytes().replace(b"0.045", b"0.035"))
+    found = verify(moved / "record", open_review(moved), _again)
+    assert any("documents/model_note.txt" in sentence for sentence in found.inputs)
+
+
+def test_levels_are_printed_to_the_millimetre_however_high_the_datum(written):
+    sections = next(p for p in written.parts if p.id == "sections").tables[0]
+    levels = [cell_text(row[sections.columns.index("Level, m")]) for row in sections.rows]
+    assert levels and all(re.fullmatch(r"\d+\.\d{3}", text) for text in levels)
