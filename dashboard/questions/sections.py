@@ -115,7 +115,8 @@ class Sections(Question):
         note = footnote(ids, "section-discharge")
         rows = (
             (f"Discharge by the field{note}", "discharge_m3_s", "m3/s", 3),
-            ("Error of reading it", "discharge_error_m3_s", "m3/s", 2), ("Discharge by psi", "discharge_psi_m3_s", "m3/s", 3),
+            (f"Error of reading it{footnote(ids, 'sensitivity')}", "discharge_error_m3_s", "m3/s", 2),
+            ("Discharge by psi", "discharge_psi_m3_s", "m3/s", 3),
             ("Discharge, mid-section", "discharge_mid_section_m3_s", "m3/s", 3),
             ("Discharge, mean-section", "discharge_mean_section_m3_s", "m3/s", 3),
             ("Width of water", "width_m", "m", 3), ("Area", "area_m2", "m2", 3), ("Hydraulic radius A/P", "hydraulic_radius_m", "m", 3),
