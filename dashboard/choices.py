@@ -26,13 +26,15 @@ class Choices:
     world (x, y) of its left and right end, ``beside`` the name of a second one to compare it with, ``course``
     the figure of it that the ribbon shows, ``along`` the line of the profile, and ``view`` the world centre and
     width of the map in m, None where the question chooses; ``parcel`` is the world (x, y) where one is let go,
-    and when, s. ``run`` and ``against`` are ids of the review, ``subject`` names what the map and the sentence speak of. ``compared``
-    says how two runs stand on one map, ``divider`` where the swipe's divider stands, as a share of its width.
+    and when, s. ``run``, ``against`` (compared with) and ``alongside`` (on a map beside) are ids of the review,
+    ``subject`` names what the map and the sentence speak of. ``compared`` says how two runs stand on one map,
+    ``divider`` where the swipe's divider stands, as a share of its width.
     """
 
     question: str = "eddies"
     run: str = ""
     against: str = ""
+    alongside: str = ""
     seconds: float | None = None
     window: tuple[float, float] | None = None
     subject: str = ""

@@ -63,6 +63,7 @@ class Page:
         self.file: File | None = None  # to be handed to the reader with the next drawing
         self.files_sent = 0
         self.map = MapFigure((0.0, 0.0, 100.0, 54.0), moved=self._moved, pressed=self._pressed)
+        self.twin = MapFigure((0.0, 0.0, 100.0, 54.0), moved=self._moved, beside=self.map)
         self.wire = Wire(self.hear)
         self.screen = Screen()
         self._scheduled = False
@@ -234,6 +235,12 @@ class Page:
         else:
             x, y = typed_place(form)  # type: ignore[arg-type]
             self._let_go(self.desk().run.mesh.to_local(np.array([x, y])))
+
+    def on_alongside(self, run_id: str) -> None:
+        """Another run on a map beside; empty takes it away."""
+        if run_id and run_id not in [id_ for id_, _ in self.reading.matter().runs]:
+            raise ValueError(f"there is no run {run_id!r} in this review.")
+        self.choose(alongside=run_id)
 
     def on_pack(self, kind: str) -> None:
         self.studies.packs.make(kind)

@@ -9,7 +9,7 @@ from typing import TYPE_CHECKING, Any
 
 import numpy as np
 
-from . import text
+from . import pair, text
 from .choices import UNITS
 from .questions import QUESTIONS, saving
 from .questions.base import Desk
@@ -68,8 +68,10 @@ class Screen:
         question, desk = page.question, page.desk()
         if self._dressed != desk.look:
             page.map.dress(desk.look)
+            page.twin.dress(desk.look)
             self._dressed = desk.look
         self._part("map", due, lambda: self._map(page))
+        self._part("twin", due, lambda: self._twin(page))
         desk = page.desk(self._view(page))
         self._part("answer", due, lambda: self._put("answer", question.sentence(desk)))
         for name, make in (
@@ -142,6 +144,26 @@ class Screen:
         if missing is not None:
             raise missing
 
+    def _twin(self, page: Page) -> None:
+        """The map of the run that stands beside: the same view, section and moment."""
+        desk = page.desk(self._view(page))
+        beside = pair.other(desk) if page.question.has_map else None
+        self._put("twin", "")
+        self._put("which", "")
+        if beside is None or desk.view is None:
+            return
+        tube = self._scene.water.tube_m3_s if self._scene is not None and self._scene.water is not None else 0.0
+        self._put("which", pair.words(desk, tube))
+        self._put("twin", pair.words(beside, 0.0))
+        top = desk.reading.top(desk.run_id, desk.choices.shade)
+        scene = pair.alike(page.question.scene(beside), top)
+        page.twin.turn_to(desk.view)
+        page.twin.show(drawing.draw(scene, desk.view, desk.look), *picture_of(scene, beside, desk.view))
+        self._put("twin", pair.words(beside, scene.water.tube_m3_s if scene.water is not None else 0.0))
+        missing = self._missing(beside)
+        if missing is not None:
+            raise missing
+
     def _parcel(self, desk: Desk, scene: Scene) -> tuple[Scene, Working | None]:
         """The scene with the parcel that was let go, and what it waits for; what is wrong with it is said in its place."""
         place, parcels = desk.choices.parcel, desk.studies.parcels
@@ -171,7 +193,9 @@ class Screen:
             layers = desk.studies.site.layers(desk.run_id, wide)
         except Working as working:
             return working
-        page.map.lay(backdrop.colours(layers, desk.look.palette), wide)
+        colours = backdrop.colours(layers, desk.look.palette)
+        for figure in (page.map, page.twin):
+            figure.lay(colours, wide)
         self._laid = wanted
         return None
 
@@ -271,7 +295,7 @@ class Screen:
             "mode": choices.mode, "view": "hall" if choices.hall else "desk", "question": choices.question,
             "query": choices.query(), "push": page.push, "title": f"{page.question.word} \u00b7 Leewater",
             "stop": "yes" if self.at_stop else "", "working": "yes" if self.said else "no", "ends": None, "time": None,
-            "key": self._key, "arrangement": "map" if page.question.has_map else "words", "file": page.file_to_send(),
+            "key": self._key, "pair": "yes" if self.slots.get("twin") else "", "arrangement": "map" if page.question.has_map else "words", "file": page.file_to_send(),
         }
         if all(isinstance(key, tuple) and key[0] == "followed" for key in self.waits.get("map", ())):
             state["seen"] = page.sent
@@ -332,6 +356,10 @@ def _foot(page: Page, desk: Desk, runs: tuple[tuple[str, str], ...]) -> str:
     options = "".join(
         f'<option value="{text.safe(i)}"{" selected" if i == desk.run_id else ""}>{text.safe(label)}</option>' for i, label in runs
     )
+    others = '<option value="">no other run</option>' + "".join(
+        f'<option value="{text.safe(i)}"{" selected" if i == choices.alongside else ""}>{text.safe(label)}</option>'
+        for i, label in runs if i != desk.run_id
+    )
     units = "".join(f'<option{" selected" if u == choices.units else ""}>{u}</option>' for u in UNITS)
     night = choices.mode == "night"
     stops = len(page.stops)
@@ -339,6 +367,10 @@ def _foot(page: Page, desk: Desk, runs: tuple[tuple[str, str], ...]) -> str:
     walk = (
         f"<div><span>{where}</span> {word('step', '-1', 'before', page.stop in (None, 0))} "
         f"{word('step', '1', 'next', page.stop == stops - 1)}</div>" if stops else ""
+    )
+    beside = (
+        f'<div><label for="alongside">Beside it</label> <select class="word" id="alongside" data-choose="alongside">{others}</select></div>'
+        if len(runs) > 1 and choices.question in pair.PAIRED else ""
     )
     kept = (
         '<details><summary class="word">Keep this view</summary><form data-send="keep"><label for="keep-sentence">What you will '
@@ -350,6 +382,6 @@ def _foot(page: Page, desk: Desk, runs: tuple[tuple[str, str], ...]) -> str:
         f"<div>{word('hall', 'no' if choices.hall else 'yes', 'Desk view' if choices.hall else 'Hall view')} "
         f"{word('mode', 'day' if night else 'night', 'Day' if night else 'Night')}</div>"
         f'<div><label for="units">Units</label> <select class="word" id="units" data-choose="units">{units}</select></div>'
-        f'<div><label for="run">Run</label> <select class="word" id="run" data-choose="run">{options}</select></div>'
+        f'<div><label for="run">Run</label> <select class="word" id="run" data-choose="run">{options}</select></div>{beside}'
         f"{kept if page.reading.matter().review is not None else ''}"
     )

@@ -205,6 +205,7 @@ def page_for(studies: Studies) -> pn.Template:
     page = Page(studies, location.search if location is not None else "", later)
     template = pn.Template((WEB / "index.html").read_text(encoding="utf-8"))
     template.add_panel("map", pn.pane.Bokeh(page.map.figure, sizing_mode="stretch_both"))
+    template.add_panel("twin", pn.pane.Bokeh(page.twin.figure, sizing_mode="stretch_both"))
     template.add_panel("wire", page.wire)
     template.add_variable("slots", {**dict.fromkeys(_SLOTS, ""), **page.screen.slots})
     document.title = "Leewater"
@@ -214,7 +215,7 @@ def page_for(studies: Studies) -> pn.Template:
 
 _SLOTS = (
     "title", "rail", "foot", "asks", "answer", "status", "key", "scale", "alternative", "caption", "ribbon", "progress",
-    "section", "table", "body", "cautions", "places", "parcel", "photograph",
+    "section", "table", "body", "cautions", "places", "parcel", "photograph", "which", "twin",
 )
 
 

@@ -32,16 +32,23 @@ class MapFigure:
         Called with the local (west, south, east, north) after the reader has panned or zoomed.
     pressed : callable, optional
         Called with the local x and y of a press on the map.
+    beside : MapFigure, optional
+        Another map, whose window this one shares.
     """
 
-    def __init__(self, bounds: tuple[float, float, float, float], *, moved: Callable | None = None, pressed: Callable | None = None) -> None:
+    def __init__(
+        self, bounds: tuple[float, float, float, float], *, moved: Callable | None = None, pressed: Callable | None = None,
+        beside: MapFigure | None = None,
+    ) -> None:
         west, south, east, north = bounds
         size = max(east - west, north - south)
         self.x, self.y = (
             Range1d(start=low, end=high, min_interval=1.0, max_interval=_FAR * size) for low, high in ((west, east), (south, north))
         )
+        if beside is not None:
+            self.x, self.y = beside.x, beside.y
         self.figure = figure(
-            name="map-figure", x_range=self.x, y_range=self.y, sizing_mode="stretch_both", tools=[], toolbar_location=None,
+            name="map-figure" if beside is None else "twin-figure", x_range=self.x, y_range=self.y, sizing_mode="stretch_both", tools=[], toolbar_location=None,
             min_border=0, x_axis_location="below", output_backend="canvas",
         )
         pan, wheel = PanTool(), WheelZoomTool(zoom_on_axis=False)

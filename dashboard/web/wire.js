@@ -55,9 +55,10 @@ class Desk {
       this.shown[name] = html;
       for (const place of document.querySelectorAll(`[data-slot="${name}"]`)) this.put(place, html);
     }
+    const paired = state.pair !== this.state.pair;
     this.state = state;
     if (state.seen === this.sent) this.release();
-    for (const name of ["mode", "view", "arrangement", "question", "working", "stop", "key"]) root.dataset[name] = state[name] ?? "";
+    for (const name of ["mode", "view", "arrangement", "question", "working", "stop", "key", "pair"]) root.dataset[name] = state[name] ?? "";
     document.title = state.title;
     if (state.file && state.file.number !== this.kept) {
       this.kept = state.file.number;
@@ -67,6 +68,7 @@ class Desk {
     this.time(state);
     this.divider();
     this.overlay();
+    if (paired) setTimeout(() => this.measure()); // the maps have another size now
   }
 
   put(place, html) {
@@ -308,6 +310,7 @@ class Desk {
     new ResizeObserver(() => {
       this.overlay();
       this.quiet(map);
+      this.quiet(document.getElementById("twin"));
     }).observe(map);
     this.quiet(map);
   }

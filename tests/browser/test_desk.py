@@ -286,3 +286,37 @@ def test_a_sentence_of_the_comparison_takes_the_map_to_its_place_by_key(page: Pa
     page.wait_for_url("**,120.00*", timeout=PATIENCE)
     east, north, _ = (float(v) for v in re.search(r"view=([\d.]+),([\d.]+),([\d.]+)", page.url).groups())
     assert abs(east - 52530) < 40 and abs(north - 31271) < 40  # the piers' surroundings
+
+
+def test_two_runs_stand_side_by_side_in_one_view_and_one_time(page: Page, server: Server):
+    ranges = (
+        "() => ['map-figure', 'twin-figure'].map((n) => { const f = Bokeh.documents[0].get_model_by_name(n);"
+        " return [f.x_range.start, f.x_range.end, f.y_range.start, f.y_range.end].map((v) => Math.round(100 * v)); })"
+    )
+    open_desk(page, server.address, f"{FLOOD}&question=sections&view=52455,31178,120")
+    expect(page.locator("#twin")).to_be_hidden()
+    page.select_option("#alongside", "proposed_flood")
+    expect(page.locator("#twin-which")).to_contain_text("Proposed, flood", timeout=90_000)
+    settled(page)
+    first, second = page.locator("#map").bounding_box(), page.locator("#twin").bounding_box()
+    assert first and second
+    assert second["x"] >= first["x"] + first["width"] and second["width"] == pytest.approx(first["width"], abs=1)
+    page.click("button[data-do=zoom][data-value=farther]")
+    settled(page)
+    a, b = page.evaluate(ranges)
+    assert a == b
+    before = page.inner_text("#twin-which")
+    page.focus("#time")
+    page.keyboard.press("Home")
+    expect(page.locator("#twin-which")).not_to_have_text(before, timeout=90_000)
+    when = [re.search(r"\d\d:\d\d(:\d\d)?", page.inner_text(place)) for place in (".pair #map .which", "#twin-which")]
+    assert when[0] and when[1] and when[0][0] == when[1][0]
+    settled(page)
+    assert "alongside=proposed_flood" in page.url
+    assert faults(page) == []
+    page.set_viewport_size({"width": 1024, "height": 900})
+    settled(page)
+    first, second = page.locator("#map").bounding_box(), page.locator("#twin").bounding_box()
+    assert first and second and second["y"] >= first["y"] + first["height"]
+    page.select_option("#alongside", "")
+    expect(page.locator("#twin")).to_be_hidden()
