@@ -56,7 +56,8 @@ class MapFigure:
         self.figure.toolbar.active_drag, self.figure.toolbar.active_scroll = pan, wheel
         self.figure.toolbar.logo = None
         self._axes()
-        self.sources = {name: ColumnDataSource(data) for name, data in _empty().items()}
+        place = "map" if beside is None else "twin"
+        self.sources = {name: ColumnDataSource(data, name=f"{place}-{name}") for name, data in _empty().items()}
         self.colours = LinearColorMapper(palette=["#00000000"] * 256, low=0, high=255)
         self._glyphs()
         if moved is not None:
