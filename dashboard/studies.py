@@ -11,6 +11,8 @@ from shapely.geometry.base import BaseGeometry
 
 from hydro.arrival import Finding, audit
 from hydro.change import Change, Pair, compare, pair_frames
+from hydro.change.answers import Beside, passage, side_by_side, wood
+from hydro.checks import read_checks
 from hydro.drift.report import DriftAnswer, study
 from hydro.observations import Observed, compare_observations
 from hydro.passage import Answer, Fish, assess, read_fish
@@ -108,6 +110,26 @@ class Studies:
             return faster, slower
 
         return self.reading.results.get(("areas", run_id, index, other), make, label="Mapping the change.", heavy=True)
+
+    def answers(self, run_id: str, index: int, other: str) -> list[Beside]:
+        """Receptors and checks of two runs side by side, and of wood and fish what their own screens have found in both."""
+        change = self.change(run_id, index, other)
+        matter, known = self.reading.matter(), self.reading.known
+        if matter.review is None:
+            return []
+        review = matter.review
+        reaches = self.reading.reach(run_id), self.reading.reach(other)
+
+        def make() -> list[Beside]:
+            return side_by_side(change, reaches, read_checks(review.checks), review.entry(run_id).event)
+
+        out = self.reading.results.get(("answers", run_id, index, other), make, label="Setting the answers side by side.", heavy=True)
+        logs = [known(("drift", i)) for i in (run_id, other)]
+        found = [wood(*logs)] if None not in logs else []
+        for which in range(len(review.fish)):
+            ways = [known(("passage", i, frame, which)) for i, frame in ((run_id, change.pair.a), (other, change.pair.b))]
+            found += [passage([ways[0]], [ways[1]])] if None not in ways else []
+        return [*out, *(row for rows in found for row in rows)]
 
     def fish(self) -> list[Fish]:
         """The review's fish; none for a results file alone."""

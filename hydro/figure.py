@@ -100,6 +100,17 @@ def printed(value: float | None, low: float | None = None, high: float | None = 
     return f"{rounded:.{decimals}f}"
 
 
+def shown(figure: Figure) -> str:
+    """A figure's value as printed: to its decimals where it has them, else rounded to its sensitivity.
+
+    >>> shown(Figure("level", 103.20449, "m", decimals=3)), shown(Figure("area", 456.31, "m2", 440.2, 474.9))
+    ('103.204', '460')
+    """
+    if figure.value is None or not math.isfinite(figure.value) or figure.decimals is None:
+        return printed(figure.value, figure.low, figure.high)
+    return f"{figure.value:z.{figure.decimals}f}"
+
+
 def signed(value: float, decimals: int) -> str:
     """A difference as text, its sign always shown, but none where it rounds to zero.
 

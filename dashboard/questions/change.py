@@ -10,11 +10,15 @@ import shapely
 from hydro.cautions import OWED
 from hydro.change import Change as Compared
 from hydro.change import Difference
+from hydro.change.answers import Beside
 from hydro.change.eddies import ZoneChange
+from hydro.checks import AFFLUX
 from hydro.eddies import Zone
+from hydro.figure import Figure, shown, signed
 
 from .. import text
 from ..raster import View
+from ..results import Working
 from ..units import Units
 from ..views import marks, swipe, table
 from ..views import ribbon as strip
@@ -23,6 +27,7 @@ from . import common
 from .base import Desk, Question, footnote
 
 _ROUND_A_PLACE = 120.0  # m: width of the map that a sentence takes its reader to
+_CONVERTED = ("m", "m/s", "m2/s")  # units that the reader may have chosen otherwise
 SPEED_STEP = 0.1  # m/s: smaller changes of speed stay blank on the map (Leewater's own, stated in the caption)
 
 
@@ -204,11 +209,16 @@ class Change(Question):
         first = "".join(f"<li>{_told(f.sentence, i, f.at is not None, u)}</li>" for i, f in enumerate(change.findings))
         before = "".join(f"<li>{text.safe(_differs(d, desk.units))}</li>" for d in change.setup)
         said = f"<h2>In words</h2><ul>{first}</ul>" if first else ""
+        beside = _beside(desk.studies.answers(desk.run_id, desk.index, self.other(desk)), u)
         differs = before or "<li>Nothing that Leewater can see.</li>"
-        return {"table": zones, "body": f"{said}<h2>What differs outside the works</h2><ul>{differs}</ul>"}
+        return {"table": zones, "body": f"{said}{beside}<h2>What differs outside the works</h2><ul>{differs}</ul>"}
 
     def cautions(self, desk: Desk) -> tuple[str, ...]:
-        return OWED["change"]
+        try:
+            rows = desk.studies.answers(desk.run_id, desk.index, self.other(desk)) if self.other(desk) else []
+        except (Working, ValueError, OSError):  # the screen's other parts wait for it, or say why it cannot be
+            rows = []
+        return tuple(dict.fromkeys([*OWED["change"], *(c for r in rows for f in (r.a, r.b) for c in f.cautions)]))
 
     def other(self, desk: Desk) -> str:
         """The run compared with the chosen one: the reader's, else another design's of the same event."""
@@ -226,6 +236,40 @@ class Change(Question):
     def change(self, desk: Desk) -> Compared:
         """The comparison of the chosen frame with the other run's."""
         return desk.studies.change(desk.run_id, desk.index, self.other(desk))
+
+
+def _beside(rows: list[Beside], u: Units) -> str:
+    """Receptors, checks, wood and fish of both runs in one table."""
+    if not rows:
+        return ""
+
+    def cell(f: Figure, unit: str) -> str:
+        if f.value is None or not np.isfinite(f.value):
+            return text.safe(f.note or "none")
+        if unit not in _CONVERTED:
+            return shown(f)
+        factor = u.factor(unit)
+        said = shown(replace(f, value=f.value * factor, low=f.low and f.low * factor, high=f.high and f.high * factor))
+        return f"\u2212{said[1:]}" if said.startswith("-") else said
+
+    lines = []
+    for r in rows:
+        told = {True: "yes", False: "no", None: "not known"}[r.told_apart]
+        change = "" if r.difference is None else u.number(r.difference, r.unit, digits=2) if r.unit in _CONVERTED else signed(r.difference, 2)
+        decision = "" if r.answers is None else {
+            True: f"changes: {r.answers[0]}, then {r.answers[1]}", False: f"stays: {r.answers[0]}", None: r.answers[1] if r.figure == AFFLUX else f"before {r.answers[0]}, after {r.answers[1]}",
+        }[r.decision_changes]
+        unit = u.label(r.unit) if r.unit in _CONVERTED else r.unit
+        name = f'{text.safe(r.place)}<span class="under">{text.safe(r.figure)}{f", {unit}" if unit else ""}</span>'
+        lines.append(table.Line(
+            ((name, ""), (cell(r.a, r.unit), ""), (cell(r.b, r.unit), ""), (change, ""), (told, ""), (text.safe(decision), "")),
+            bool(r.decision_changes),
+        ))
+    columns = (
+        table.Column("Receptor, check, pier or fish", figure=False), table.Column("before"), table.Column("after"), table.Column("change"),
+        table.Column("told apart", figure=False), table.Column("decision", figure=False),
+    )
+    return table.html(table.Table("Answers side by side", "", "Answers of both runs", columns, lines, ""))
 
 
 def _faces(change: Compared, chosen: np.ndarray) -> shapely.Geometry:

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from pathlib import Path
 from typing import Any
 
@@ -15,13 +16,14 @@ from ..ledger.export import csv_heading, write_package
 from ..ledger.report import source_of, time_text
 from ..review import write_whole
 from ..run import Run
+from .answers import Beside, answer_values, answers_table
 from .levels import LevelChange
 from .report import Change
 
 SCHEMA = "leewater/change/1"
 
 
-def change_json(change: Change) -> dict[str, Any]:
+def change_json(change: Change, answers: Sequence[Beside] = ()) -> dict[str, Any]:
     """The comparison as plain values: b minus a; places are world coordinates, m; missing values None."""
     return {
         "schema": SCHEMA,
@@ -47,20 +49,28 @@ def change_json(change: Change) -> dict[str, Any]:
             side: [{"name": o.name, "discharge_m3_s": o.discharge_m3_s, "share": _number(o.share), "freeboard_m": o.freeboard_m} for o in part]
             for side, part in zip(("a", "b"), change.openings, strict=True)
         },
+        "answers": [answer_values(r) for r in answers],
         "findings": [{"sentence": f.sentence, "over_noise": f.over_noise, "at": _world(change.a, f.at)} for f in change.findings],
-        "cautions": told(change.cautions),
+        "cautions": told(owed(change, answers)),
     }
 
 
-def write_change(folder: Path, change: Change) -> list[Path]:
-    """levels.csv and change.gpkg (newly wet, no longer wet, findings) in ``folder``."""
+def owed(change: Change, answers: Sequence[Beside]) -> tuple[str, ...]:
+    """Ids of the cautions that a comparison owes with its answers."""
+    return tuple(dict.fromkeys([*change.cautions, *(c for r in answers for f in (r.a, r.b) for c in f.cautions)]))
+
+
+def write_change(folder: Path, change: Change, answers: Sequence[Beside] = ()) -> list[Path]:
+    """levels.csv, answers.csv and change.gpkg (newly wet, no longer wet, findings) in ``folder``."""
     folder.mkdir(parents=True, exist_ok=True)
     out = []
-    if change.levels is not None:
-        path = folder / "levels.csv"
-        source = source_of(change.b)
-        heading = csv_heading(source | {"run": f"{change.a.name} (a) and {change.b.name} (b)", "hash": f"{change.a.hash} and {change.b.hash}"}, change.b.settings, change.cautions)
-        write_whole(path, heading + levels_table(change.levels).to_csv(index=False))
+    tables = {"levels": levels_table(change.levels)} if change.levels is not None else {}
+    tables |= {"answers": answers_table(answers)} if answers else {}
+    source = source_of(change.b) | {"run": f"{change.a.name} (a) and {change.b.name} (b)", "hash": f"{change.a.hash} and {change.b.hash}"}
+    heading = csv_heading(source, change.b.settings, owed(change, answers))
+    for name, table in tables.items():
+        path = folder / f"{name}.csv"
+        write_whole(path, heading + table.to_csv(index=False))
         out.append(path)
     path = folder / "change.gpkg"
     layers = {

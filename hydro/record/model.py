@@ -7,7 +7,7 @@ from dataclasses import dataclass, field
 from typing import Any
 
 from ..cautions import CAUTIONS
-from ..figure import Figure, printed
+from ..figure import Figure, printed, shown
 from ..provenance import command_line, versions
 
 SCHEMA = "leewater/record/1"
@@ -88,10 +88,8 @@ def cell_text(cell: str | Figure) -> str:
         return cell
     if cell.value is None or cell.value != cell.value:
         return cell.note or "n/a"
-    if cell.decimals is not None:
-        return f"{cell.value:z.{cell.decimals}f}"
-    text = printed(cell.value, cell.low, cell.high)
-    if cell.low is not None and cell.high is not None and cell.high > cell.low:
+    text = shown(cell)
+    if cell.decimals is None and cell.low is not None and cell.high is not None and cell.high > cell.low:
         text += f" ({printed(cell.low, cell.low, cell.high)} to {printed(cell.high, cell.low, cell.high)})"
     return text
 

@@ -10,6 +10,7 @@ import numpy as np
 from ..arrival import audit
 from ..cautions import OWED
 from ..change import Change, compare, pair_frames
+from ..change.answers import rise_at
 from ..change.matrix import matrices
 from ..checks import AFFLUX, answer, answer_afflux, read_checks
 from ..drift.report import DriftAnswer
@@ -116,7 +117,9 @@ def checks(review: Review, readings: Sequence[Reading], compared: Sequence[tuple
         if check.figure == AFFLUX:
             for a, b, c in compared:
                 if c.levels is not None and (not check.events or a.entry.event in check.events):
-                    rise = _rise_at(review, check.place, c)
+                    known = next((i for i in review.reach.layer("receptors") if check.place in (i.id, i.name)), None)
+                    centre = review.reach.centre_line
+                    rise = rise_at(c.levels, centre, known) if known is not None and centre is not None else None
                     found = answer_afflux(check, rise, c.levels.noise_m)
                     rows.append((check.name, f"{a.entry.label} to {b.entry.label}", found.figure, _limit(check), found.answer, check.source))
             continue
@@ -164,12 +167,3 @@ def passage_part(found: Study | None) -> Part:
 def _limit(check) -> str:
     return f"{check.comparison} {check.value:g} {check.unit}"
 
-
-def _rise_at(review: Review, place: str, c: Change) -> float | None:
-    """Rise at the chainage of a receptor, linear between sections."""
-    known = [i for i in review.reach.layer("receptors") if place in (i.id, i.name)]
-    if not known or c.levels is None or review.reach.centre_line is None:
-        return None
-    at = np.asarray(known[0].geometry.centroid.coords[0])[None]
-    chainage = float(review.reach.centre_line.locate(at)[0][0])
-    return float(np.interp(chainage, c.levels.chainage, c.levels.rise))
