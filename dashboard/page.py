@@ -10,6 +10,8 @@ from typing import Any
 import numpy as np
 
 from hydro.queries import ask, change
+from hydro.record.build import PARTS
+from hydro.record.missing import choose_parts
 
 from . import theme
 from .choices import Choices, History, from_query
@@ -216,6 +218,14 @@ class Page:
         self.name = str(form.get("who", ""))[:200]
         told = {name: str(form[name])[:2000] for name in ("state", "answer", "file_received") if form.get(name)}
         change(review.folder, int(form["number"]), who=self.name, **told)
+        self.reading.results.tell(QUERIES)
+
+    def on_parts(self, form: dict) -> None:
+        """Keep which parts the record holds in the review."""
+        review = self.reading.matter().review
+        if review is None:
+            raise ValueError("a record is made of a review; this is a results file alone.")
+        self.reading.take(choose_parts(review, list(form), list(PARTS), who=self.name or "the desk"))
         self.reading.results.tell(QUERIES)
 
     def on_record(self, _: str) -> None:

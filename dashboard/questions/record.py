@@ -2,9 +2,18 @@
 
 from __future__ import annotations
 
+from hydro.record.build import PARTS
+from hydro.record.missing import missing
+
 from .. import text
 from ..views import pack_list
 from .base import Desk, Question
+
+_TITLES = {
+    "documents": "Documents", "runs": "Runs", "method": "Method", "arrival": "What has arrived", "queries": "Queries and answers",
+    "eddies": "Recirculation zones", "persistence": "Eddies in time", "sections": "Sections", "change": "What changes", "checks": "Checks",
+    "drift": "Floating wood", "passage": "Fish passage", "settings": "Settings and choices",
+}
 
 
 class Record(Question):
@@ -44,10 +53,31 @@ class Record(Question):
         packs = desk.studies.packs
         shelf = pack_list.html(packs.finished(), packs.making, packs.trouble)
         made = desk.studies.made_record()
+        chosen = _parts(desk) + button.format("Make the record" if made is None else "Make it again")
         if made is None:
-            return {"body": button.format("Make the record") + shelf}
+            return {"body": chosen + shelf}
         files = "".join(f"<li>{text.safe(name)}</li>" for name in made.files)
-        return {"body": f"<h2>Written to {text.safe(made.folder)}</h2><ul>{files}</ul>{button.format('Make it again')}{shelf}"}
+        return {"body": f"<h2>Written to {text.safe(made.folder)}</h2><ul>{files}</ul>{chosen}{shelf}"}
 
     def cautions(self, desk: Desk) -> tuple[str, ...]:
         return ("screening", "sensitivity", "wake-detail", "no-roller")
+
+
+def _parts(desk: Desk) -> str:
+    """The record's parts to choose from, each with what it still lacks."""
+    review = desk.reading.matter().review
+    assert review is not None  # a results file alone has no record
+    chosen = review.contents.record.get("parts", list(PARTS))
+    lacks = missing(review)
+    rows = []
+    for name in PARTS:
+        own = "".join(f"<li>{text.safe(lack.sentence)}</li>" for lack in lacks if lack.part == name)
+        checked = " checked" if name in chosen else ""
+        rows.append(
+            f'<div><label><input type="checkbox" name="{name}" value="yes" id="part-{name}"{checked}> {_TITLES[name]}</label>'
+            f"{f'<ul>{own}</ul>' if own else ''}</div>"
+        )
+    return (
+        f'<h2>Parts <span class="beside">with what is still missing</span></h2><form class="parts" data-send="parts">{"".join(rows)}'
+        '<button type="submit" class="plain">Keep this choice</button></form>'
+    )
