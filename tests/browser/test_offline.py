@@ -92,6 +92,17 @@ def test_an_open_page_of_a_stopped_desk_draws_itself_anew_when_it_is_back(desk: 
     page.wait_for_selector("html[data-working=no]", state="attached", timeout=PATIENCE)
 
 
+def test_what_was_being_typed_outlives_the_desk_s_stopping_and_coming_back(desk: Desk, installed: BrowserContext):
+    page = installed.pages[0]
+    open_desk(page, desk.address, "question=arrival")
+    page.fill("#ask-text", "half a thought", timeout=PATIENCE)
+    desk.stop()
+    expect(page.locator("#lost")).to_be_visible(timeout=20_000)
+    desk.start()
+    expect(page.locator("#lost")).to_be_hidden(timeout=20_000)
+    expect(page.locator("#ask-text")).to_have_value("half a thought", timeout=PATIENCE)
+
+
 def test_panels_own_page_is_never_stored(desk: Desk, installed: BrowserContext):
     page = installed.pages[0]
     open_desk(page, desk.address)
