@@ -10,6 +10,8 @@ from urllib.parse import parse_qsl, urlencode
 QUESTIONS = ("arrival", "eddies", "drift", "passage", "sections", "change", "record")
 SHADES = ("speed", "depth")
 TUBES = (11, 22, 44)
+LOGS = (0, 200, 2000, 20000)  # let go on the screen; 0: a fifth of the review's own number
+DRAWN = ("paths", "corridor")  # where logs have gone, drawn as
 ALONG = ("thalweg", "streamline")
 COURSES = ("discharge", "level", "head", "speed", "area")  # of a section, through time
 COMPARED = ("difference", "swipe")
@@ -26,9 +28,11 @@ class Choices:
     world (x, y) of its left and right end, ``beside`` the name of a second one to compare it with, ``course``
     the figure of it that the ribbon shows, ``along`` the line of the profile, and ``view`` the world centre and
     width of the map in m, None where the question chooses; ``parcel`` is the world (x, y) where one is let go,
-    and when, s. ``run``, ``against`` (compared with) and ``alongside`` (on a map beside) are ids of the review,
-    ``subject`` names what the map and the sentence speak of. ``compared`` says how two runs stand on one map,
-    ``divider`` where the swipe's divider stands, as a share of its width.
+    and when, s. ``release`` names where wood is let go (empty: all releases of the review; "own": from the line
+    ``let_go``, world coordinates), ``logs`` how many, ``gone`` how their ways are drawn. ``run``, ``against``
+    (compared with) and ``alongside`` (on a map beside) are ids of the review, ``subject`` names what the map and
+    the sentence speak of. ``compared`` says how two runs stand on one map, ``divider`` where the swipe's divider
+    stands, as a share of its width.
     """
 
     question: str = "eddies"
@@ -44,6 +48,10 @@ class Choices:
     along: str = "thalweg"
     view: tuple[float, float, float] | None = None
     parcel: tuple[float, float, float] | None = None
+    release: str = ""
+    let_go: tuple[float, float, float, float] | None = None
+    logs: int = 0
+    gone: str = "paths"
     compared: str = "difference"
     divider: float = 0.5
     shade: str = "speed"
@@ -77,7 +85,7 @@ class Choices:
 
 _OFFERED = {
     "question": QUESTIONS, "shade": SHADES, "units": UNITS, "mode": MODES, "tubes": TUBES, "course": COURSES, "along": ALONG,
-    "compared": COMPARED,
+    "compared": COMPARED, "logs": LOGS, "gone": DRAWN,
 }
 
 
@@ -144,7 +152,7 @@ class History:
 
 
 _SWEPT = frozenset({"seconds", "view", "section", "divider"})
-_NUMBERS = {"section": 4, "view": 3, "window": 2, "parcel": 3}
+_NUMBERS = {"section": 4, "let_go": 4, "view": 3, "window": 2, "parcel": 3}
 
 
 def _written(value: object) -> str:
@@ -171,7 +179,7 @@ def _read(name: str, text: str) -> object:
             if not 0 <= share <= 1:
                 raise ValueError
             return share
-        if name == "tubes":
+        if name in ("tubes", "logs"):
             return int(text)
         if name == "hall":
             return {"yes": True, "no": False}[text]

@@ -18,6 +18,7 @@ from .choices import Choices, History, from_query
 from .packs import PACKS
 from .questions import QUESTIONS, saving
 from .questions.base import Desk, Question, Sizes
+from .questions.drift import wish_of
 from .questions.moments import window_for, window_of
 from .questions.stations import typed_ends, typed_place
 from .raster import View
@@ -259,7 +260,19 @@ class Page:
         self.studies.packs.stop(kind)
 
     def on_try(self, _: str) -> None:
-        self.studies.try_settings(self.desk().run_id)
+        self.studies.try_settings(self.desk().run_id, wish_of(self.choices))
+
+    def on_release(self, name: str) -> None:
+        self.choose(release=name, subject="", seconds=None)
+
+    def on_letgo(self, _: str) -> None:
+        self.choose(let_go=self.choices.section, seconds=None)
+
+    def on_logs(self, value: str) -> None:
+        self.choose(logs=int(value), seconds=None)
+
+    def on_gone(self, value: str) -> None:
+        self.choose(gone=value)
 
     def on_keep(self, form: dict) -> None:
         review = self.reading.matter().review

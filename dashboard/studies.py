@@ -6,6 +6,7 @@ from dataclasses import dataclass
 from functools import partial
 from pathlib import Path
 
+import numpy as np
 import shapely
 from shapely.geometry.base import BaseGeometry
 
@@ -29,6 +30,7 @@ from .site import Site
 
 QUERIES, SHARES = "queries", "shares"  # told to all viewers when they change
 TRIED = "drift tried"
+OWN = "own"  # the release that is the reader's own line
 _QUICK = 0.2  # share of the review's logs that are let go on screen
 
 
@@ -42,6 +44,18 @@ class Recorded:
     figures: int
     parts: int
     cautions: int
+
+
+@dataclass(frozen=True, slots=True)
+class Wish:
+    """What wood is let go: from which release (empty: all; ``OWN``: from ``line``, world x and y of its ends), how many logs.
+
+    ``logs`` 0: a fifth of the review's own number.
+    """
+
+    release: str = ""
+    line: tuple[float, float, float, float] | None = None
+    logs: int = 0
 
 
 class Studies:
@@ -163,23 +177,23 @@ class Studies:
         review = self.reading.matter().review
         return review is not None and bool(review.releases)
 
-    def drift(self, run_id: str) -> DriftAnswer:
-        """A fifth of the review's logs let go in a run, with the settings chosen."""
+    def drift(self, run_id: str, wish: Wish) -> DriftAnswer:
+        """The wished logs let go in a run, with the settings chosen."""
         return self.reading.long.get(
-            ("drift", run_id), partial(self._let_go, run_id, False), label="Letting the logs go.", rank=SOON,
+            ("drift", run_id, wish), partial(self._let_go, run_id, wish, False), label="Letting the logs go.", rank=SOON,
         )
 
-    def try_settings(self, run_id: str) -> None:
+    def try_settings(self, run_id: str, wish: Wish) -> None:
         """Let the logs go again with other settings, for the range."""
         self.reading.long.ahead(
-            (TRIED, run_id), partial(self._let_go, run_id, True), label="Trying other settings.", group="drift",
+            (TRIED, run_id, wish), partial(self._let_go, run_id, wish, True), label="Trying other settings.", group="drift",
         )
 
     def stop(self, run_id: str) -> None:
         """Stop letting logs go in a run; what was done is kept."""
         self._stopped.add(run_id)
 
-    def _let_go(self, run_id: str, tried: bool) -> DriftAnswer:
+    def _let_go(self, run_id: str, wish: Wish, tried: bool) -> DriftAnswer:
         review = self.reading.matter().review
         assert review is not None  # has_wood says so
         told = [-1]
@@ -191,9 +205,14 @@ class Studies:
                 self.reading.long.tell(SHARES)
 
         try:
+            tables = [t for t in review.releases if wish.release in ("", OWN, str(t["name"]))]
+            if wish.release == OWN:
+                tables = tables[:1]  # the review's first wood, let go from the reader's own line
+            whole = sum(int(t.get("number", 0)) for t in tables)
+            line = None if wish.line is None else self.reading.run(run_id).mesh.to_local(np.array(wish.line).reshape(2, 2))
             return study(
-                review, review.entry(run_id), numbers=_QUICK, try_settings=tried, stop=lambda: run_id in self._stopped,
-                progress=progress,
+                review, review.entry(run_id), numbers=wish.logs / max(whole, 1) if wish.logs else _QUICK, try_settings=tried,
+                stop=lambda: run_id in self._stopped, progress=progress, releases=tables, line=line,
             )
         finally:
             self._stopped.discard(run_id)  # only now: a stop may be asked for before the first step

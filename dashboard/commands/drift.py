@@ -70,5 +70,11 @@ def _print(answer) -> None:
     for i, opening in enumerate(base.openings):
         share = base.passes(i)
         print(f"  {opening.name}: {100 * share.value:.0f} % pass ({100 * share.low:.0f} to {100 * share.high:.0f} % from their number alone)")
+    for gap in answer.gaps:
+        word = "longer than" if gap.narrower else "no longer than"
+        print(f"  {gap.opening}: {gap.effective_width_m:.1f} m wide to the flow; a design log of {gap.design_log_m:.1f} m is {word} that")
+    for held in answer.held:
+        if held.logs:
+            print(f"  {held.logs} logs come into the eddy {held.eddy}, half of them for {held.median_s:.0f} s or more")
     for i, pier in enumerate(base.piers):
         print(f"  {pier.name}: {100 * base.lodges(i).value:.1f} % lodge by the rule chosen; fed by {base.fed(i)}")

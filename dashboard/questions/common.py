@@ -203,6 +203,11 @@ def _centre_line(desk: Desk) -> CentreLine:
     return centre
 
 
+def length(desk: Desk) -> float:
+    """Length of the centre line, m."""
+    return _centre_line(desk).length
+
+
 def across(desk: Desk, chainage: float, offset: float = 0.0) -> Ends:
     """A line square to the centre line through the water round an offset, from bank to bank."""
     centre, mesh = _centre_line(desk), desk.run.mesh

@@ -13,7 +13,7 @@ from shapely.geometry.base import BaseGeometry
 from hydro.frame import Frame
 
 LINE_KINDS = ("streamline", "pathline", "streakline", "timeline", "route", "path", "dotted", "crest", "deck")
-MARK_KINDS = ("parcel", "log", "lodged", "drogue", "fish", "leaves", "returns", "rest", "query", "answered")
+MARK_KINDS = ("parcel", "drogue", "fish", "leaves", "returns", "rest", "query", "answered")
 PATTERNS = ("dots", "levels", "stipple 1", "stipple 2", "stipple 3", "stipple 4", "rest", "dry", "wet")
 
 
@@ -81,6 +81,16 @@ class PointMark:
 
 
 @dataclass(frozen=True, eq=False)
+class LogsMark:
+    """Many logs at once: middles (k, 2), angles (k,) rad, lengths (k,) m, and which have lodged (k,)."""
+
+    at: np.ndarray
+    angle: np.ndarray
+    length_m: np.ndarray
+    lodged: np.ndarray
+
+
+@dataclass(frozen=True, eq=False)
 class AreaMark:
     """An area filled by one of ``PATTERNS``; ``tint`` is "more", "less" or empty."""
 
@@ -132,6 +142,7 @@ class Scene:
     areas: tuple[AreaMark, ...] = ()
     lines: tuple[LineMark, ...] = ()
     points: tuple[PointMark, ...] = ()
+    logs: LogsMark | None = None
     names: tuple[Name, ...] = ()
     tags: tuple[Tag, ...] = ()
     section: tuple[tuple[float, float], tuple[float, float]] | None = None

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable, Mapping
+from collections.abc import Callable, Mapping, Sequence
 from dataclasses import asdict, dataclass
 from functools import partial
 from pathlib import Path
@@ -20,6 +20,7 @@ from ..ledger.report import source_of
 from ..reach import Reach
 from ..review import Review, RunEntry, write_whole
 from ..run import Run
+from .places import LOG_SOURCE, Gap, Held, gaps_of, held_by_eddies
 from .share import Share
 from .study import STATES, Drifted, Rules, drift, sentence, settings_tried
 from .wood import logs
@@ -36,6 +37,8 @@ class DriftAnswer:
     reach: Reach
     base: Drifted
     tried: Mapping[str, Drifted]
+    held: tuple[Held, ...] = ()
+    gaps: tuple[Gap, ...] = ()
 
     def sentences(self) -> list[str]:
         """One a pier."""
@@ -44,6 +47,7 @@ class DriftAnswer:
 
 def study(
     review: Review, entry: RunEntry, *, rules: Rules | None = None, numbers: float = 1.0, try_settings: bool = True,
+    releases: Sequence[Mapping[str, Any]] | None = None, line: np.ndarray | None = None,
     stop: Callable[[], bool] = lambda: False, progress: Callable[[str, float], None] = lambda what, share: None,
 ) -> DriftAnswer:
     """Let the review's wood go in one run.
@@ -52,6 +56,10 @@ def study(
     ----------
     numbers : float
         Factor on the number of logs, for a quick look.
+    releases : sequence of tables, optional
+        In place of the review's own.
+    line : (n, 2) local m, optional
+        Where all of them let go, in place of their own lines.
     try_settings : bool
         Also run the settings of :func:`hydro.drift.settings_tried`, for the range.
 
@@ -60,30 +68,31 @@ def study(
     ValueError
         No releases, no line for one, or a run of maxima.
     """
-    if not review.releases:
+    tables = list(review.releases if releases is None else releases)
+    if not tables:
         raise ValueError("the review has no [[releases]]; say what wood to let go, where, and how much.")
     run = review.open(entry.id)
     if "maximum" in run.times.kinds:
         raise ValueError(f"{entry.label} holds maxima; logs cannot be moved by maxima of different moments.")
     reach = review.reach_for(run)
     boundaries = plan_for(run, run.frame(0), reach).boundaries
-    releases = []
-    for table in review.releases:
-        line = reach.find("releases", str(table.get("line", table.get("name"))))
+    made = []
+    for table in tables:
+        at = _points(reach.find("releases", str(table.get("line", table.get("name")))).geometry) if line is None else line
         scaled = {**table, "number": max(1, int(round(int(table.get("number", 0)) * numbers)))}
-        releases.append((str(table["name"]), _points(line.geometry), logs(scaled)))
+        made.append((str(table["name"]), at, logs(scaled)))
     piers = [s for s in reach.structures if s.kind == "pier" and s.geometry.geom_type == "Polygon"]
-    seed = int(review.releases[0].get("seed", 1))
+    seed = int(tables[0].get("seed", 1))
     answers: dict[str, Drifted] = {}
     for name, chosen in settings_tried(rules or Rules()).items():
         if answers and (not try_settings or stop()):
             break
         answers[name] = drift(
-            run, releases, piers=piers, openings=reach.layer("openings"), boundaries=boundaries, rules=chosen, seed=seed, stop=stop,
+            run, made, piers=piers, openings=reach.layer("openings"), boundaries=boundaries, rules=chosen, seed=seed, stop=stop,
             progress=partial(progress, name),
         )
     base = answers.pop("as chosen")
-    return DriftAnswer(entry, run, reach, base, answers)
+    return DriftAnswer(entry, run, reach, base, answers, tuple(held_by_eddies(run, reach, base)), tuple(gaps_of(run, reach)))
 
 
 def answer_json(answer: DriftAnswer) -> dict[str, Any]:
@@ -108,6 +117,9 @@ def answer_json(answer: DriftAnswer) -> dict[str, Any]:
             for i, o in enumerate(base.openings)
         ],
         "deck_contact": {name: _share(base.deck_contacts(level)) for name, level in soffits.items()},
+        "in_eddies": [asdict(h) for h in answer.held],
+        "openings_to_a_design_log": [{**asdict(g), "narrower": g.narrower} for g in answer.gaps],
+        "design_log_source": LOG_SOURCE,
         "settings_tried": list(answer.tried),
         "cautions": told(OWED["drift"]),
     }

@@ -172,3 +172,21 @@ def test_kept_views_are_walked_through_with_arrow_keys_in_the_hall(page: Page, m
     settled(page)
     assert faults(page) == []
     assert (copy / "review.toml").read_text(encoding="utf-8").count("[[views]]") == 2
+
+
+def test_wood_is_let_go_from_a_line_of_ones_own_and_a_pier_shows_what_touched_it(page: Page, mine: Server):
+    open_desk(page, mine.address, "question=drift&logs=200")
+    page.wait_for_selector("section[data-slot=section] button[data-do=subject]", timeout=PATIENCE)
+    page.select_option("#choose-release", "own")
+    expect(page.locator("#answer")).to_contain_text("Drag L and R")
+    page.click("button[data-do=letgo]")
+    page.wait_for_function("() => location.search.includes('let_go=')")
+    row = page.locator("section[data-slot=section] button[data-do=subject]").first
+    row.wait_for(timeout=PATIENCE)
+    expect(page.locator("#answer")).to_contain_text("of the 200 modelled logs touch")
+    name = plain(row.inner_text())
+    row.click()
+    expect(page.locator("figcaption")).to_contain_text(f"only those that touch {name}")
+    page.select_option("#choose-gone", "corridor")
+    expect(page.locator(".key")).to_contain_text("Logs by time")
+    assert "What fed the piers" in page.inner_text(".body")

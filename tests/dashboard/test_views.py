@@ -15,7 +15,7 @@ from dashboard.units import Units
 from dashboard.views import map as drawing
 from dashboard.views import marks, observed, ribbon, section, shore, strokes, table, tags
 from dashboard.views import profile as lengthwise
-from dashboard.views.scene import PointMark, Scene, StructureMark, Tag, ZoneMark
+from dashboard.views.scene import LogsMark, Scene, StructureMark, Tag, ZoneMark
 from hydro.observations import Observed
 from hydro.section.profile import Profile
 from tests.builders import channel, frame_of, with_hole
@@ -117,8 +117,21 @@ def test_labels_without_room_are_counted():
 
 
 def test_a_log_is_drawn_to_its_true_length():
-    sheet = drawing.draw(Scene(points=(PointMark("log", np.array([0.0, 0.0]), 0.0, 12.0),)), VIEW, DAY)
+    log = LogsMark(np.zeros((1, 2)), np.zeros(1), np.array([12.0]), np.zeros(1, bool))
+    sheet = drawing.draw(Scene(logs=log), VIEW, DAY)
     assert np.ptp(sheet.over["xs"][0]) == pytest.approx(12.0)
+
+
+def test_twenty_thousand_logs_are_two_lines_and_only_those_in_view_are_sent():
+    chance = np.random.default_rng(1)
+    at = chance.uniform(-500, 500, (20_000, 2))
+    lodged = np.arange(20_000) % 10 == 0
+    sheet = drawing.draw(Scene(logs=LogsMark(at, chance.uniform(0, 3, 20_000), np.full(20_000, 5.0), lodged)), VIEW, DAY)
+    assert len(sheet.over["xs"]) == 4  # each kind with its casing
+    assert {DAY.palette.ink, DAY.palette.signal} <= set(sheet.over["colour"])
+    west, south, east, north = VIEW.widened(0.25).extent
+    inside = (np.abs(at - [(west + east) / 2, (south + north) / 2]) < [(east - west) / 2, (north - south) / 2]).all(axis=1)
+    assert sum(len(x) for x in sheet.over["xs"]) == pytest.approx(2 * 3 * inside.sum(), abs=4)
 
 
 def course(index: int = 2, **more) -> ribbon.Course:
