@@ -20,6 +20,8 @@ def arguments(parser: argparse.ArgumentParser) -> None:
     which.add_argument("--all", action="store_true", help="every frame, with the eddies followed in time; Ctrl-C keeps what is done")
     which.add_argument("--mean", nargs=2, type=float, metavar=("T1", "T2"), help="the mean flow between two times, s from the start")
     parser.add_argument("--small", action="store_true", help="list also what is under the floor")
+    parser.add_argument("--residence", action="store_true", help="how long water stays in each zone of one frame or a mean, held steady")
+    parser.add_argument("--mixing", type=float, metavar="K", help="horizontal mixing for --residence, m2/s (default 0: nothing leaves)")
     parser.add_argument("--workers", type=int, default=os.cpu_count() or 1, metavar="N", help="processes for --all and --mean (default: all cores)")
     parser.add_argument("--scheduler", metavar="ADDRESS", help="a Dask scheduler whose workers read the frames of --all and --mean")
     parser.add_argument("--json", metavar="FILE", help="write the ledger as JSON (- for standard output)")
@@ -32,6 +34,7 @@ def run(args: argparse.Namespace) -> int:
 
     from . import frame_index
 
+    _check_residence(args)
     review, run = open_results(args.file)
     reach = review.reach_for(run) if review else None
     if args.all:
@@ -39,10 +42,31 @@ def run(args: argparse.Namespace) -> int:
     reader = FrameReader(run, reach=reach)
     if args.mean:
         return _mean(args, reader)
-    entry = reader.frame(frame_index(run, args))
+    entry = _with_residence(reader.frame(frame_index(run, args)), args)
     _write(args, run, [entry])
     _frame_table(run, entry, args)
     return 0
+
+
+def _check_residence(args: argparse.Namespace) -> None:
+    if args.mixing is not None and not args.residence:
+        raise ValueError("--mixing is for --residence; give both.")
+    if args.residence and args.all:
+        raise ValueError("--residence holds a field steady, so it reads one frame or a mean; leave out --all.")
+    if args.mixing is not None and not 0 <= args.mixing < float("inf"):
+        raise ValueError(f"--mixing is {args.mixing:g} m2/s; give a coefficient of 0 or more.")
+
+
+def _with_residence(entry, args: argparse.Namespace):
+    """The entry with the stay of water in each zone, where it was asked for."""
+    if not args.residence:
+        return entry
+    from dataclasses import replace
+
+    from hydro.eddies.residence import residence
+
+    zones = tuple(replace(z, residence=residence(entry.sf, z, args.mixing or 0.0)) for z in entry.zones.zones)
+    return replace(entry, zones=replace(entry.zones, zones=zones))
 
 
 def _all(args: argparse.Namespace, run, reach) -> int:
@@ -78,7 +102,7 @@ def _mean(args: argparse.Namespace, reader) -> int:
     from hydro.ledger import instants_of
 
     run = reader.run
-    entry = reader.mean(*args.mean)
+    entry = _with_residence(reader.mean(*args.mean), args)
     window, _ = run.window(*args.mean)
     instants = None
     if len(window) > 1:
@@ -168,6 +192,8 @@ def _zone_rows(zones, out) -> None:
             for name in ("area_m2", "length_m", "recirculating_discharge_m3_s")
         ]
         print(f"{z.id:4} {z.name[:38]:38} {z.rotation:13} {cells[0]:>9} {cells[1]:>9} {cells[2]:>15}  {', '.join(z.flags)}", file=out)
+        if z.residence is not None:
+            print(f"     {z.residence.words}.", file=out)
 
 
 def _life_table(lives, done, args: argparse.Namespace) -> None:

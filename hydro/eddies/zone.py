@@ -11,6 +11,7 @@ import shapely
 
 from ..figure import Place
 from .regions import Region
+from .survival import Residence
 from .wake import Wake
 
 if TYPE_CHECKING:
@@ -66,6 +67,8 @@ class Zone:
     region : Region
     core : (c,) int32
         Nodes by which the zone is followed in time: those nearest to its extremum in psi.
+    residence : Residence or None
+        How long water stays, where it was asked for.
     """
 
     id: str
@@ -103,6 +106,7 @@ class Zone:
     noise_m3_s: float
     region: Region
     core: np.ndarray
+    residence: Residence | None = None
 
     def place(self, mesh) -> Place:
         """The centre in world coordinates."""

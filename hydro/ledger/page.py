@@ -63,8 +63,14 @@ def _frame(entry: Mapping[str, Any]) -> str:
         f"{printed(entry['through_discharge_m3_s'])} m3/s through; misfit of psi {100 * misfit['total']:.2g} %, unexplained "
         f"{100 * misfit['unexplained']:.2g} %; read from {html.escape(entry['field'])}; {entry['small_zones']} under the floor"
         f"{''.join(f'. {html.escape(words)}' for words in balance_words(entry))}</caption><tr><th>id</th><th>zone</th><th>turns</th>{head}<th>flags</th></tr>{rows}</table>"
+        + _residence(entry["zones"])
         + (_travelling(entry["travelling"]) if entry["travelling"] else "")
     )
+
+
+def _residence(zones: list[Mapping[str, Any]]) -> str:
+    """How long water stays in each zone, where it was asked for."""
+    return "".join(f"<p>{z['id']}: {html.escape(z['residence']['words'])}.</p>" for z in zones if "residence" in z)
 
 
 def _travelling(eddies: list[Mapping[str, Any]]) -> str:

@@ -13,6 +13,7 @@ import numpy as np
 from ..balance import Balance
 from ..cautions import OWED, told
 from ..eddies import Zone
+from ..eddies.survival import Residence
 from ..eddies.travelling import Traveller
 from ..figure import printed
 from ..mesh import Mesh
@@ -194,7 +195,19 @@ def zone_json(mesh: Mesh, zone: Zone) -> dict[str, Any]:
         "flags": list(zone.flags),
         "sensitivity": {name: [_number(low), _number(high)] for name, (low, high) in zone.sensitivity.items()},
         "cautions": list(zone.cautions),
+        **({} if zone.residence is None else {"residence": _residence(zone.residence)}),
     }
+
+
+def _residence(found: Residence) -> dict[str, Any]:
+    """How long water stays; the figures are None where nothing leaves, or where the time watched does not reach them."""
+    stay = found.stay
+    figures = {
+        "parcels": stay.parcels, "left": stay.left, "watched_s": stay.watched_s, "median_s": stay.median_s,
+        "median_low_s": stay.median_95_s[0], "median_high_s": stay.median_95_s[1], "mean_s": stay.mean_s,
+        "mean_low_s": stay.mean_95_s[0], "mean_high_s": stay.mean_95_s[1],
+    } if stay else {}
+    return {"mixing_m2_s": found.mixing_m2_s, "words": found.words, **figures}
 
 
 def point(mesh: Mesh, local: np.ndarray | None) -> list[float] | None:
