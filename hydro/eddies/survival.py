@@ -70,7 +70,7 @@ def stay_of(seconds: np.ndarray, left: np.ndarray) -> Stay:
         # Where none stay the interval has no value (NaN), which is below no share.
         warnings.filterwarnings("ignore", "The confidence interval is undefined", RuntimeWarning)
         band = curve.confidence_interval(method="log-log")
-    ends = tuple(_half(curve.quantiles, b.probabilities) for b in (band.low, band.high))
+    ends = _half(curve.quantiles, band.low.probabilities), _half(curve.quantiles, band.high.probabilities)
     mean, error = _restricted(seconds, left, curve.quantiles, curve.probabilities)
     return Stay(
         len(seconds), int(left.sum()), watched, _half(curve.quantiles, curve.probabilities), ends, mean,
