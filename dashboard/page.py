@@ -9,10 +9,6 @@ from typing import Any
 
 import numpy as np
 
-from hydro.queries import ask, change
-from hydro.record.build import PARTS
-from hydro.record.missing import choose_parts
-
 from . import theme
 from .choices import Choices, History, from_query
 from .packs import PACKS
@@ -26,12 +22,18 @@ from .reading import STORY
 from .results import Working
 from .screen import Screen
 from .sheets import File
-from .stops import Stop, keep, stops_of
+from .stops import Stop, stops_of
 from .studies import QUERIES, SHARES, TRIED, Studies
 from .views.figure import MapFigure
 from .wire import Wire
+from .writing import WRITING
 
 log = logging.getLogger(__name__)
+# Choices that a message sets just as it comes, and how its text is read.
+_PLAIN: dict[str, Callable[[str], Any]] = {
+    "against": str, "along": str, "beside": str, "compared": str, "course": str, "gone": str, "mode": str, "shade": str, "tubes": int,
+    "units": str,
+}
 _ZOOM = 1.6
 _PAN = 0.2  # share of the map's size a key press moves it
 
@@ -94,11 +96,15 @@ class Page:
 
     def hear(self, name: str, value: Any) -> None:
         """Take one message of the page; a wrong one is told on the sentence line and changes nothing."""
-        act = getattr(self, f"on_{name}", None)
         try:
-            if act is None:
+            if name in _PLAIN:
+                self.choose(**{name: _PLAIN[name](value)})
+            elif name in WRITING:
+                WRITING[name](self, value)
+            elif hasattr(self, f"on_{name}"):
+                getattr(self, f"on_{name}")(value)
+            else:
                 raise ValueError(f"the page sent {name!r}, which the desk does not know; reload the page.")
-            act(value)
             if name != "size":  # what the browser measures answers nothing
                 self.trouble = ""
         except Working:
@@ -153,27 +159,12 @@ class Page:
         self.own_section = True
         self.choose(section=tuple(round(v, 2) for v in typed_ends(form)), view=None)
 
-    def on_beside(self, name: str) -> None:
-        self.choose(beside=name)
-
-    def on_along(self, value: str) -> None:
-        self.choose(along=value)
-
-    def on_course(self, value: str) -> None:
-        self.choose(course=value)
-
     def on_line(self, name: str) -> None:
         found = QUESTIONS["sections"].named(self.desk())  # type: ignore[attr-defined]
         if name in found:
             world = self.desk().run.mesh.to_world(np.array(found[name])).round(2)
             self.own_section = True
             self.choose(section=tuple(float(v) for v in world.ravel()), view=None)
-
-    def on_against(self, run_id: str) -> None:
-        self.choose(against=run_id)
-
-    def on_compared(self, value: str) -> None:
-        self.choose(compared=value)
 
     def on_divider(self, value: dict) -> None:
         """The swipe's divider was moved to a share of the map's width."""
@@ -183,54 +174,6 @@ class Page:
     def on_visit(self, number: str) -> None:
         """Take the map to the place of a sentence of the comparison."""
         self._look_at(*QUESTIONS["change"].place_of(self.desk(), int(number)))  # type: ignore[attr-defined]
-
-    def on_ask(self, form: dict) -> None:
-        review = self.reading.matter().review
-        if review is None:
-            raise ValueError("queries are kept in a review; open one to write them.")
-        x, y = self.choices.view[:2] if self.choices.view else (None, None)
-        self.name = str(form.get("who", ""))[:200]
-        ask(
-            review.folder, str(form.get("text", ""))[:2000], who=self.name, run=self.desk().run_id, x=x, y=y,
-            seconds=self.choices.seconds, view=self.choices.query(),
-            **{name: str(form[name])[:200] for name in ("importance", "asked_of", "due") if form.get(name)},
-        )
-        self.reading.results.tell(QUERIES)
-
-    def on_raise(self, number: str) -> None:
-        """Make a finding a query."""
-        desk, review = self.desk(), self.reading.matter().review
-        if review is None:
-            raise ValueError("queries are kept in a review; open one to write them.")
-        finding = QUESTIONS["arrival"].findings(desk)[int(number) - 1]  # type: ignore[attr-defined]
-        x, y = desk.run.mesh.to_world(np.array(finding.at)) if finding.at is not None else (None, None)
-        grave = finding.grade == "resolve before use"
-        ask(
-            review.folder, f"{finding.sentence} {finding.question}"[:2000], who=self.name or "the desk", run=desk.run_id, x=x, y=y,
-            seconds=self.choices.seconds, view=self.choices.with_(subject=number, view=None).query(),
-            importance="could change the decision" if grave else "clarify",
-        )
-        self.reading.results.tell(QUERIES)
-
-    def on_answer(self, form: dict) -> None:
-        review = self.reading.matter().review
-        if review is None:
-            raise ValueError("queries are kept in a review; open one to answer them.")
-        self.name = str(form.get("who", ""))[:200]
-        told = {name: str(form[name])[:2000] for name in ("state", "answer", "file_received") if form.get(name)}
-        change(review.folder, int(form["number"]), who=self.name, **told)
-        self.reading.results.tell(QUERIES)
-
-    def on_parts(self, form: dict) -> None:
-        """Keep which parts the record holds in the review."""
-        review = self.reading.matter().review
-        if review is None:
-            raise ValueError("a record is made of a review; this is a results file alone.")
-        self.reading.take(choose_parts(review, list(form), list(PARTS), who=self.name or "the desk"))
-        self.reading.results.tell(QUERIES)
-
-    def on_record(self, _: str) -> None:
-        self.studies.make_record()
 
     def on_photograph(self, value: str) -> None:
         """Open one of the site's photographs, or close it."""
@@ -253,12 +196,6 @@ class Page:
             raise ValueError(f"there is no run {run_id!r} in this review.")
         self.choose(alongside=run_id)
 
-    def on_pack(self, kind: str) -> None:
-        self.studies.packs.make(kind)
-
-    def on_unpack(self, kind: str) -> None:
-        self.studies.packs.stop(kind)
-
     def on_try(self, _: str) -> None:
         self.studies.try_settings(self.desk().run_id, wish_of(self.choices))
 
@@ -270,17 +207,6 @@ class Page:
 
     def on_logs(self, value: str) -> None:
         self.choose(logs=int(value), seconds=None)
-
-    def on_gone(self, value: str) -> None:
-        self.choose(gone=value)
-
-    def on_keep(self, form: dict) -> None:
-        review = self.reading.matter().review
-        if review is None:
-            raise ValueError("stops are kept in a review; open one to keep views.")
-        self.reading.take(keep(review, self.choices, str(form.get("sentence", "")), who="the desk"))
-        self.stop = len(self.stops) - 1
-        self.reading.results.tell(QUERIES)
 
     def on_step(self, step: str) -> None:
         if not self.stops:
@@ -305,18 +231,6 @@ class Page:
             return None
         self.files_sent += 1
         return {"number": self.files_sent, "name": file.name, "text": file.text, "picture": file.picture}
-
-    def on_shade(self, value: str) -> None:
-        self.choose(shade=value)
-
-    def on_tubes(self, value: str) -> None:
-        self.choose(tubes=int(value))
-
-    def on_units(self, value: str) -> None:
-        self.choose(units=value)
-
-    def on_mode(self, value: str) -> None:
-        self.choose(mode=value)
 
     def on_hall(self, value: str) -> None:
         self.choose(hall=value == "yes")
