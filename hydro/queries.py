@@ -14,6 +14,7 @@ from collections.abc import Iterable, Mapping
 from dataclasses import asdict, dataclass, field, fields
 from pathlib import Path
 from typing import Any
+from zipfile import BadZipFile
 
 from .review_log import append_line, now, read_log
 
@@ -232,8 +233,12 @@ def _number(row: Mapping[str, Any], i: int, path: Path) -> int:
 def _rows(path: Path) -> list[dict[str, Any]]:
     if path.suffix.lower() == ".xlsx":
         from openpyxl import load_workbook
+        from openpyxl.utils.exceptions import InvalidFileException
 
-        book = load_workbook(path, read_only=True)
+        try:
+            book = load_workbook(path, read_only=True)
+        except (BadZipFile, InvalidFileException, KeyError) as error:
+            raise ValueError(f"{path.name} cannot be read as a workbook ({error}); send back the file that was sent out.") from error
         values = [list(r) for r in book.active.iter_rows(values_only=True)]
         book.close()
         rows = [dict(zip(values[0], r, strict=False)) for r in values[1:] if any(v is not None for v in r)] if values else []

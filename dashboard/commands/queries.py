@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import argparse
+import sys
 from pathlib import Path
 
 from . import write_json
@@ -27,7 +28,7 @@ def run(args: argparse.Namespace) -> int:
         if not args.by:
             raise ValueError("answers are logged with a name; give --by NAME.")
         changed = read_answers(folder, Path(args.answers), who=args.by)
-        print(f"{len(changed)} {'query has' if len(changed) == 1 else 'queries have'} new answers from {args.answers}.")
+        print(f"{len(changed)} {'query has' if len(changed) == 1 else 'queries have'} new answers from {args.answers}.", file=sys.stderr)
     items = queries(folder)
     if args.out:
         out = Path(args.out)

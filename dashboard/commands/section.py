@@ -46,6 +46,8 @@ def run(args: argparse.Namespace) -> int:
     frames = range(run_.n_frames) if args.all else [frame_index(run_, args)]
     if args.envelope:
         return _envelope(args, run_)
+    if args.places is not None and (args.line or args.frame is not None or args.time is not None):
+        raise ValueError("--places reads the review's named places over the whole run; leave out --line, --frame and --time.")
     if args.weirs or args.openings or args.places is not None:
         return _works(args, review, run_, frames)
     if args.thalweg or args.streamline:
@@ -133,6 +135,8 @@ def _described(row: dict) -> str:
 
 
 def _envelope(args, run_) -> int:
+    from hydro.cautions import OWED, caution, told
+    from hydro.ledger.report import source_of
     from hydro.section.works import ENVELOPE, write_envelope
 
     path = Path(args.envelope)
@@ -140,7 +144,12 @@ def _envelope(args, run_) -> int:
         raise ValueError(f"--envelope {args.envelope}: name a file that ends in .gpkg.")
     path.parent.mkdir(parents=True, exist_ok=True)
     write_envelope(path, run_)
-    print(f"{path}: {ENVELOPE}.")
+    if not write_json(args.json, {
+        "schema": "leewater/envelope/1", "source": source_of(run_), "file": path.name, "kind": ENVELOPE, "cautions": told(OWED["envelope"]),
+    }):
+        print(f"{path}: {ENVELOPE}.")
+        for id_ in OWED["envelope"]:
+            print(f"  {caution(id_).text}")
     return 0
 
 

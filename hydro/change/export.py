@@ -78,7 +78,7 @@ def write_change(folder: Path, change: Change, answers: Sequence[Beside] = ()) -
         "no_longer_wet": _faces(change, change.maps.no_longer_wet),
         "findings": _points(change),
     }
-    write_package(path, layers, change.a.crs, {"a": source_of(change.a), "b": source_of(change.b)}, change.cautions)
+    write_package(path, layers, change.a.crs, {"a": source_of(change.a), "b": source_of(change.b)}, owed(change, answers))
     return [*out, path]
 
 

@@ -19,7 +19,7 @@ pytestmark = pytest.mark.browser
 def kept(page: Page, word: str, folder: Path) -> Path:
     """The file behind one word of the menu."""
     if not page.is_visible(f"[data-key='save-{word}']"):
-        page.click("figcaption .zoom summary")
+        page.click("figcaption summary:has-text('save')")
     with page.expect_download() as download:
         page.click(f"[data-key='save-{word}']")
     path = folder / word
@@ -29,7 +29,7 @@ def kept(page: Page, word: str, folder: Path) -> Path:
 
 def test_the_mean_of_a_window_is_told_bracketed_and_left_by_moving_in_time(page: Page, server: Server):
     open_desk(page, server.address, f"{FLOOD}&seconds=100")
-    page.click("figcaption details.inline summary >> nth=0")
+    page.click("figcaption summary:has-text('other times')")
     page.fill("#window-from", "400")
     page.fill("#window-to", "450")
     page.click("form[data-send=window] button")
@@ -46,7 +46,7 @@ def test_the_mean_of_a_window_is_told_bracketed_and_left_by_moving_in_time(page:
 
 def test_a_window_without_frames_is_told_and_changes_nothing(page: Page, server: Server):
     open_desk(page, server.address, FLOOD)
-    page.click("figcaption details.inline summary >> nth=0")
+    page.click("figcaption summary:has-text('other times')")
     page.fill("#window-from", "5000")
     page.fill("#window-to", "6000")
     page.click("form[data-send=window] button")
@@ -67,7 +67,7 @@ def test_a_section_is_measured_through_time_and_beside_another(page: Page, serve
 def test_typed_ends_draw_the_line(page: Page, server: Server):
     open_desk(page, server.address, "question=sections")
     before = answer(page)
-    page.click(".body summary")
+    page.click("summary:has-text('Type the ends')")
     for name, value in (("x1", "52378.16"), ("y1", "31117.64"), ("x2", "52430.88"), ("y2", "31081.36")):
         page.fill(f"#ends-{name}", value)
     page.click("form[data-send=ends] button")

@@ -203,3 +203,12 @@ def test_the_thalweg_loses_as_much_head_as_the_streamline_beside_it(capsys):
     assert deepest["head_lost_m"] == pytest.approx(stream["head_lost_m"], rel=0.1)
     assert "outside the water" in refused(capsys, "section", bankfull, "--streamline", "1,1")
     assert "write it as" in refused(capsys, "section", bankfull, "--streamline", "here")
+
+
+def test_answers_in_a_file_that_is_no_workbook_are_refused_in_a_sentence(review: Path, capsys):
+    (review / "bad.xlsx").write_text("no workbook", encoding="utf-8")
+    assert "cannot be read as a workbook" in refused(capsys, "queries", str(review), "--answers", str(review / "bad.xlsx"), "--by", "C")
+
+
+def test_places_take_no_frame_and_no_line(capsys):
+    assert "leave out" in refused(capsys, "section", FLOOD, "--places", "0.2", "--frame", "3")
