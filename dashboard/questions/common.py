@@ -23,7 +23,7 @@ from ..reading import Ends, Story
 from ..results import Working
 from ..units import Units
 from ..views import marks, ribbon, section
-from ..views.scene import Name, Scene, StructureMark, Water, ZoneMark
+from ..views.scene import LineMark, Name, Scene, StructureMark, Tag, Water, ZoneMark
 from .base import Desk, footnote
 
 UNDER_RESOLVED = "under-resolved"
@@ -55,7 +55,19 @@ def water_scene(desk: Desk) -> Scene:
     except (Working, ValueError):  # the sentence says which; the water is shown meanwhile
         return scene
     water = replace(water, psi=ledger.sf.psi, tube_m3_s=tube, carries=ledger.sf.domain, tube_lines=lines)
-    return replace(scene, water=water, shore=reading.shore(run_id, moment))
+    paths, tags = link_marks(ledger, desk.units)
+    return replace(scene, water=water, shore=reading.shore(run_id, moment), lines=paths, tags=tags)
+
+
+def link_marks(ledger: FrameLedger, units: Units) -> tuple[tuple[LineMark, ...], tuple[Tag, ...]]:
+    """The paths along which psi jumps, dotted, each named with what its link carries."""
+    xy, links = ledger.frame.mesh.node_xy, ledger.sf.links
+    lines = tuple(LineMark("dotted", xy[link.path.nodes]) for link in links)
+    tags = tuple(
+        Tag(f"{link.path.name}, {units.quantity(link.discharge_m3_s, 'm3/s', digits=2)}", (float(at[0]), float(at[1])))
+        for link in links for at in [xy[link.path.nodes[len(link.path.nodes) // 2]]]
+    )
+    return lines, tags
 
 
 def zone_mark(zone: Zone, subject: bool) -> ZoneMark:

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import re
+from types import SimpleNamespace
 from xml.etree import ElementTree
 
 import numpy as np
@@ -10,6 +11,7 @@ import pytest
 import shapely
 
 from dashboard import theme
+from dashboard.questions.common import link_marks
 from dashboard.raster import View
 from dashboard.units import Units
 from dashboard.views import map as drawing
@@ -259,3 +261,12 @@ def test_observed_marks_stand_on_the_map_with_their_difference():
     found = [Observed("marks", "Marks", "made up", "m", {}, np.array([[1.0, 2.0]]), np.array([-0.04]))]
     points, lines, tags_ = observed.marks(found, Units())
     assert points[0].kind == "rest" and tags_[0].text.replace("\u00a0", " ") == "\u22120.040 m" and not lines
+
+
+def test_a_links_path_is_dotted_and_named_with_what_it_carries():
+    path = SimpleNamespace(name="Culvert", nodes=np.array([0, 2, 1]))
+    sf = SimpleNamespace(links=(SimpleNamespace(path=path, discharge_m3_s=0.87),))
+    mesh = SimpleNamespace(node_xy=np.array([[0.0, 0], [2, 0], [1, 1]]))
+    (line,), (tag,) = link_marks(SimpleNamespace(frame=SimpleNamespace(mesh=mesh), sf=sf), Units())  # type: ignore[arg-type]
+    assert line.kind == "dotted" and line.points.tolist() == [[0, 0], [1, 1], [2, 0]]
+    assert tag.text.replace("\u00a0", " ") == "Culvert, 0.87 m\u00b3/s" and tag.at == (1.0, 1.0)
