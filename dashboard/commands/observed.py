@@ -55,12 +55,15 @@ def _print(label: str, found) -> None:
 
     print(f"{label}: {len(found)} observed")
     for o in found:
+        apart = o.kind in ("drogue", "dye")
         parts = [f"{int(o.figures['count'])} compared" + (f", {int(o.figures['left_out'])} where the model has no water" if o.figures["left_out"] else "")]
         for name, unit in (("bias", o.unit), ("rmse", o.unit), ("worst", o.unit), ("within_accuracy", ""), ("skill", ""), ("travel_time_error_s", "s")):
             value = o.figures.get(name)
             if value is not None:
-                parts.append(f"{name.replace('_s', '').replace('_', ' ')} {printed(value)} {unit}".rstrip())
-        what = "separation" if o.kind in ("drogue", "dye") else "model minus observed"
+                word = "mean" if apart and name == "bias" else name.removesuffix("_s").replace("_", " ")
+                source = " (Liu and Weisberg 2011)" if name == "skill" else ""
+                parts.append(f"{word} {printed(value)} {unit}".rstrip() + source)
+        what = "separation" if apart else "model minus observed"
         print(f"  {o.name} ({o.kind}, {what}): {'; '.join(parts)}. Source: {o.source}")
 
 

@@ -19,7 +19,7 @@ def html(found: Sequence[Observed], units: Units) -> str:
     if not found:
         return ""
     columns = (
-        table.Column("Observed", figure=False), table.Column("Compared"), table.Column("Bias"), table.Column("RMSE"), table.Column("Worst"),
+        table.Column("Observed", figure=False), table.Column("Compared"), table.Column("Mean,", "bias"), table.Column("RMSE"), table.Column("Worst"),
         table.Column("Unit", figure=False),
     )
     lines = []
